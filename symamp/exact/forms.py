@@ -1,0 +1,318 @@
+"""The two forms of a response: written out in lowest terms (expanded), or its minor graph (nested)."""
+
+from __future__ import annotations
+
+import random
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field
+from fractions import Fraction
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+from flint import fmpq, fmpq_poly, fmpz_mpoly, fmpz_mpoly_ctx
+
+from symamp.circuit.stage import Symbol
+from symamp.exact.cofactors import Ratio, entry_symbols
+from symamp.exact.minors import MinorGraph
+from symamp.exact.polys import S, coefficients_of_s, inverted, lowest_terms, ring_of
+from symamp.exact.tape import Tape, term_dict
+
+Values = Mapping[str, np.ndarray | float]
+EXPAND_LIMIT = 40_000  # product terms up to which a response is written out
+_NESTED_BLOCK = 1024
+_PRIME = (1 << 61) - 1
+
+
+@dataclass(frozen=True)
+class Coefficients:
+    """Coefficients of σ = s/omega, ascending, at P points: `numerator` (n+1, P) and `denominator` (m+1, P)."""
+
+    numerator: np.ndarray
+    denominator: np.ndarray
+    omega: float = 1.0
+
+
+@dataclass(frozen=True)
+class Expanded:
+    """numerator/denominator as coefficients of s, ascending: integer polynomials with nothing common left."""
+
+    numerator: tuple[fmpz_mpoly, ...]
+    denominator: tuple[fmpz_mpoly, ...]
+
+    @property
+    def context(self) -> fmpz_mpoly_ctx:
+        return self.denominator[0].context()
+
+    @property
+    def terms(self) -> int:
+        """How many product terms are written out in all."""
+        return sum(len(c) for c in (*self.numerator, *self.denominator))
+
+    @cached_property
+    def _tape(self) -> Tape:
+        return Tape([*self.numerator, *self.denominator])
+
+    @cached_property
+    def symbols(self) -> frozenset[str]:
+        """The symbols that the written-out form holds."""
+        names = self.context.names()
+        held: set[str] = set()
+        for polynomial in (*self.numerator, *self.denominator):
+            held.update(name for name, degree in zip(names, polynomial.degrees(), strict=True) if degree)
+        return frozenset(held)
+
+    def coefficients(self, values: Values, points: int) -> Coefficients:
+        """Coefficients of s at `points` points."""
+        arrays = self._tape(values, points)
+        split = len(self.numerator)
+        return Coefficients(np.array(arrays[:split]), np.array(arrays[split:]))
+
+    def exact_coefficients(self, values: Mapping[str, Fraction]) -> tuple[fmpq_poly, fmpq_poly]:
+        """Both polynomials in s with rational coefficients, at one bias point given exactly."""
+        return (
+            fmpq_poly([_exact_value(c, values) for c in self.numerator]),
+            fmpq_poly([_exact_value(c, values) for c in self.denominator]),
+        )
+
+
+def _exact_value(polynomial: fmpz_mpoly, values: Mapping[str, Fraction]) -> fmpq:
+    total = Fraction(0)
+    for monomial, coefficient in term_dict(polynomial).items():
+        product = Fraction(coefficient)
+        for name, exponent in monomial:
+            product *= values[name] ** exponent
+        total += product
+    return fmpq(total.numerator, total.denominator)
+
+
+@dataclass(frozen=True)
+class Nested:
+    """The minor graph with a value rule for its symbols.
+
+    `computed` gives symbols whose values are worked out from the others (in order), as an assumption may ask.
+    """
+
+    graph: MinorGraph
+    scale: Fraction
+    terms: int
+    reactive: frozenset[str] = frozenset()
+    computed: tuple[tuple[str, Callable[[Mapping[str, Any]], Any]], ...] = ()
+    reference: Mapping[str, float] = field(default_factory=dict)
+
+    @cached_property
+    def symbols(self) -> frozenset[str]:
+        return frozenset(entry_symbols(self.graph))
+
+    def full_values(self, values: Mapping[str, Any]) -> dict[str, Any]:
+        """The values with all computed symbols worked out."""
+        full = dict(values)
+        for name, rule in self.computed:
+            full[name] = rule(full)
+        return full
+
+    def coefficients(self, values: Values, points: int) -> Coefficients:
+        """Coefficients of s/omega by the graph, in blocks; rows are scaled, which numerator and denominator share."""
+        full = self.full_values(values)
+        omega = self._omega(full)
+        blocks_n, blocks_d = [], []
+        for start in range(0, points, _NESTED_BLOCK):
+            stop = min(points, start + _NESTED_BLOCK)
+            block = {
+                n: v[start:stop] if isinstance(v, np.ndarray) and v.ndim else v for n, v in full.items()
+            }
+            n, d = walk_in_s(self.graph, _scaled_entries(self.graph, block, omega), stop - start)
+            blocks_n.append(n)
+            blocks_d.append(d)
+        numerator = np.concatenate(blocks_n, axis=1) * float(self.scale)
+        return Coefficients(numerator, np.concatenate(blocks_d, axis=1), omega)
+
+    def at(self, s: np.ndarray, values: Values) -> np.ndarray:
+        """The response at complex frequencies s; symbol values scalars or arrays that broadcast with s."""
+        full = self.full_values(values)
+        entries = []
+        row_scale: dict[int, float] = {}
+        raw = [_complex_entry(entry, full, s) for entry in self.graph.entries]
+        for value, row in zip(raw, self.graph.entry_rows, strict=True):
+            row_scale[row] = max(row_scale.get(row, 0.0), float(np.max(np.abs(value))))
+        for value, row in zip(raw, self.graph.entry_rows, strict=True):
+            entries.append(value / (row_scale[row] or 1.0))
+        numerator, denominator = self.graph.walk(entries, 1.0, 0.0)
+        return np.asarray(float(self.scale) * numerator / denominator)
+
+    def exact_coefficients(self, values: Mapping[str, Fraction]) -> tuple[fmpq_poly, fmpq_poly]:
+        """Both polynomials in s with rational coefficients, in lowest terms at this one bias point."""
+        full = self.full_values(values)
+        entries = [_rational_entry(entry, full) for entry in self.graph.entries]
+        numerator, denominator = self.graph.walk(entries, fmpq_poly([1]), fmpq_poly([0]))
+        numerator = numerator * fmpq(self.scale.numerator, self.scale.denominator)
+        common = numerator.gcd(denominator)
+        return (numerator / common, denominator / common) if common.degree() > 0 else (numerator, denominator)
+
+    def _omega(self, values: Mapping[str, Any]) -> float:
+        """A frequency near which conductances and susceptances meet, so that coefficients neither vanish nor burst."""
+        logs: dict[bool, list[float]] = {True: [], False: []}
+        for name in self.symbols:
+            value = np.abs(np.asarray(values[name], dtype=float)).ravel()
+            if value.size and value[0] > 0:
+                logs[name in self.reactive].append(float(np.log(value[0])))
+        return 1e9 if not logs[True] else self._ratio(logs)
+
+    @staticmethod
+    def _ratio(logs: dict[bool, list[float]]) -> float:
+        conductances = [-abs(x) for x in logs[False]] or [np.log(1e-3)]
+        return float(np.exp(np.mean(conductances) - np.mean(logs[True])))
+
+
+def _complex_entry(entry: Any, values: Mapping[str, Any], s: np.ndarray) -> Any:
+    total: Any = 0.0
+    for coefficient, symbol, power, s_power in entry:
+        value: Any = coefficient
+        if symbol is not None:
+            value = value * values[symbol] if power > 0 else value / values[symbol]
+        total = total + (value * s if s_power else value)
+    return total
+
+
+def _rational_entry(entry: Any, values: Mapping[str, Fraction]) -> fmpq_poly:
+    powers = [Fraction(0), Fraction(0)]
+    for coefficient, symbol, power, s_power in entry:
+        powers[s_power] += coefficient * (values[symbol] ** power if symbol is not None else 1)
+    return fmpq_poly([fmpq(p.numerator, p.denominator) for p in powers])
+
+
+def _scaled_entries(graph: MinorGraph, values: Mapping[str, Any], omega: float) -> list[list[Any]]:
+    """Each entry as [coefficient of σ^0, of σ^1], its row divided by the row's largest at the first point."""
+    raw: list[list[Any]] = []
+    scale: dict[int, float] = {}
+    for entry, row in zip(graph.entries, graph.entry_rows, strict=True):
+        powers: list[Any] = [None, None]
+        for coefficient, symbol, power, s_power in entry:
+            value: Any = coefficient
+            if symbol is not None:
+                value = coefficient * values[symbol] if power > 0 else coefficient / values[symbol]
+            value = value * omega if s_power else value
+            powers[s_power] = value if powers[s_power] is None else powers[s_power] + value
+        raw.append(powers)
+        for value in powers:
+            if value is not None:
+                scale[row] = max(scale.get(row, 0.0), float(np.abs(np.ravel(value)[0])))
+    return [
+        [None if value is None else value / (scale.get(row) or 1.0) for value in powers]
+        for powers, row in zip(raw, graph.entry_rows, strict=True)
+    ]
+
+
+def walk_in_s(graph: MinorGraph, entries: list[list[Any]], points: int) -> tuple[np.ndarray, np.ndarray]:
+    """Numerator and denominator as coefficients of σ, arrays (k, points); only two levels are kept at a time."""
+    values: dict[int, np.ndarray] = {0: np.ones((1, points))}
+    bounds = [*graph.levels, len(graph.edges)]
+    for k in range(1, len(graph.levels)):
+        current: dict[int, np.ndarray] = {}
+        for node in range(bounds[k], bounds[k + 1]):
+            current[node] = _node_in_s(graph.edges[node], entries, values, points)
+        values = current
+    return _sum_in_s(graph.numerator, values, points), _sum_in_s(graph.denominator, values, points)
+
+
+def _node_in_s(edges: Any, entries: list[list[Any]], values: dict[int, np.ndarray], points: int) -> np.ndarray:
+    degree = max(
+        values[child].shape[0] - 1 + (1 if entries[entry][1] is not None else 0) for child, entry, _ in edges
+    )
+    total = np.zeros((degree + 1, points))
+    for child, entry, sign in edges:
+        below = values[child]
+        size = below.shape[0]
+        for shift, value in enumerate(entries[entry]):
+            if value is not None:
+                total[shift : shift + size] += (value if sign > 0 else -value) * below
+    return total
+
+
+def _sum_in_s(parts: Any, values: dict[int, np.ndarray], points: int) -> np.ndarray:
+    size = max((values[node].shape[0] for _, node in parts), default=1)
+    total = np.zeros((size, points))
+    for factor, node in parts:
+        total[: values[node].shape[0]] += factor * values[node]
+    return total
+
+
+def write_out(ratio: Ratio, symbols: Mapping[str, Symbol], extra: tuple[str, ...] = ()) -> Expanded:
+    """The graph written out in lowest terms. `extra` are generators beyond the stage's symbols (no unit, no value)."""
+    numerator, denominator = raw_polynomials(ratio, symbols, extra)
+    return expanded_of(*lowest_terms(numerator, denominator))
+
+
+def expanded_of(numerator: fmpz_mpoly, denominator: fmpz_mpoly) -> Expanded:
+    """The expanded form of a ratio that is in lowest terms."""
+    return Expanded(coefficients_of_s(numerator), coefficients_of_s(denominator))
+
+
+def raw_polynomials(
+    ratio: Ratio, symbols: Mapping[str, Symbol], extra: tuple[str, ...] = ()
+) -> tuple[fmpz_mpoly, fmpz_mpoly]:
+    """Numerator and denominator as they come from the graph, common factors and all."""
+    names = [name for name in entry_symbols(ratio.graph) if name not in extra]
+    context = ring_of(symbols, names, extra)
+    generator = dict(zip(context.names(), context.gens(), strict=True))
+    entries = []
+    inverse: set[str] = set()
+    for entry in ratio.graph.entries:
+        total = context.constant(0)
+        for coefficient, symbol, power, s_power in entry:
+            product = context.constant(coefficient)
+            if symbol is not None:
+                product *= generator[symbol]
+                if power < 0:
+                    inverse.add(symbol)
+            total += product * generator[S] if s_power else product
+        entries.append(total)
+    numerator, denominator = ratio.graph.walk(entries, context.constant(1), context.constant(0))
+    numerator, denominator = inverted(numerator, denominator, inverse)
+    return numerator * ratio.scale.numerator, denominator * ratio.scale.denominator
+
+
+def vanishes(graph: MinorGraph) -> tuple[bool, bool]:
+    """Whether numerator and denominator are identically zero, by random values modulo a prime.
+
+    A non-zero polynomial of degree d vanishes at a random point with probability d/2^61 at most
+    (Schwartz 1980, Zippel 1979).
+    """
+    draw = random.Random(61)
+    values = {name: draw.randrange(2, _PRIME) for name in entry_symbols(graph)}
+    s = draw.randrange(2, _PRIME)
+    entries = [residue(entry, values, s) for entry in graph.entries]
+    numerator, denominator = graph.walk([_Mod(e) for e in entries], _Mod(1), _Mod(0))
+    return numerator.value == 0, denominator.value == 0
+
+
+def residue(entry: Any, values: Mapping[str, int], s: int) -> int:
+    """An entry's value modulo the prime."""
+    total = 0
+    for coefficient, symbol, power, s_power in entry:
+        value = coefficient * (s if s_power else 1)
+        if symbol is not None:
+            value *= values[symbol] if power > 0 else pow(values[symbol], -1, _PRIME)
+        total += value
+    return total % _PRIME
+
+
+class _Mod:
+    """An integer modulo the prime, with as much arithmetic as the graph asks for."""
+
+    __slots__ = ("value",)
+
+    def __init__(self, value: int) -> None:
+        self.value = value % _PRIME
+
+    def __add__(self, other: _Mod) -> _Mod:
+        return _Mod(self.value + other.value)
+
+    def __sub__(self, other: _Mod) -> _Mod:
+        return _Mod(self.value - other.value)
+
+    def __neg__(self) -> _Mod:
+        return _Mod(-self.value)
+
+    def __mul__(self, other: _Mod | int) -> _Mod:
+        return _Mod(self.value * (other if isinstance(other, int) else other.value))
