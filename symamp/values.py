@@ -43,12 +43,12 @@ LARGEST_POWER = 100  # values lie within 1e-100 and 1e100
 
 
 def read_value(raw: str | int | float, unit: str) -> Fraction:
-    """The exact value, in SI units, of text such as "4.1 mS", "3.3p" or "5kΩ", or of a bare number in SI units.
+    """The exact value, in SI units, of text such as "4.1 mS", "3.3p" or "5kΩ", or of a bare number.
 
     `unit` is what is wanted: "S", "ohm", "F", "H", "Hz", "s", "V", "A" or "" for a pure number; the text may
     leave it out. A float counts as the shortest decimal that names it, which is what was typed.
-    Raises ReadError for all else: wrong units, unknown prefixes, decimal commas, NaN, infinities, booleans and
-    magnitudes outside 1e-100 to 1e100.
+    Raises ReadError for all else: wrong units, unknown prefixes, decimal commas, NaN, infinities, booleans
+    and magnitudes outside 1e-100 to 1e100.
     """
     if isinstance(raw, bool) or not isinstance(raw, str | int | float):
         raise ReadError(f"{quoted(raw)} is no value", _remedy(unit))
@@ -107,7 +107,7 @@ def example(unit: str) -> str:
 
 
 def quoted(raw: object) -> str:
-    """What the user wrote, as it goes into a message: text in double quotes, clipped, control characters out."""
+    """What the user wrote, as it goes into a message: text in quotes, clipped, no control characters."""
     if isinstance(raw, bool):
         return str(raw).lower()  # as TOML writes it
     if isinstance(raw, int) and raw.bit_length() > 1000:
@@ -120,8 +120,8 @@ def quoted(raw: object) -> str:
 def show_value(x: float, unit: str, digits: int = 4) -> str:
     """The value as people read it, rounded to so many significant digits: "4.1 mS", "244 kHz", "25.39".
 
-    Pure numbers, and units that take no prefix (dB, deg), are plain between 1e-3 and 1e5, with their whole part
-    in full, and in powers of ten outside. NaN is "none".
+    Pure numbers, and units that take no prefix (dB, deg), are plain between 1e-3 and 1e5, with their whole
+    part in full, and in powers of ten outside. NaN is "none".
     """
     if math.isnan(x):
         return "none"
@@ -189,7 +189,8 @@ def _power(raw: str, rest: str, unit: str) -> int:
     """The power of ten of what follows the number, which must be of the unit that is wanted."""
     found = split_unit(rest)
     if found is None:
-        raise ReadError(f"{quoted(raw)} cannot be read: {quoted(rest)} is no SI prefix and unit", _hint(rest, unit))
+        problem = f"{quoted(raw)} cannot be read: {quoted(rest)} is no SI prefix and unit"
+        raise ReadError(problem, _hint(rest, unit))
     power, given = found
     if given not in ("", unit):
         wanted = f"{unit} is wanted" if unit else "a pure number is wanted"

@@ -101,7 +101,7 @@ def check_asked(stage: Stage, asked: Asked) -> None:
         gone = [node for node in pair or () if node not in left]
         if gone:
             raise StageError(
-                f"nothing is left at node {gone[0]} once {_listed(asked.without)} is taken off",
+                f"nothing is left at node {gone[0]} with {_listed(asked.without)} taken off",
                 f"keep a part at {gone[0]}, or ask about another node",
                 key=f"response.{asked.name}.{key}",
             )

@@ -1,4 +1,4 @@
-"""Room `circuit`: the JSON Schema of the stage file, made from the kinds of part, for editors that complete it.
+"""Room `circuit`: the JSON Schema of the stage file, made from the kinds of part, for editors to complete by.
 
 A schema sees the shape alone: whether a node, a symbol or a selector exists is for the reader of stage files.
 """
@@ -16,6 +16,7 @@ DIALECT = "https://json-schema.org/draft/2020-12/schema"
 
 # Labels begin with a letter, and one of a single letter is an error.
 _LABEL = "^[A-Za-z][A-Za-z0-9_]+$"
+_NODE = r"^\S{1,100}$"
 _PERCENT = r"^\s*[0-9]+(\.[0-9]+)?\s*%\s*$"
 
 
@@ -133,7 +134,11 @@ def _ports(kind: Kind) -> Schema:
 
 
 def _response_section() -> Schema:
-    without = {"$ref": "#/$defs/names", "description": "Parts taken off first."}
+    without = {
+        "description": "Parts taken off first.",
+        "type": "array",
+        "items": {"type": "string", "pattern": _LABEL},
+    }
     ratio = {
         "type": "object",
         "properties": {
@@ -175,7 +180,7 @@ def _bias_section() -> Schema:
     values = {
         name: _ref("value", f"{name} at the operating point ({_owners(name)}).") for name in BARE_PARAMETERS
     }
-    device = {"type": "object", "properties": values, "additionalProperties": False}
+    device = {"type": "object", "properties": values, "minProperties": 1, "additionalProperties": False}
     return {
         "title": "bias",
         "description": "The value of every symbol at the operating point, part by part.",
@@ -287,7 +292,7 @@ def _claim() -> Schema:
 def _definitions() -> Schema:
     node = {"$ref": "#/$defs/node"}
     return {
-        "node": {"type": "string", "minLength": 1, "description": "A node; gnd is signal ground."},
+        "node": {"type": "string", "pattern": _NODE, "description": "A node; gnd is signal ground."},
         "pair": {
             "type": "array",
             "items": node,

@@ -14,6 +14,7 @@ from flint import fmpq, fmpq_poly, fmpz_mpoly, fmpz_mpoly_ctx
 
 from symamp.circuit.stage import Symbol
 from symamp.exact.cofactors import Ratio, entry_symbols
+from symamp.exact.graded import exact_in_limit, scaled_entries, walk_in_powers
 from symamp.exact.minors import MinorGraph
 from symamp.exact.polys import S, coefficients_of_s, inverted, lowest_terms, ring_of
 from symamp.exact.tape import Tape, term_dict
@@ -100,6 +101,15 @@ class Nested:
     computed: tuple[tuple[str, Callable[[Mapping[str, Any]], Any]], ...] = ()
     reference: Mapping[str, float] = field(default_factory=dict)
 
+    keep: tuple[frozenset[int] | None, frozenset[int] | None] = (None, None)
+    limits: Mapping[str, int] = field(default_factory=dict)
+    valuation: tuple[int, int] = (0, 0)
+
+    @property
+    def plain(self) -> bool:
+        """Whether the graph's value at a frequency is the response's: no limit taken, no power of s left out."""
+        return self.keep == (None, None) and not self.limits
+
     @cached_property
     def symbols(self) -> frozenset[str]:
         return frozenset(entry_symbols(self.graph))
@@ -121,11 +131,13 @@ class Nested:
             block = {
                 n: v[start:stop] if isinstance(v, np.ndarray) and v.ndim else v for n, v in full.items()
             }
-            n, d = walk_in_s(self.graph, _scaled_entries(self.graph, block, omega), stop - start)
+            entries = scaled_entries(self.graph, block, omega, self.limits)
+            n, d = walk_in_powers(self.graph, entries, stop - start, self.valuation)
             blocks_n.append(n)
             blocks_d.append(d)
         numerator = np.concatenate(blocks_n, axis=1) * float(self.scale)
-        return Coefficients(numerator, np.concatenate(blocks_d, axis=1), omega)
+        denominator = np.concatenate(blocks_d, axis=1)
+        return Coefficients(_kept(numerator, self.keep[0]), _kept(denominator, self.keep[1]), omega)
 
     def at(self, s: np.ndarray, values: Values) -> np.ndarray:
         """The response at complex frequencies s; symbol values scalars or arrays that broadcast with s."""
@@ -143,9 +155,16 @@ class Nested:
     def exact_coefficients(self, values: Mapping[str, Fraction]) -> tuple[fmpq_poly, fmpq_poly]:
         """Both polynomials in s with rational coefficients, in lowest terms at this one bias point."""
         full = self.full_values(values)
-        entries = [_rational_entry(entry, full) for entry in self.graph.entries]
-        numerator, denominator = self.graph.walk(entries, fmpq_poly([1]), fmpq_poly([0]))
+        if self.limits:
+            numerator, denominator = exact_in_limit(self.graph, full, self.limits, self.valuation)
+        else:
+            entries = [_rational_entry(entry, full) for entry in self.graph.entries]
+            numerator, denominator = self.graph.walk(entries, fmpq_poly([1]), fmpq_poly([0]))
         numerator = numerator * fmpq(self.scale.numerator, self.scale.denominator)
+        numerator, denominator = (
+            p if keep is None else fmpq_poly([p[k] if k in keep else 0 for k in range(p.degree() + 1)])
+            for p, keep in zip((numerator, denominator), self.keep, strict=True)
+        )
         common = numerator.gcd(denominator)
         return (numerator / common, denominator / common) if common.degree() > 0 else (numerator, denominator)
 
@@ -181,60 +200,13 @@ def _rational_entry(entry: Any, values: Mapping[str, Fraction]) -> fmpq_poly:
     return fmpq_poly([fmpq(p.numerator, p.denominator) for p in powers])
 
 
-def _scaled_entries(graph: MinorGraph, values: Mapping[str, Any], omega: float) -> list[list[Any]]:
-    """Each entry as [coefficient of σ^0, of σ^1], its row divided by the row's largest at the first point."""
-    raw: list[list[Any]] = []
-    scale: dict[int, float] = {}
-    for entry, row in zip(graph.entries, graph.entry_rows, strict=True):
-        powers: list[Any] = [None, None]
-        for coefficient, symbol, power, s_power in entry:
-            value: Any = coefficient
-            if symbol is not None:
-                value = coefficient * values[symbol] if power > 0 else coefficient / values[symbol]
-            value = value * omega if s_power else value
-            powers[s_power] = value if powers[s_power] is None else powers[s_power] + value
-        raw.append(powers)
-        for value in powers:
-            if value is not None:
-                scale[row] = max(scale.get(row, 0.0), float(np.abs(np.ravel(value)[0])))
-    return [
-        [None if value is None else value / (scale.get(row) or 1.0) for value in powers]
-        for powers, row in zip(raw, graph.entry_rows, strict=True)
-    ]
-
-
-def walk_in_s(graph: MinorGraph, entries: list[list[Any]], points: int) -> tuple[np.ndarray, np.ndarray]:
-    """Numerator and denominator as coefficients of σ, arrays (k, points); only two levels are kept at a time."""
-    values: dict[int, np.ndarray] = {0: np.ones((1, points))}
-    bounds = [*graph.levels, len(graph.edges)]
-    for k in range(1, len(graph.levels)):
-        current: dict[int, np.ndarray] = {}
-        for node in range(bounds[k], bounds[k + 1]):
-            current[node] = _node_in_s(graph.edges[node], entries, values, points)
-        values = current
-    return _sum_in_s(graph.numerator, values, points), _sum_in_s(graph.denominator, values, points)
-
-
-def _node_in_s(edges: Any, entries: list[list[Any]], values: dict[int, np.ndarray], points: int) -> np.ndarray:
-    degree = max(
-        values[child].shape[0] - 1 + (1 if entries[entry][1] is not None else 0) for child, entry, _ in edges
-    )
-    total = np.zeros((degree + 1, points))
-    for child, entry, sign in edges:
-        below = values[child]
-        size = below.shape[0]
-        for shift, value in enumerate(entries[entry]):
-            if value is not None:
-                total[shift : shift + size] += (value if sign > 0 else -value) * below
-    return total
-
-
-def _sum_in_s(parts: Any, values: dict[int, np.ndarray], points: int) -> np.ndarray:
-    size = max((values[node].shape[0] for _, node in parts), default=1)
-    total = np.zeros((size, points))
-    for factor, node in parts:
-        total[: values[node].shape[0]] += factor * values[node]
-    return total
+def _kept(coefficients: np.ndarray, powers: frozenset[int] | None) -> np.ndarray:
+    """The coefficients with all powers but these made zero, and no more rows than needed."""
+    if powers is None:
+        return coefficients
+    rows = [k in powers for k in range(coefficients.shape[0])]
+    kept = np.where(np.array(rows)[:, None], coefficients, 0.0)
+    return kept[: max((k + 1 for k, keep in enumerate(rows) if keep), default=1)]
 
 
 def write_out(ratio: Ratio, symbols: Mapping[str, Symbol], extra: tuple[str, ...] = ()) -> Expanded:

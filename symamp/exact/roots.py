@@ -66,15 +66,13 @@ def _proper(c: Reals) -> Complexes:
     if degree == 2 and _within_safe_range(c):
         return _quadratic(*c)
     scaled, exponent = _centred(c)
-    solve = {2: _of_rows(_quadratic), 3: _cubic}.get(degree, _by_eigenvalues)
-    found = solve(scaled)
+    if degree == 2:
+        found = _quadratic(*scaled)
+    else:
+        found = _cubic(scaled) if degree == 3 else _by_eigenvalues(scaled)
     found.real = np.ldexp(found.real, exponent)
     found.imag = np.ldexp(found.imag, exponent)
     return found
-
-
-def _of_rows(solve):  # type: ignore[no-untyped-def]
-    return lambda rows: solve(*rows)
 
 
 def _within_safe_range(c: Reals) -> bool:
@@ -111,7 +109,7 @@ def _quadratic(c: Reals, b: Reals, a: Reals) -> Complexes:
         out.real[0] = c / q
         out.real[1] = q / a
     if complex_pair.any():
-        real, imaginary = -0.5 * b / a, 0.5 * root / np.abs(a)
+        real, imaginary = 0.0 - 0.5 * b / a, 0.5 * root / np.abs(a)
         np.copyto(out.real, real, where=complex_pair)
         np.copyto(out.imag[0], imaginary, where=complex_pair)
         np.copyto(out.imag[1], -imaginary, where=complex_pair)

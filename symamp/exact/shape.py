@@ -19,6 +19,8 @@ from symamp.exact import writing
 # (integer coefficient, ((symbol, exponent), …)), symbols in the order in which they are written
 Term = tuple[int, tuple[tuple[str, int], ...]]
 
+_FlintTerm = tuple[tuple[int, ...], int]  # (exponents in the order of the context, coefficient)
+
 VARIABLE = "s"  # the complex frequency; written last, as in b0 + b1*s
 _CANCELLED = 1e-12  # a sum smaller than this beside its largest term is rounding, and has no sign
 FACTOR_LIMIT = 400  # terms; a longer polynomial has its common monomial taken out, and is not factored
@@ -109,7 +111,7 @@ class QuadraticRoot:
         shapes = [shape_of(each, weights=weights) for each in (a, b, c)]
         if shapes[0].coefficient < 0:
             shapes, branch = [-each for each in shapes], -branch
-        return cls(*shapes, branch)
+        return cls(shapes[0], shapes[1], shapes[2], branch)
 
     def text(self) -> str:
         """The formula in the grammar of stage files, with sqrt()."""
@@ -141,9 +143,10 @@ def shape_of(numerator: Any, denominator: Any = None, weights: Mapping[str, floa
 
     Symbols stand in the order of the polynomials' context, s last; terms by power of s, then the shorter
     product first, then by symbol; positive terms before negative ones. `weights`, the symbols' values at the
-    bias point, puts the larger of like terms first and turns every sum so that it is positive there: the sign
-    in front of the shape is then the sign that it has at that point (at s = 0). A symbol without a weight
-    counts as zero. Raises ZeroDivisionError where the denominator is zero.
+    bias point, puts the larger of like terms first and turns every sum with terms of both signs so that it is
+    positive there: where all symbols are positive, the sign in front of the shape is then the sign that it
+    has at that point (at s = 0). A symbol without a weight counts as zero. Raises ZeroDivisionError where the
+    denominator is zero.
     """
     if denominator is not None and denominator.is_zero():
         raise ZeroDivisionError("the denominator of a shape is zero")
@@ -186,7 +189,7 @@ def shape_in_resistances(
 def polynomial_terms(polynomial: Any) -> tuple[Term, ...]:
     """The terms of an expanded polynomial in the order in which they are written, as they are."""
     order = _Order(polynomial.context().names(), None)
-    return order.arranged(zip(polynomial.monoms(), map(int, polynomial.coeffs()), strict=True))
+    return order.arranged(_read(polynomial))
 
 
 def polynomial_text(polynomial: Any) -> str:
@@ -218,13 +221,14 @@ def _factored(polynomial: Any, weights: Mapping[str, float] | None) -> tuple[int
     for base, power in found:
         power = int(power)
         if len(base) == 1:  # a FLINT factor of one term is a symbol, apart from its sign
-            place = max(range(len(order.names)), key=base.monoms()[0].__getitem__)
-            content *= int(base.coeffs()[0]) ** power
+            ((exponents, coefficient),) = _read(base)
+            place = exponents.index(1)
+            content *= coefficient**power
             symbols.append((order.ranks[place], Factor(order.names[place], power)))
         else:
-            sign, terms = order.turned(list(zip(base.monoms(), map(int, base.coeffs()), strict=True)))
+            sign, terms = order.turned(_read(base))
             content *= sign**power
-            sums.append((order.sum_key(base), Factor(terms, power)))
+            sums.append((order.sum_key(_read(base)), Factor(terms, power)))
     in_order = [*sorted(symbols, key=_first), *sorted(sums, key=_first)]
     return content, tuple(factor for _, factor in in_order)
 
@@ -235,29 +239,35 @@ def _first(pair: tuple[Any, Factor]) -> Any:
 
 def _monomial_out(polynomial: Any, order: _Order) -> tuple[int, tuple[Factor, ...]]:
     """As `_factored` for a long polynomial: content and common monomial, and the rest as one sum."""
-    monomials, coefficients = polynomial.monoms(), [int(c) for c in polynomial.coeffs()]
-    content = math.gcd(*coefficients)
-    common = [min(column) for column in zip(*monomials, strict=True)]
+    terms = _read(polynomial)
+    content = math.gcd(*(coefficient for _, coefficient in terms))
+    common = [min(column) for column in zip(*(exponents for exponents, _ in terms), strict=True)]
     rest = [
-        (tuple(map(int.__sub__, monomial, common)), coefficient // content)
-        for monomial, coefficient in zip(monomials, coefficients, strict=True)
+        (tuple(map(int.__sub__, exponents, common)), coefficient // content)
+        for exponents, coefficient in terms
     ]
-    sign, terms = order.turned(rest)
+    sign, written = order.turned(rest)
     symbols = tuple(Factor(name, power) for name, power in order.product(common))
-    return sign * content, (*symbols, Factor(terms))
+    return sign * content, (*symbols, Factor(written))
 
 
 def _turned(polynomial: Any, places: Sequence[int]) -> tuple[dict[tuple[int, ...], int], list[int]]:
     """(terms with exponents e at `places` made greatest − e, the greatest exponents)."""
-    monomials = polynomial.monoms()
-    greatest = [max((monomial[place] for monomial in monomials), default=0) for place in places]
-    terms = {}
-    for monomial, coefficient in zip(monomials, polynomial.coeffs(), strict=True):
-        exponents = list(monomial)
+    terms = _read(polynomial)
+    greatest = [max((exponents[place] for exponents, _ in terms), default=0) for place in places]
+    turned = {}
+    for exponents, coefficient in terms:
+        powers = list(exponents)
         for place, most in zip(places, greatest, strict=True):
-            exponents[place] = most - exponents[place]
-        terms[tuple(exponents)] = coefficient
-    return terms, greatest
+            powers[place] = most - powers[place]
+        turned[tuple(powers)] = coefficient
+    return turned, greatest
+
+
+def _read(polynomial: Any) -> list[_FlintTerm]:
+    """[(exponents, coefficient), …] in Python's integers."""
+    pairs = zip(polynomial.monoms(), polynomial.coeffs(), strict=True)
+    return [(tuple(map(int, exponents)), int(coefficient)) for exponents, coefficient in pairs]
 
 
 def _resistance_weights(
@@ -284,20 +294,21 @@ class _Order:
         """((symbol, exponent), …) as written."""
         return tuple((self.names[place], exponents[place]) for place in self.written if exponents[place])
 
-    def arranged(self, terms: Iterable[tuple[tuple[int, ...], int]]) -> tuple[Term, ...]:
+    def arranged(self, terms: Iterable[_FlintTerm]) -> tuple[Term, ...]:
         """The terms as written: positive ones first, then by `_key`."""
         ordered = sorted(terms, key=lambda term: (term[1] < 0, *self._key(*term)))
         return tuple((coefficient, self.product(exponents)) for exponents, coefficient in ordered)
 
-    def turned(self, terms: list[tuple[tuple[int, ...], int]]) -> tuple[int, tuple[Term, ...]]:
+    def turned(self, terms: list[_FlintTerm]) -> tuple[int, tuple[Term, ...]]:
         """(sign, sign · terms as written), the sign such that the sum reads as a positive one."""
         sign = self._sign(terms)
         return sign, self.arranged((exponents, sign * coefficient) for exponents, coefficient in terms)
 
-    def sum_key(self, polynomial: Any) -> tuple[Any, ...]:
+    def sum_key(self, terms: list[_FlintTerm]) -> tuple[Any, ...]:
         """Where a sum stands among sums: shorter ones first, then by their terms."""
-        monomials = sorted(self._plain_key(monomial) for monomial in polynomial.monoms())
-        return len(monomials), monomials, [abs(int(c)) for c in polynomial.coeffs()]
+        ordered = sorted((self._plain_key(exponents), abs(coefficient)) for exponents, coefficient in terms)
+        signs = [coefficient for _, coefficient in terms]
+        return len(ordered), ordered, signs
 
     def _power(self, exponents: Sequence[int]) -> int:
         return 0 if self._variable is None else exponents[self._variable]
@@ -320,8 +331,10 @@ class _Order:
                 size += exponent * math.log(weight) if weight else -math.inf
         return size
 
-    def _sign(self, terms: list[tuple[tuple[int, ...], int]]) -> int:
+    def _sign(self, terms: list[_FlintTerm]) -> int:
         """The sign of the sum at s → 0: its value there, else that of most terms, else of the first."""
+        if len({coefficient > 0 for _, coefficient in terms}) == 1:
+            return 1 if terms[0][1] > 0 else -1  # also where a negative symbol makes it negative
         lowest = min(self._power(exponents) for exponents, _ in terms)
         seen = [term for term in terms if self._power(term[0]) == lowest]
         value = self._value(seen) if self._weights is not None else 0.0
@@ -329,7 +342,7 @@ class _Order:
         value = value or min(seen, key=lambda term: self._plain_key(term[0]))[1]
         return 1 if value > 0 else -1
 
-    def _value(self, terms: list[tuple[tuple[int, ...], int]]) -> float:
+    def _value(self, terms: list[_FlintTerm]) -> float:
         """The sum at the weights over its largest term's magnitude, so that nothing underflows."""
         sizes = [self._size(*term) for term in terms]
         largest = max(sizes)

@@ -252,3 +252,17 @@ class _Stamp:
         self.matrix.add(column, nodes[0], 1, part.label, power, s)
         self.matrix.add(column, nodes[1], -1, part.label, power, s)
         return column
+
+
+def without_symbols(system: System, names: set[str]) -> System:
+    """The matrix with these symbols put to zero where they stand as a factor."""
+    rows = tuple(
+        {
+            column: kept
+            for column, entry in row.items()
+            if (kept := tuple(t for t in entry if t.symbol not in names or t.power < 0))
+        }
+        for row in system.rows
+    )
+    symbols = tuple(name for name in system.symbols if name not in names)
+    return System(system.size, rows, system.node, system.branch, system.sources, symbols)

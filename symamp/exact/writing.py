@@ -18,7 +18,7 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True)
 class Written:
-    """A piece as written; `level` is SUM, PRODUCT (or a power) or SINGLE (a name or a number)."""
+    """A piece as written; `level` is SUM, PRODUCT or SINGLE (a name, a number, or a power of one)."""
 
     text: str
     level: int
@@ -67,7 +67,7 @@ LATEX = Notation(
 
 def term_words(terms: Sequence[Term], notation: Notation) -> list[str]:
     """The terms, each with its sign: `gm1*R1`, `+ gds2`, `- 2*gm2`."""
-    words = []
+    words: list[str] = []
     for coefficient, symbols in terms:
         number = abs(coefficient)
         parts = [str(number)] if number != 1 or not symbols else []
@@ -90,7 +90,7 @@ def product_written(number: int, factors: Sequence[Factor], notation: Notation) 
             return Written(notation.symbol(base), SINGLE)
         return Written(sum_written(base, notation), SUM)
     pieces = [factor_written(factor, notation) for factor in factors]
-    level = PRODUCT if pieces else SINGLE
+    level = SINGLE if len(numbers) + len(pieces) == 1 else PRODUCT
     return Written(notation.times.join(numbers + pieces), level)
 
 

@@ -220,7 +220,7 @@ def test_looking_into_a_shorted_node_proposes_the_source() -> None:
 
 def test_a_node_that_goes_with_its_part() -> None:
     stage = stage_of(VIN, M1, part("resistor", "RZ", "z out"), part("capacitor", "CZ", "z gnd"))
-    with pytest.raises(StageError, match="nothing is left at node z once RZ and CZ is taken off"):
+    with pytest.raises(StageError, match="nothing is left at node z with RZ and CZ taken off"):
         check_asked(stage, Asked("gain", to=("z", "gnd"), without=("RZ", "CZ")))
 
 

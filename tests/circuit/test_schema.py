@@ -161,6 +161,8 @@ def change(document: dict[str, Any], path: tuple[Any, ...], value: Any) -> dict[
         (("bias", "M1"), {"gn": "4.1 mS"}),
         (("bias", "CL"), ["3.3 pF"]),
         (("bias", "CL"), "much"),
+        (("bias", "M1"), {}),
+        (("response", "gain"), {"from": "VIN", "to": "out put"}),
         (("span", "gm1"), ["2 mS"]),
         (("span", "gm1"), "30"),
         (("span", "gm1"), {"follow": "gm2"}),
@@ -182,7 +184,7 @@ def test_a_wrong_shape_is_refused(
     ("path", "value"),
     [
         (("response", "gain"), {"from": {"VP": 0.5, "VN": -0.5}, "to": ["a", "b"], "without": ["RL"]}),
-        (("response", "rout"), {"looking_into": ["a", "b"]}),
+        (("response", "rout"), {"looking_into": ["a", "b"], "without": []}),
         (("bias", "M1"), {"gm": 0.004, "ro": "5 kohm"}),
         (("span",), {"table": "corners.csv"}),
         (("span", "gm1"), [0.002, 0.008]),

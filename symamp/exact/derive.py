@@ -1,0 +1,104 @@
+"""From a stage and a response asked for to its exact form."""
+
+from __future__ import annotations
+
+import random
+
+from symamp.circuit.checks import check_asked, check_network
+from symamp.circuit.kinds import CAPACITANCE, INDUCTANCE
+from symamp.circuit.stage import Asked, Stage
+from symamp.errors import NetworkError, StageError
+from symamp.exact.cofactors import Ratio, entry_symbols, ratio_of
+from symamp.exact.forms import EXPAND_LIMIT, Expanded, Nested, residue, vanishes, write_out
+from symamp.exact.response import Response
+from symamp.exact.system import System, build_system
+
+_PRIME = (1 << 61) - 1
+
+
+def derive(stage: Stage, asked: Asked) -> Response:
+    """The exact response. Raises StageError where it is identically zero or infinite, or cannot be had."""
+    check_network(stage, asked.without)
+    check_asked(stage, asked)
+    system = build_system(stage, asked.without)
+    ratio = ratio_of(system, asked)
+    _refuse_vanishing(stage, asked, system, ratio)
+    return Response(stage, asked, ratio.unit, form_of(stage, ratio))
+
+
+def form_of(stage: Stage, ratio: Ratio) -> Expanded | Nested:
+    """Written out in lowest terms where the graph's count allows, nested otherwise."""
+    if sum(ratio.graph.count_terms()) <= EXPAND_LIMIT:
+        return write_out(ratio, stage.symbols)
+    return nested_of(stage, ratio)
+
+
+def nested_of(stage: Stage, ratio: Ratio) -> Nested:
+    """The nested form, whatever the graph's count."""
+    reactive = frozenset(
+        name
+        for name in entry_symbols(ratio.graph)
+        if stage.symbols[name].nature in (CAPACITANCE, INDUCTANCE)
+    )
+    return Nested(ratio.graph, ratio.scale, sum(ratio.graph.count_terms()), reactive)
+
+
+def _refuse_vanishing(stage: Stage, asked: Asked, system: System, ratio: Ratio) -> None:
+    key = f"response.{asked.name}"
+    zero, infinite = vanishes(ratio.graph)
+    free = undetermined(system)
+    if free:
+        raise NetworkError(
+            f"response {asked.name!r} is identically infinite: nothing sets {' or '.join(free[:4])}",
+            "give it a path to ground: a conductance (gds, go), a resistor or a source",
+            key=key,
+        )
+    if infinite:
+        what = "what it is divided by" if asked.over else "the current of the source that is looked from"
+        raise StageError(
+            f"response {asked.name!r} is identically infinite: {what} is zero whatever the values",
+            "ask for another node, or join it to the drive",
+            key=key,
+        )
+    if zero:
+        drive = ", ".join(asked.drive) or "the test current"
+        raise StageError(
+            f"response {asked.name!r} is identically zero: nothing carries {drive} to its output",
+            "ask for a node that the drive reaches, or mend the connection",
+            key=key,
+        )
+
+
+def undetermined(system: System) -> list[str]:
+    """Unknowns that the network leaves free, in words: where a null vector of its matrix is not zero.
+
+    Values are random modulo a prime, so the answer is that of almost all values of the symbols.
+    """
+    draw = random.Random(7)
+    values = {name: draw.randrange(2, _PRIME) for name in system.symbols}
+    s = draw.randrange(2, _PRIME)
+    rows = [{c: residue(entry, values, s) for c, entry in row.items()} for row in system.rows]
+    pivots: dict[int, dict[int, int]] = {}
+    for row in rows:
+        current = {c: v for c, v in row.items() if v}
+        while current:
+            lead = min(current)
+            if lead not in pivots:
+                inverse = pow(current[lead], -1, _PRIME)
+                pivots[lead] = {c: v * inverse % _PRIME for c, v in current.items()}
+                break
+            factor = current[lead]
+            for c, v in pivots[lead].items():
+                reduced = (current.get(c, 0) - factor * v) % _PRIME
+                if reduced:
+                    current[c] = reduced
+                else:
+                    current.pop(c, None)
+    free = [c for c in range(system.size) if c not in pivots]
+    if not free:
+        return []
+    solution = {c: draw.randrange(1, _PRIME) for c in free}
+    for lead in sorted(pivots, reverse=True):
+        solution[lead] = -sum(v * solution[c] for c, v in pivots[lead].items() if c != lead) % _PRIME
+    names = system.column_names()
+    return [names[c] for c in range(system.size) if solution[c]]

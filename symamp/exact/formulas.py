@@ -1,0 +1,178 @@
+"""Quantities as formulas: ratios of polynomials where a quantity is rational, quadratic roots where it is one."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+from flint import fmpz_mpoly
+
+from symamp.exact.asked_quantity import Quantity
+from symamp.exact.forms import Expanded
+from symamp.exact.polys import by_power, coefficients_of_s, from_coefficients, lowest_terms
+from symamp.exact.shape import QuadraticRoot, Shape, shape_of
+from symamp.exact.tape import term_dict
+
+if TYPE_CHECKING:
+    from symamp.exact.response import Response
+
+Formula = Shape | QuadraticRoot
+PolyRatio = tuple[fmpz_mpoly, fmpz_mpoly]
+_FACTOR_LIMIT = 2000  # terms above which a polynomial in s is not factored in search of its roots
+
+
+def formula_of(response: Response, quantity: Quantity) -> Formula | None:
+    """The formula of a quantity (its face left aside only where there is none), or None."""
+    if quantity.face is not None:
+        return None
+    ratio = rational_of(response, quantity)
+    if ratio is not None:
+        return shape_of(*ratio, weights=response.bias_values or None)
+    if quantity.name in ("p", "z") and isinstance(response.form, Expanded):
+        return _quadratic_root(response, quantity)
+    return None
+
+
+def rational_of(response: Response, quantity: Quantity) -> PolyRatio | None:
+    """numerator/denominator in lowest terms of a quantity that is rational in the symbols, or None."""
+    form = response.form
+    if not isinstance(form, Expanded):
+        return None
+    if quantity.name in ("dc", "hf", "a", "b"):
+        ratio = _coefficient_ratio(form, quantity)
+    elif quantity.name in ("p", "z"):
+        ratio = _rational_root(response, quantity)
+    else:
+        return None
+    return None if ratio is None else lowest_terms(*ratio)
+
+
+def _coefficient_ratio(form: Expanded, quantity: Quantity) -> PolyRatio | None:
+    numerator, denominator = form.numerator, form.denominator
+    zero, one = form.context.constant(0), form.context.constant(1)
+    if quantity.name == "dc":
+        return None if denominator[0].is_zero() else (numerator[0], denominator[0])
+    if quantity.name == "hf":
+        if len(numerator) > len(denominator):
+            return None
+        return (numerator[-1], denominator[-1]) if len(numerator) == len(denominator) else (zero, one)
+    index = quantity.index or 0
+    unit = next(c for c in denominator if not c.is_zero())
+    row = numerator if quantity.name == "a" else denominator
+    return (row[index], unit) if index < len(row) else (zero, one)
+
+
+def _root_coefficients(response: Response, quantity: Quantity) -> tuple[fmpz_mpoly, ...]:
+    form = response.form
+    if quantity.name == "z" and response.first_zero is not None:
+        form = response.first_zero
+    assert isinstance(form, Expanded)
+    return form.denominator if quantity.name == "p" else form.numerator
+
+
+def _rational_root(response: Response, quantity: Quantity) -> PolyRatio | None:
+    index = quantity.index or 1
+    coefficients = _root_coefficients(response, quantity)
+    if len(coefficients) <= index:
+        return None
+    if response.apart:
+        k = _apart_index(response, coefficients, index)
+        return None if k is None or coefficients[k].is_zero() else (-coefficients[k - 1], coefficients[k])
+    factor = _factor_of_root(response, coefficients, index)
+    if factor is None or len(factor[0]) != 2:
+        return None
+    return -factor[0][0], factor[0][1]
+
+
+def _apart_index(response: Response, coefficients: tuple[fmpz_mpoly, ...], index: int) -> int | None:
+    """Which ratio of neighbours is the index-th by magnitude at the bias point (in order where there is none)."""
+    if response.missing:
+        return index
+    values = [float(_value(c, response)) for c in coefficients]
+    sizes = []
+    for k in range(1, len(values)):
+        if values[k]:
+            sizes.append((abs(values[k - 1] / values[k]), k))
+    sizes.sort()
+    return sizes[index - 1][1] if index <= len(sizes) else None
+
+
+def _quadratic_root(response: Response, quantity: Quantity) -> QuadraticRoot | None:
+    index = quantity.index or 1
+    coefficients = _root_coefficients(response, quantity)
+    if len(coefficients) <= index or response.apart:
+        return None
+    factor = _factor_of_root(response, coefficients, index)
+    if factor is None or len(factor[0]) != 3:
+        return None
+    c, b, a = factor[0]
+    weights = response.bias_values or None
+    first = QuadraticRoot.of(a, b, c, 1, weights)
+    second = QuadraticRoot.of(a, b, c, -1, weights)
+    smaller = first
+    if weights is not None and not response.missing:
+        values = [float(_value(p, response)) for p in (a, b, c)]
+        roots = _quadratic_values(*values)
+        if roots[0].imag:
+            smaller = first if roots[0].imag > 0 else second
+        else:
+            smaller = first if abs(roots[0]) <= abs(roots[1]) else second
+    other = second if smaller is first else first
+    return smaller if factor[1] == 0 else other
+
+
+def _quadratic_values(a: float, b: float, c: float) -> tuple[complex, complex]:
+    """(−b + sqrt(b² − 4ac))/(2a) and with −; the smaller in magnitude from the product of both."""
+    root = np.sqrt(complex(b * b - 4 * a * c))
+    plus, minus = (-b + root) / (2 * a), (-b - root) / (2 * a)
+    if root.imag == 0 and b:
+        if b > 0:
+            plus = c / (a * minus)
+        else:
+            minus = c / (a * plus)
+    return complex(plus), complex(minus)
+
+
+def _factor_of_root(
+    response: Response, coefficients: tuple[fmpz_mpoly, ...], index: int
+) -> tuple[tuple[fmpz_mpoly, ...], int] | None:
+    """The irreducible factor in s that has the index-th root, and which of its roots that is (from 0)."""
+    factors = factors_in_s(coefficients)
+    if len(factors) == 1 and len(factors[0]) - 1 == len(coefficients) - 1:
+        return factors[0], index - 1
+    if response.missing:
+        return None
+    places: list[tuple[float, int, tuple[fmpz_mpoly, ...]]] = []
+    for factor in factors:
+        values = [complex(_value(c, response)) for c in factor]
+        sizes = sorted(abs(r) for r in np.roots(values[::-1]))
+        places.extend((size, i, factor) for i, size in enumerate(sizes))
+    places.sort(key=lambda place: place[0])
+    if index > len(places):
+        return None
+    _, which, factor = places[index - 1]
+    return factor, which
+
+
+def factors_in_s(coefficients: tuple[fmpz_mpoly, ...]) -> list[tuple[fmpz_mpoly, ...]]:
+    """The factors of positive degree in s, each as coefficients of s ascending, repeated by multiplicity."""
+    polynomial = from_coefficients(coefficients)
+    if len(polynomial) > _FACTOR_LIMIT:
+        return [tuple(coefficients)]
+    if len(coefficients) == 2 and not coefficients[0].is_zero():
+        return [tuple(coefficients)]
+    found = []
+    for factor, multiplicity in polynomial.factor()[1]:
+        if max(by_power(factor)) > 0:
+            found.extend([coefficients_of_s(factor)] * multiplicity)
+    return found
+
+
+def _value(polynomial: fmpz_mpoly, response: Response) -> Any:
+    total = 0.0
+    for monomial, coefficient in term_dict(polynomial).items():
+        product = float(coefficient)
+        for name, exponent in monomial:
+            product *= response.bias_values[name] ** exponent
+        total += product
+    return total

@@ -1,0 +1,280 @@
+"""A response: its form, its numbers at any bias points, and its quantities, each with a formula where one exists."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from fractions import Fraction
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+from flint import fmpq_poly
+
+from symamp.circuit.stage import Asked, Stage
+from symamp.errors import StageError
+from symamp.exact.asked_quantity import Quantity, parse_quantity, unit_of
+from symamp.exact.figures import Figures
+from symamp.exact.forms import Coefficients, Expanded, Nested, Values
+from symamp.exact.formulas import Formula, formula_of
+from symamp.exact.shape import polynomial_sympy
+
+
+@dataclass(frozen=True)
+class QuantityValue:
+    """A quantity at the bias point: its value (None with `why`), unit, and formula where one exists.
+
+    `value` is a float, or complex for poles, zeros and responses at a frequency.
+    """
+
+    quantity: str
+    value: float | complex | None
+    unit: str
+    why: str | None = None
+    shape: Formula | None = None
+    remarks: tuple[str, ...] = ()
+    negative_ok: frozenset[str] = frozenset()
+
+    @property
+    def formula(self) -> Any:
+        """The formula as a SymPy expression; None where there is none."""
+        return None if self.shape is None else self.shape.sympy(self.negative_ok)
+
+    @property
+    def text(self) -> str | None:
+        """The formula in the grammar of stage files."""
+        return None if self.shape is None else self.shape.text()
+
+    @property
+    def latex(self) -> str | None:
+        """The formula for LaTeX's math mode."""
+        return None if self.shape is None else self.shape.latex()
+
+    def _repr_latex_(self) -> str | None:
+        return None if self.shape is None else f"$\\displaystyle {self.latex}$"
+
+
+@dataclass(frozen=True)
+class Response:
+    """A response of a stage, exact or approximate.
+
+    `form` is Expanded or Nested. `apart` says that each root is taken as the ratio of two neighbouring
+    coefficients; `first_zero`, where given, is the numerator from which z1 alone is taken.
+    """
+
+    stage: Stage
+    asked: Asked
+    unit: str
+    form: Expanded | Nested
+    apart: bool = False
+    first_zero: Expanded | Nested | None = None
+    single_pole: bool = False
+    remarks: tuple[str, ...] = field(default=())
+
+    @property
+    def name(self) -> str:
+        return self.asked.name
+
+    @property
+    def expanded(self) -> bool:
+        """Whether the terms are written out."""
+        return isinstance(self.form, Expanded)
+
+    @property
+    def terms(self) -> int:
+        """Terms written out; of a nested response the product terms that its graph stands for."""
+        return self.form.terms
+
+    @cached_property
+    def negative_ok(self) -> frozenset[str]:
+        """Symbols that may be negative (controlled-source gains, turns ratios)."""
+        return frozenset(n for n, s in self.stage.symbols.items() if s.parameter.may_be_negative)
+
+    @property
+    def numerator(self) -> list[Any] | None:
+        """Coefficients of s, ascending, as SymPy expressions; None while nested."""
+        return self._sympy("numerator")
+
+    @property
+    def denominator(self) -> list[Any] | None:
+        """Coefficients of s, ascending, as SymPy expressions; None while nested."""
+        return self._sympy("denominator")
+
+    def _sympy(self, which: str) -> list[Any] | None:
+        if not isinstance(self.form, Expanded):
+            return None
+        return [polynomial_sympy(c, self.negative_ok) for c in getattr(self.form, which)]
+
+    @cached_property
+    def missing(self) -> tuple[str, ...]:
+        """Symbols of this response that have no bias value."""
+        held = self.form.symbols
+        return tuple(n for n in self.stage.symbols if n in held and n not in self.stage.bias)
+
+    @cached_property
+    def bias_values(self) -> dict[str, float]:
+        """Bias values as floats."""
+        return {name: float(value) for name, value in self.stage.bias.items()}
+
+    def at(self, hz: Any, bias: Mapping[str, Any] | None = None) -> Any:
+        """The complex response at a frequency in Hz, or an array of them.
+
+        `bias` replaces bias values by symbol, each a number or an array that broadcasts with `hz`. A complex
+        number for scalars, else an array. Raises StageError where a symbol has no value.
+        """
+        values: dict[str, Any] = {**self.bias_values, **(bias or {})}
+        unknown = [name for name in bias or {} if name not in self.stage.symbols]
+        if unknown:
+            raise StageError(f"{unknown[0]!r} is no symbol of this stage")
+        lacking = [name for name in self.missing if name not in values]
+        if lacking:
+            raise StageError(f"{', '.join(lacking)} has no value", "give it in [bias], or pass bias={...}")
+        arrays = np.broadcast_arrays(
+            np.asarray(hz, dtype=float), *(np.asarray(values[n], dtype=float) for n in (bias or {}))
+        )
+        shape = arrays[0].shape
+        s = 2j * np.pi * arrays[0].ravel()
+        for name, array in zip(bias or {}, arrays[1:], strict=True):
+            values[name] = array.ravel()
+        result = self._at(s, values).reshape(shape)
+        return complex(result) if shape == () else result
+
+    def _at(self, s: np.ndarray, values: Values) -> np.ndarray:
+        if isinstance(self.form, Nested) and self.form.plain and not self.apart:
+            return np.broadcast_to(self.form.at(s, values), s.shape)
+        varied = any(isinstance(v, np.ndarray) and v.ndim for v in values.values())
+        given = self.coefficients(values, s.size if varied else 1)
+        sigma = s / given.omega
+        top = _horner(given.numerator, sigma)
+        return np.asarray(top / _horner(given.denominator, sigma))
+
+    def coefficients(self, values: Values, points: int) -> Coefficients:
+        """Coefficients of s/omega at `points` bias points; with `apart`, those of the roots' product."""
+        given = self.form.coefficients(values, points)
+        if not self.apart:
+            return given
+        return Coefficients(_apart(given.numerator), _apart(given.denominator), given.omega)
+
+    def figures(self, values: Values, points: int) -> Figures:
+        """All quantities at `points` bias points (without `first_zero`, which `value` minds)."""
+        given = self.coefficients(values, points)
+        found = Figures(given.numerator, given.denominator, self.unit, given.omega)
+        if self.apart:
+            raw = self.form.coefficients(values, points)
+            found.set_roots(_ratios(raw.numerator) * raw.omega, _ratios(raw.denominator) * raw.omega)
+        return found
+
+    def zero_figures(self, values: Values, points: int) -> Figures | None:
+        """Where z1 is taken from a numerator of its own: the figures that know it."""
+        if self.first_zero is None:
+            return None
+        given = self.first_zero.coefficients(values, points)
+        return Figures(given.numerator, given.denominator, self.unit, given.omega)
+
+    @cached_property
+    def bias_figures(self) -> Figures:
+        """All quantities at the bias point; roots from exact rational coefficients where these are the roots."""
+        if self.apart:
+            return self.figures(self.bias_values, 1)
+        numerator, denominator = self.exact_coefficients
+        omega = self.form.coefficients(self.bias_values, 1).omega if isinstance(self.form, Nested) else 1.0
+        found = Figures(_floats(numerator, omega), _floats(denominator, omega), self.unit, omega)
+        found.set_roots(_exact_roots(numerator), _exact_roots(denominator))
+        return found
+
+    @cached_property
+    def exact_coefficients(self) -> tuple[fmpq_poly, fmpq_poly]:
+        """Numerator and denominator in s at the bias point, exactly; in lowest terms at that point."""
+        return self.form.exact_coefficients(self.stage.bias)
+
+    def poles(self) -> list[complex]:
+        """Poles at the bias point in rad/s, by increasing magnitude."""
+        return [complex(p[0]) for p in self.bias_figures.poles if not np.isnan(p[0])]
+
+    def zeros(self) -> list[complex]:
+        """Zeros at the bias point in rad/s, by increasing magnitude."""
+        figures = self.zero_figures(self.bias_values, 1) or self.bias_figures
+        return [complex(z[0]) for z in figures.zeros if not np.isnan(z[0])]
+
+    def quantity(self, name: str) -> QuantityValue:
+        """A quantity by name ("dc", "p1.hz", "at(10 MHz).db"): value at the bias point, and formula."""
+        asked = parse_quantity(name)
+        unit = unit_of(asked, self.unit)
+        shape = formula_of(self, asked)
+        if self.missing:
+            why = f"{', '.join(self.missing)} has no bias value"
+            return QuantityValue(asked.text, None, unit, why, shape, (), self.negative_ok)
+        figures = self.bias_figures
+        if asked.name == "z" and self.first_zero is not None:
+            figures = self.zero_figures(self.bias_values, 1) or figures
+        value = figures.value(asked)[0]
+        if np.isnan(value):
+            return QuantityValue(asked.text, None, unit, figures.why(asked), shape, (), self.negative_ok)
+        plain = complex(value) if np.iscomplexobj(value) else float(value)
+        remarks = tuple(figures.remarks(asked))
+        return QuantityValue(asked.text, plain, unit, None, shape, remarks, self.negative_ok)
+
+    def _repr_latex_(self) -> str | None:
+        if not isinstance(self.form, Expanded):
+            return None
+        from symamp.exact.shape import polynomial_latex
+
+        parts = []
+        for coefficients in (self.form.numerator, self.form.denominator):
+            written = [
+                f"\\left({polynomial_latex(c)}\\right)" + ("" if k == 0 else " s" if k == 1 else f" s^{{{k}}}")
+                for k, c in enumerate(coefficients)
+                if not c.is_zero()
+            ]
+            parts.append(" + ".join(written) or "0")
+        return f"$\\displaystyle \\frac{{{parts[0]}}}{{{parts[1]}}}$"
+
+
+def _horner(coefficients: np.ndarray, sigma: np.ndarray) -> np.ndarray:
+    total = np.zeros(sigma.shape, dtype=complex)
+    for row in coefficients[::-1]:
+        total = total * sigma + row
+    return total
+
+
+def _ratios(coefficients: np.ndarray) -> np.ndarray:
+    """−c_(k−1)/c_k: the roots of a polynomial whose roots lie far apart, ascending in magnitude."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        found = -coefficients[:-1] / coefficients[1:]
+    found = np.where(np.isfinite(found), found, np.nan)
+    order = np.argsort(np.abs(found), axis=0, kind="stable")
+    return np.take_along_axis(found, order, axis=0).astype(complex)
+
+
+def _apart(coefficients: np.ndarray) -> np.ndarray:
+    """The polynomial that has `_ratios` for roots and the same leading coefficient."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        found = -coefficients[:-1] / coefficients[1:]
+    total = coefficients[-1:].copy()
+    for root in found:
+        shifted = np.zeros((total.shape[0] + 1, total.shape[1]))
+        shifted[1:] += total
+        shifted[:-1] -= root * total
+        total = shifted
+    return total
+
+
+def _floats(polynomial: fmpq_poly, omega: float) -> np.ndarray:
+    scale = Fraction(omega)
+    values = []
+    for k in range(polynomial.degree() + 1):
+        c = polynomial[k]
+        values.append(float(Fraction(int(c.p), int(c.q)) * scale**k))
+    return np.array(values or [0.0]).reshape(-1, 1)
+
+
+def _exact_roots(polynomial: fmpq_poly) -> np.ndarray:
+    """Roots by increasing magnitude, upper one of a pair first, correctly rounded: (degree, 1)."""
+    if polynomial.degree() < 1:
+        return np.empty((0, 1), dtype=complex)
+    found: list[complex] = []
+    for root, multiplicity in polynomial.numer().complex_roots():
+        value = complex(float(root.real.mid()), float(root.imag.mid()))
+        found.extend([value] * multiplicity)
+    found.sort(key=lambda r: (abs(r), -r.imag))
+    return np.array(found, dtype=complex).reshape(-1, 1)
