@@ -13,7 +13,7 @@ from symamp.circuit.near import propose
 from symamp.circuit.place import Path, Place
 from symamp.circuit.stage import Part
 from symamp.errors import ReadError
-from symamp.values import quoted, read_value
+from symamp.values import quoted, read_value, show_value
 
 Values = dict[str, Fraction]  # by bare parameter name
 
@@ -54,7 +54,8 @@ def check_sign(parameter: Parameter, value: Fraction, name: str) -> None:
     if value == 0 and not parameter.may_be_zero:
         raise ReadError(f"{name} is 0, and must be positive", "give a positive value, or leave it out")
     if value < 0 and not parameter.may_be_negative:
-        raise ReadError(f"{name} is negative, and must be positive", "give a positive value")
+        shown = show_value(float(value), parameter.unit)
+        raise ReadError(f"{name} is negative ({shown}), and must be positive", "give a positive value")
 
 
 def potential(parts: Mapping[str, Part]) -> dict[str, tuple[Part, str]]:

@@ -228,7 +228,10 @@ def unknown_symbol(stage: Stage, name: str) -> ReadError:
                 f"{part.label} has no {bare}, because its bias gives none",
                 f"add {bare} to the bias of {part.label}, or name one of {', '.join(symbols_of([part]))}",
             )
-    return ReadError(f"{quoted(name)} names no symbol", propose(name, known_names(stage), "symbols"))
+    known = known_names(stage)
+    if any(character.isdigit() or character == "_" for character in name):  # meant as one device's own
+        known = [other for other in known if other not in BARE_PARAMETERS] or known
+    return ReadError(f"{quoted(name)} names no symbol", propose(name, known, "symbols"))
 
 
 def _of_part(text: str, part: Part) -> Selection:

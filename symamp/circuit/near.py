@@ -17,8 +17,9 @@ def nearest(name: str, known: Iterable[str]) -> str | None:
     for candidate in known:
         if candidate.lower() == name.lower():
             return candidate
-    found = difflib.get_close_matches(name, known, n=1, cutoff=0.5)
-    return found[0] if found else None
+    likeness = {candidate: difflib.SequenceMatcher(None, name, candidate).ratio() for candidate in known}
+    best = max(known, key=likeness.__getitem__, default=None)  # the first of equals
+    return best if best is not None and likeness[best] >= 0.5 else None
 
 
 def propose(name: str, known: Iterable[str], what: str = "names") -> str:

@@ -310,7 +310,12 @@ def _definitions() -> Schema:
             "pattern": _PERCENT,
             "description": "Plus and minus this much of the bias value.",
         },
-        "names": {"type": "array", "items": {"type": "string", "minLength": 1}, "minItems": 1},
+        "names": {
+            "anyOf": [
+                {"type": "array", "items": {"type": "string", "minLength": 1}, "minItems": 1},
+                {"type": "string", "minLength": 1},
+            ]
+        },
         "drive": {
             "description": "A source, or several driven together by exact numbers.",
             "anyOf": [

@@ -203,7 +203,7 @@ class _Reader:
         return part if part.kind.prefixed else None
 
     def follow(self, name: str, leader: str, path: Path) -> Follow:
-        """An alias follows only an alias of the same power: ro1 that follows ro2 is gds1 that follows gds2."""
+        """An alias follows one of the same power: that ro1 follows ro2 says that gds1 follows gds2."""
         one, other = (self.stage.aliases.get(each, {each: 1}) for each in (name, leader))
         if len(one) > 1 or len(other) > 1 or list(one.values()) != list(other.values()):
             raise self.place.error(

@@ -90,9 +90,9 @@ def _read(path: Path) -> bytes:
             )
         with path.open("rb") as stream:
             data = stream.read(LARGEST + 1)
+    except InputError:
+        raise
     except (OSError, ValueError) as error:
-        if isinstance(error, StageError):
-            raise
         reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
         raise StageError(
             f"the file cannot be read: {reason}", "name a stage file", file=quoted(shown)

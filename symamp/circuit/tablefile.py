@@ -13,7 +13,7 @@ from pathlib import Path as FilePath
 from symamp.circuit.bias import Solved, check_sign, potential, solve
 from symamp.circuit.labels import unit_of, unknown_symbol
 from symamp.circuit.stage import Part, Stage, Table
-from symamp.errors import ReadError, StageError
+from symamp.errors import InputError, ReadError, StageError
 from symamp.values import quoted, read_value, split_unit
 
 LARGEST = 20_000_000  # bytes
@@ -60,6 +60,8 @@ def read_sheet(path: FilePath) -> Sheet:
         if path.stat().st_size > LARGEST:
             raise StageError(f"the table {shown} is over {LARGEST // 10**6} MB", "leave out some rows")
         text = path.read_bytes().decode("utf-8-sig")
+    except InputError:
+        raise
     except UnicodeDecodeError:
         raise StageError("the table is no UTF-8 text", "save it as CSV in UTF-8", file=shown) from None
     except (OSError, ValueError) as error:

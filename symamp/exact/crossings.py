@@ -1,8 +1,8 @@
 """Exact: magnitude against frequency without a grid, as polynomials in x = ω².
 
-N(jω) = E(x) + jω·O(x), so that |N(jω)|² = E² + x·O² is a polynomial in x, and the frequencies at which
-|H|² = |N|²/|D|² passes a level, is largest, or has a phase of 0 or 180° are roots of polynomials in x. All arrays
-are coefficients ascending, shape (k + 1, P), one column for each bias point.
+N(jω) = E(x) + jω·O(x), so that |N(jω)|² = E² + x·O² is a polynomial in x, and the frequencies at which |H|²
+= |N|²/|D|² passes a level, is largest, or has a phase of 0 or 180° are roots of polynomials in x. All
+arrays are coefficients ascending, shape (k + 1, P), one column for each bias point.
 """
 
 from __future__ import annotations
@@ -24,7 +24,8 @@ _NOISE = 16 * float(np.finfo(float).eps)  # sums smaller than this against their
 class Centred:
     """H(s) = gain · num(t)/den(t) with t = s/unit: the lowest coefficients near 1, the poles about 1.
 
-    `unit` (rad/s) and `gain` are powers of two, shape (P,), so nothing is rounded and squares do not overflow.
+    `unit` (rad/s) and `gain` are powers of two, shape (P,), so nothing is rounded and squares do not
+    overflow.
     """
 
     num: Reals
@@ -57,7 +58,7 @@ def ends(c: Reals) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
 
 
 def centred(num: Reals, den: Reals) -> Centred:
-    """The response with frequency in units of the geometric mean of its poles (of its zeros, without poles)."""
+    """The response in units of the geometric mean of its poles (without poles, of its zeros)."""
     every = np.arange(num.shape[1])
     (n_low, n_high), (d_low, d_high) = ends(num), ends(den)
     n_first, d_first = (_exponent(c[low, every]) for c, low in ((num, n_low), (den, d_low)))
@@ -194,7 +195,7 @@ def first(x: Reals, wanted: Flags) -> Reals:
 
 
 def sharpened(response: Centred, weight: Reals, x: Reals, steps: int = 2) -> Reals:
-    """Newton on ln(weight·|N|²/|D|²) over ln x; a step over 1 % is not taken (a level that is only touched)."""
+    """Newton on ln(weight·|N|²/|D|²) over ln x; no step over 1 % (a level that is only touched)."""
     for _ in range(steps):
         above, above_slope = _squared_and_slope(response.num, x)
         below, below_slope = _squared_and_slope(response.den, x)

@@ -1,7 +1,7 @@
 """Exact: what the quantities of a response are worth, at any number of bias points at once.
 
-From coefficient arrays alone; which quantity is meant is read in `symamp.exact.asked_quantity`, and the words for
-a value that does not exist are in `symamp.exact.missing_figures`.
+From coefficient arrays alone; which quantity is meant is read in `symamp.exact.asked_quantity`, and the
+words for a value that does not exist are in `symamp.exact.missing_figures`.
 """
 
 from __future__ import annotations
@@ -30,17 +30,27 @@ _HALF_A_TURN = 1.0  # degrees: how near to −180 a phase must be found where th
 class Figures:
     """The quantities of one response at P bias points.
 
-    `num`, `den`: coefficients of s ascending, shapes (n + 1, P) and (m + 1, P), in SI units; `unit` that of the
-    response, "" for a plain ratio. With `scale` σ (rad/s, a number or shape (P,)) the coefficients are those of
-    powers of s/σ, for responses of so high a degree that those of s itself would underflow. Powers of s that
-    numerator and denominator have in common at a point are cancelled there.
+    `num`, `den`: coefficients of s ascending, shapes (n + 1, P) and (m + 1, P), in SI units; `unit` that of
+    the response, "" for a plain ratio. With `scale` σ (rad/s, a number or shape (P,)) the coefficients are
+    those of powers of s/σ, for responses of so high a degree that those of s itself would underflow. Powers
+    of s that numerator and denominator have in common at a point are cancelled there.
     """
 
     def __init__(self, num: Reals, den: Reals, unit: str = "", scale: float | Reals = 1.0) -> None:
-        num, den = (np.atleast_2d(np.asarray(c, dtype=float)) for c in (num, den))
+        num, den = (np.asarray(c, dtype=float) for c in (num, den))
+        num, den = (c[:, None] if c.ndim == 1 else c for c in (num, den))
+        points = max(num.shape[1], den.shape[1], np.size(scale))
+        num, den = (np.broadcast_to(c, (c.shape[0], points)) for c in (num, den))
         self.num, self.den = crossings.without_common_s(num, den)
         self.unit = unit
-        self.scale = np.broadcast_to(np.asarray(scale, dtype=float), (self.den.shape[1],))
+        self.scale = np.broadcast_to(np.asarray(scale, dtype=float), (points,))
+
+    def set_roots(self, zeros: NDArray[Any], poles: NDArray[Any]) -> None:
+        """Take these zeros and poles (rad/s, shape (k, P)), known in a better way than from the coefficients.
+
+        They stand for `zeros` and `poles` and in the phase; magnitudes stay those of the coefficients.
+        """
+        self.__dict__.update(zeros=np.asarray(zeros, dtype=complex), poles=np.asarray(poles, dtype=complex))
 
     @property
     def points(self) -> int:
@@ -48,7 +58,7 @@ class Figures:
         return int(self.den.shape[1])
 
     def value(self, quantity: Quantity) -> Values:
-        """The quantity, with its face taken, shape (P,): complex for poles, zeros and `at`; nan for no value."""
+        """The quantity, its face taken, shape (P,): complex for poles, zeros and `at`; nan for no value."""
         with np.errstate(all="ignore"):
             return face(self._whole(quantity), quantity.face, quantity)
 
@@ -63,7 +73,11 @@ class Figures:
     def at_point(self, point: int) -> Figures:
         """The same response at one bias point."""
         here = slice(point, point + 1)
-        return Figures(self.num[:, here], self.den[:, here], self.unit, self.scale[here])
+        one = Figures(self.num[:, here], self.den[:, here], self.unit, self.scale[here])
+        for name in ("zeros", "poles"):
+            if name in self.__dict__:  # found or given already
+                one.__dict__[name] = self.__dict__[name][:, here]
+        return one
 
     def _whole(self, quantity: Quantity) -> Values:
         """The quantity without its face."""
@@ -193,10 +207,8 @@ class Figures:
     @cached_property
     def undamped(self) -> NDArray[np.bool_]:
         """Which poles lie on the imaginary axis, off s = 0, with no zero upon them."""
-        axis = (self.poles.real == 0) & (self.poles.imag != 0)
-        for zero in self.zeros:
-            axis &= self.poles != zero
-        return axis
+        axis = np.asarray((self.poles.real == 0) & (self.poles.imag != 0))
+        return axis & ~(self.poles[:, None] == self.zeros[None]).any(axis=1)
 
     @cached_property
     def peak(self) -> Reals:
@@ -218,7 +230,8 @@ class Figures:
         x = crossings.positive_roots(crossings.level_polynomial(*self._squares, weight))
         low = crossings.first(x[::-1], x[::-1] < peak_x)
         high = crossings.first(x, x > peak_x)
-        return crossings.sharpened(self._centred, weight, low), crossings.sharpened(self._centred, weight, high)
+        below, above = (crossings.sharpened(self._centred, weight, corner) for corner in (low, high))
+        return below, above
 
     @cached_property
     def low_corner(self) -> Reals:
@@ -235,11 +248,10 @@ class Figures:
     @cached_property
     def right_half_plane(self) -> NDArray[np.bool_]:
         """Where a pole lies in the right half plane."""
-        found: NDArray[np.bool_] = (self.poles.real > 0).any(axis=0)
-        return found
+        return np.asarray((self.poles.real > 0).any(axis=0))
 
     def phase(self, omega: Reals) -> Reals:
-        """Σ arg(1 − jω/z) − Σ arg(1 − jω/p) in degrees at ω rad/s, shape (P,); at DC poles −90°, zeros +90°."""
+        """Σ arg(1 − jω/z) − Σ arg(1 − jω/p) in degrees at ω rad/s, (P,); at DC poles −90°, zeros +90°."""
         return _turn(self.zeros, omega) - _turn(self.poles, omega)
 
     @cached_property
@@ -250,7 +262,7 @@ class Figures:
 
     @cached_property
     def gain_margin(self) -> Reals:
-        """dB where the phase first reaches −180°; nan where it never does, or `phase_margin`'s phase has none."""
+        """dB where that phase first reaches −180°; nan where it never does, as for `phase_margin`."""
         response = self._centred
         x = crossings.positive_roots(crossings.imaginary_polynomial(response.num, response.den))
         reached = np.full(x.shape, False)
@@ -288,7 +300,7 @@ _FACES: dict[str, Callable[[Values], Values]] = {
 
 
 def _degrees(values: Values) -> Reals:
-    """The angle; + 0.0 makes a negative zero imaginary part positive, so that −1 is at 180 and not at −180."""
+    """The angle; + 0.0 turns an imaginary part of −0 into 0, so that −1 is at 180 and not at −180."""
     angle = np.degrees(np.arctan2(values.imag + 0.0, values.real + 0.0))
     return np.where(values == 0, np.nan, angle)  # 0 points nowhere
 

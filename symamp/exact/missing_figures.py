@@ -1,4 +1,4 @@
-"""Exact: words for a quantity that has no value, and remarks beside one that has. One bias point at a time."""
+"""Exact: words for a quantity that has no value, and remarks beside one that has, at one bias point."""
 
 from __future__ import annotations
 
@@ -23,7 +23,8 @@ def why_missing(here: Figures, quantity: Quantity) -> str:
     if not (np.isfinite(here.num).all() and np.isfinite(here.den).all()):
         return "a coefficient is not finite at this bias point"
     if not here.den.any():
-        return "the denominator is 0 at this bias point" + ("" if here.num.any() else ", and the numerator too")
+        also = "" if here.num.any() else ", and the numerator too"
+        return f"the denominator is 0 at this bias point{also}"
     whole = Quantity(quantity.name, quantity.index, quantity.frequency)
     with np.errstate(all="ignore"):
         if quantity.face and not np.isnan(here.value(whole)[0]):
@@ -66,7 +67,7 @@ def _other_crossings(here: Figures) -> list[str]:
 def _against_limit(here: Figures) -> list[str]:
     if math.isnan(here.low_corner[0]) or not np.isinf(here.largest[0][0]):
         return []
-    return ["the magnitude is largest in the limit of high frequency, and the corner is taken against that limit"]
+    return ["the magnitude is largest in the limit of high frequency: the corner is against that limit"]
 
 
 def _dc(here: Figures, quantity: Quantity) -> str:

@@ -1,7 +1,8 @@
 """Exact: the roots of many real polynomials at once, one polynomial for each bias point.
 
-Degrees 1 to 3 have methods of their own, since a span asks for them ten thousand at a time; higher degrees take
-the eigenvalues of companion matrices, and what those do not settle goes to `symamp.exact.simultaneous`.
+Degrees 1 to 3 have methods of their own, since a span asks for them ten thousand at a time; higher degrees
+take the eigenvalues of companion matrices, and what those do not settle goes to
+`symamp.exact.simultaneous`.
 """
 
 from __future__ import annotations
@@ -26,10 +27,11 @@ _SPLIT = 134217729.0  # 2**27 + 1
 def roots(coefficients: NDArray[np.floating]) -> Complexes:
     """Roots of polynomials with real coefficients, ascending, shape (k + 1, P); returns shape (k, P).
 
-    Per point the roots stand by increasing magnitude, of a conjugate pair the upper one first; a real root has
-    an imaginary part of exactly 0 and pairs are exact conjugates. Where leading coefficients are exactly 0 the
-    roots at infinity come last, as nan; exactly zero trailing coefficients give roots of exactly 0. Points with
-    a coefficient that is not finite, or with none that is not 0, come out as nan throughout.
+    Per point the roots stand by increasing magnitude, of a conjugate pair the upper one first; a real root
+    has an imaginary part of exactly 0 and pairs are exact conjugates. Where leading coefficients are
+    exactly 0 the roots at infinity come last, as nan; exactly zero trailing coefficients give roots of
+    exactly 0. Points with a coefficient that is not finite, or with none that is not 0, come out as nan
+    throughout.
     """
     c = np.asarray(coefficients, dtype=float)
     degree, points = c.shape[0] - 1, c.shape[1]
@@ -41,7 +43,7 @@ def roots(coefficients: NDArray[np.floating]) -> Complexes:
 
 
 def _by_pattern(c: Reals) -> Complexes:
-    """Roots where leading or trailing coefficients are 0: points with the same pattern are solved together."""
+    """Roots where leading or trailing coefficients are 0: points of one pattern are solved together."""
     degree, points = c.shape[0] - 1, c.shape[1]
     out = np.full((degree, points), complex(np.nan, np.nan))
     present = c != 0
@@ -66,10 +68,7 @@ def _proper(c: Reals) -> Complexes:
     if degree == 2 and _within_safe_range(c):
         return _quadratic(*c)
     scaled, exponent = _centred(c)
-    if degree == 2:
-        found = _quadratic(*scaled)
-    else:
-        found = _cubic(scaled) if degree == 3 else _by_eigenvalues(scaled)
+    found = _SOLVERS.get(degree, _by_eigenvalues)(scaled)
     found.real = np.ldexp(found.real, exponent)
     found.imag = np.ldexp(found.imag, exponent)
     return found
@@ -135,8 +134,9 @@ def _exact_product(x: Reals, y: Reals) -> tuple[Reals, Reals]:
 def _cubic(coefficients: Reals) -> Complexes:
     """Roots of d + c·s + b·s² + a·s³: an outermost real root by Newton, then the quadratic that is left.
 
-    The start beyond the root, from which Newton is monotone, and the choice of the deflation that loses nothing
-    are those of Kahan, To Solve a Real Cubic Equation (1986). Points that do not settle take eigenvalues.
+    The start beyond the root, from which Newton is monotone, and the choice of the deflation that loses
+    nothing are those of Kahan, To Solve a Real Cubic Equation (1986). Points that do not settle take
+    eigenvalues.
     """
     d, c, b, a = coefficients
     x, settled = _outermost_root(d, c, b, a)
@@ -195,7 +195,7 @@ def _insert(pair: Complexes, x: Reals) -> Complexes:
 
 
 def _by_eigenvalues(c: Reals) -> Complexes:
-    """Roots as eigenvalues of companion matrices, sharpened by Newton; the unsettled by simultaneous iteration."""
+    """Eigenvalues of companion matrices, sharpened by Newton; the unsettled by simultaneous iteration."""
     pieces = [c[:, k : k + _CHUNK] for k in range(0, c.shape[1], _CHUNK)]
     out = np.concatenate([_eigenvalues(piece) for piece in pieces], axis=1)
     out = newton_steps(c, out, 2)
@@ -216,3 +216,6 @@ def _eigenvalues(c: Reals) -> Complexes:
     if not np.isfinite(matrix).all():
         return np.full((degree, points), complex(np.nan, np.nan))
     return np.ascontiguousarray(np.linalg.eigvals(matrix).T).astype(complex)
+
+
+_SOLVERS = {2: lambda c: _quadratic(*c), 3: _cubic}

@@ -1,7 +1,7 @@
 """Exact: simultaneous iteration on all roots of many polynomials (Aberth), and the checks of found roots.
 
-Slower than eigenvalues, but right however far apart the roots lie: it starts from the radii of the Newton polygon
-(Bini, Numerical Algorithms 13, 1996), so that a root at 1 is not lost beside one at 1e18.
+Slower than eigenvalues, but right however far apart the roots lie: it starts from the radii of the Newton
+polygon (Bini, Numerical Algorithms 13, 1996), so that a root at 1 is not lost beside one at 1e18.
 """
 
 from __future__ import annotations
@@ -17,7 +17,7 @@ _ROUNDS = 80
 
 
 def newton_steps(c: Reals, z: Complexes, count: int) -> Complexes:
-    """`count` Newton steps on roots z, shape (k, P), of the polynomials c; wild or undefined steps are not taken.
+    """`count` Newton steps on roots z, shape (k, P), of the polynomials c; no wild or undefined ones.
 
     A conjugate pair stays an exact pair, and a real root real.
     """
@@ -49,7 +49,7 @@ def newton_correction(c: Reals, z: Complexes) -> tuple[Complexes, NDArray[np.boo
 
 
 def unsettled(c: Reals, z: Complexes) -> NDArray[np.bool_]:
-    """Points, shape (P,), where some root still moves, or the product of the roots misses c0/ck: one was lost."""
+    """Where, shape (P,), some root still moves, or the product of the roots misses c0/ck: one is lost."""
     step, rounding = newton_correction(c, z)
     still = rounding | (np.abs(step) <= 1e-11 * np.abs(z))
     product = np.log(np.abs(z)).sum(axis=0)
@@ -77,7 +77,8 @@ def _aberth_step(c: Reals, z: Complexes) -> Complexes:
     pull = np.zeros_like(z)
     for k in range(z.shape[0]):
         gap = z - z[k]
-        pull += np.where(gap == 0, 0, 1 / gap)
+        gap[gap == 0] = np.inf  # a root does not pull on itself
+        pull += 1 / gap
     step = step / (1 - step * pull)
     return np.where(rounding | ~np.isfinite(step), 0, step)
 

@@ -86,7 +86,8 @@ def test_three_equal_poles_have_their_textbook_margins():
         loop = with_roots(gain, [-1, -1, -1])
         assert value(loop, "gain_margin") == pytest.approx(20 * math.log10(8 / gain), abs=1e-9)
         omega = math.sqrt(gain ** (2 / 3) - 1)
-        assert value(loop, "phase_margin") == pytest.approx(180 - 3 * math.degrees(math.atan(omega)), rel=1e-9)
+        margin = 180 - 3 * math.degrees(math.atan(omega))
+        assert value(loop, "phase_margin") == pytest.approx(margin, rel=1e-9)
 
 
 def test_integrators_and_zeros_at_dc_count_a_right_angle():
@@ -124,7 +125,7 @@ def test_other_unity_crossings_are_remarked():
     (remark,) = twice.remarks(parse_quantity("unity_gain_frequency"))
     assert "also passes through 1 at" in remark
     every = twice.unity_crossings[:, 0]
-    assert np.allclose(every * TWO_PI, [4 - math.sqrt(15) + 0 * every[0], 4 + math.sqrt(15)], rtol=1e-1)
+    assert np.allclose(every * TWO_PI, [5 - math.sqrt(24), 5 + math.sqrt(24)], rtol=1e-12)  # 1 + ω² = 10ω
     assert all(abs(twice.at(float(f))[0]) == pytest.approx(1, rel=1e-12) for f in every)
 
 
@@ -193,6 +194,19 @@ def test_a_scale_of_frequency_changes_nothing():
     for name in (*NAMES, "p1", "p3", "z1", "a1", "b2", "at(3 MHz)"):
         quantity = parse_quantity(name)
         assert np.allclose(plain.value(quantity), scaled.value(quantity), rtol=1e-10, equal_nan=True), name
+
+
+def test_given_roots_stand_in_for_those_of_the_coefficients():
+    stage = response([10, 1], [1, 1, 1])
+    stage.set_roots(np.array([[-9.0]]), np.array([[-1.0], [-2.0]]))
+    assert (value(stage, "z1"), value(stage, "p2")) == (-9, -2)
+    assert "only 2 poles" in why(stage, "p3")
+    assert value(stage, "at(1 Hz)") == value(response([10, 1], [1, 1, 1]), "at(1 Hz)")
+
+
+def test_one_column_serves_all_points():
+    figures = Figures(np.array([10.0]), np.array([[1.0, 1.0], [1.0, 2.0]]))
+    assert np.allclose(figures.value(parse_quantity("bandwidth")) * TWO_PI, [1, 0.5])
 
 
 def test_faces():
@@ -298,8 +312,8 @@ def test_margins_agree_with_a_dense_evaluation(system):
         assert phase.min() < -180 + 0.2
 
 
-# Rules of thumb. Source: "Two real poles p2 = k p1" computed from the standard rule, Gray, Hurst, Lewis & Meyer,
-# Analysis and Design of Analog Integrated Circuits, 5th edition, 7.3.1; N equal poles as of 7.3.3.
+# Rules of thumb. Two real poles p2 = k·p1: computed; the rule is standard, Gray, Hurst, Lewis & Meyer,
+# Analysis and Design of Analog Integrated Circuits, 5th edition, 7.3.1; N equal poles: the same, 7.3.3.
 
 
 @pytest.mark.parametrize(
@@ -320,7 +334,8 @@ def test_two_real_poles(k, taken_as_p1, taken_as_b1):
     stage = with_roots(-50, [-1e6, -1e6 * k])
     exact = TWO_PI * value(stage, "bandwidth")
     assert 100 * (1e6 / exact - 1) == pytest.approx(taken_as_p1, abs=0.5 if k < 4 else 0.055)
-    assert 100 * (1 / value(stage, "b1") / exact - 1) == pytest.approx(taken_as_b1, abs=0.5 if k < 5 else 0.055)
+    by_b1 = 1 / value(stage, "b1")
+    assert 100 * (by_b1 / exact - 1) == pytest.approx(taken_as_b1, abs=0.5 if k < 5 else 0.055)
 
 
 @pytest.mark.parametrize(("count", "share"), [(2, 0.644), (3, 0.510), (4, 0.435)])
@@ -339,5 +354,7 @@ def test_equal_poles(count, share):
 )
 def test_phase_margin_against_second_pole(r, zero, margin):
     gain_bandwidth = 1e8
-    loop = with_roots(1e6, [-gain_bandwidth / 1e6, -r * gain_bandwidth], [zero * gain_bandwidth] if zero else [])
-    assert value(loop, "phase_margin") == pytest.approx(margin, abs=0.06)
+    zeros = [zero * gain_bandwidth] if zero else []
+    loop = with_roots(1e6, [-gain_bandwidth / 1e6, -r * gain_bandwidth], zeros)
+    # the row with a zero depends on the unnamed DC gain in its last digit: 61.9 at 1e6, 62.0 at 500
+    assert value(loop, "phase_margin") == pytest.approx(margin, abs=0.12 if zero else 0.06)

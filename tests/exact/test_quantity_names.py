@@ -71,7 +71,7 @@ def test_refuses_with_advice(text, advice):
     assert advice in str(caught.value)
 
 
-@pytest.mark.parametrize("text", ["at", "at()", "at(10 MV)", "at(-1 Hz)", "at(10 MHz", "at(1)(2)", "p1.hz.db"])
+@pytest.mark.parametrize("text", ["at", "at()", "at(10 MV)", "at(-1 Hz)", "at(10 MHz", "at(1)(2)", "p1.hz.x"])
 def test_refuses(text):
     with pytest.raises(errors.ReadError):
         parse_quantity(text)

@@ -55,7 +55,7 @@ def worst_error(found, column):
 def assert_in_form(found):
     """Sorted by magnitude, pairs exact and side by side with the upper one first, real roots exactly real."""
     size = np.abs(found)
-    assert (np.diff(size, axis=0) >= 0).all()
+    assert (np.diff(size, axis=0) >= -1e-14 * size[1:]).all()  # equal ones stand as rounding has it
     for column in found.T:
         k = 0
         while k < column.size:
@@ -88,7 +88,8 @@ def test_a_nearly_double_quadratic_keeps_its_digits(gap, sign):
         with mpmath.workdps(50):
             c0, c1, c2 = (mpmath.mpf(float(x)) for x in c[:, k])
             root = mpmath.sqrt(c1 * c1 - 4 * c0 * c2)
-            exact = sorted([(-c1 + root) / (2 * c2), (-c1 - root) / (2 * c2)], key=lambda x: (abs(x), -x.imag))
+            both = [(-c1 + root) / (2 * c2), (-c1 - root) / (2 * c2)]
+            exact = sorted(both, key=lambda x: (abs(x), -x.imag))
             assert all(abs(x - complex(y)) < 1e-12 * abs(x) for x, y in zip(exact, found[:, k], strict=True))
 
 
@@ -109,16 +110,15 @@ def test_simultaneous_iteration_alone_finds_the_same_roots(degree):
 
 def test_tiny_coefficients_do_not_underflow():
     wanted = scattered(6, 1, 5, 1e4, middle=1e9)
-    at_scale = np.arange(7)[:, None]
     c = from_roots(wanted)
-    shifted = np.ldexp(c, -750 + 0 * at_scale)
+    shifted = np.ldexp(c, -750)
     assert np.allclose(roots(shifted), roots(c), rtol=1e-12)
     quadratic = np.array([[1e-250], [1e-255], [1e-262]])
     assert np.allclose(roots(quadratic), roots(quadratic * 1e250), rtol=1e-12)
 
 
 def test_zero_coefficients_at_some_points_only():
-    c = np.array([[0.0, 0.0, 1.0, 1.0, 0.0, np.nan], [1.0, 1.0, 0.0, 2.0, 0.0, 1.0], [0.0, 2.0, 0.0, 0.0, 0.0, 1.0]])
+    c = np.array([[0, 0, 1, 1, 0, np.nan], [1, 1, 0, 2, 0, 1], [0, 2, 0, 0, 0, 1]])
     found = roots(c)
     assert found[0, 0] == 0
     assert np.isnan(found[1, 0])

@@ -1,0 +1,1 @@
+"""Judgement: the ledger of errors (imports span and below)."""

@@ -1,0 +1,85 @@
+"""The error of a quantity as a formula, where both sides are rational in the symbols."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from flint import fmpz_mpoly
+
+from symamp.assumptions.rewrite import into_ring
+from symamp.exact.asked_quantity import Quantity, is_root
+from symamp.exact.formulas import rational_of
+from symamp.exact.polys import S, lowest_terms, ring_of
+from symamp.exact.response import Response
+from symamp.exact.shape import Shape, shape_of
+from symamp.exact.tape import term_dict
+from symamp.judge.pairing import partners
+
+_TERM_LIMIT = 4000  # terms above which the difference is not multiplied out
+
+
+@dataclass(frozen=True)
+class ErrorFormula:
+    """The error (a − e)/e in lowest terms, and its leading term: the largest at the bias point over the largest."""
+
+    shape: Shape
+    leading: Shape | None
+
+
+def error_formula(exact: Response, approximate: Response, quantity: Quantity) -> ErrorFormula | None:
+    """The error's formula, or None where the quantity is not rational in the symbols."""
+    if quantity.face is not None:
+        return None
+    e = rational_of(exact, quantity)
+    a = _partner(exact, approximate, quantity)
+    if e is None or a is None or e[0].is_zero() or a[1].is_zero():
+        return None
+    if max(len(e[0]) * len(a[1]), len(a[0]) * len(e[1])) > _TERM_LIMIT:
+        return None
+    names = (set(e[0].context().names()) | set(a[0].context().names())) - {S}
+    context = ring_of(exact.stage.symbols, names)
+    (en, ed), (an, ad) = (tuple(into_ring(p, context) for p in ratio) for ratio in (e, a))
+    above, below = an * ed - en * ad, en * ad
+    if above.is_zero():
+        return ErrorFormula(shape_of(above), None)
+    above, below = lowest_terms(above, below)
+    weights = exact.bias_values or None
+    leading = shape_of(*lowest_terms(_largest(above, exact), _largest(below, exact)), weights=weights)
+    return ErrorFormula(shape_of(above, below, weights=weights), leading)
+
+
+def _partner(
+    exact: Response, approximate: Response, quantity: Quantity
+) -> tuple[fmpz_mpoly, fmpz_mpoly] | None:
+    """The approximate quantity as a ratio: of a root that of its partner at the bias point."""
+    if not is_root(quantity):
+        return rational_of(approximate, quantity)
+    both = [
+        np.array(r.poles() if quantity.name == "p" else r.zeros(), dtype=complex).reshape(-1, 1)
+        for r in (exact, approximate)
+    ]
+    index = (quantity.index or 1) - 1
+    found = partners(*both)
+    if index >= found.shape[0] or np.isnan(found[index, 0]):
+        return None
+    place = int(np.flatnonzero(both[1][:, 0] == found[index, 0])[0])
+    return rational_of(approximate, Quantity(quantity.name, index=place + 1))
+
+
+def _largest(polynomial: fmpz_mpoly, exact: Response) -> fmpz_mpoly:
+    """The term that is largest in magnitude at the bias point."""
+
+    def size(item: tuple[tuple[tuple[str, int], ...], int]) -> float:
+        product = abs(float(item[1]))
+        for name, exponent in item[0]:
+            product *= abs(exact.bias_values.get(name, 1.0)) ** exponent
+        return product
+
+    monomial, coefficient = max(term_dict(polynomial).items(), key=size)
+    context = polynomial.context()
+    place = {name: i for i, name in enumerate(context.names())}
+    exponents = [0] * context.nvars()
+    for name, exponent in monomial:
+        exponents[place[name]] = exponent
+    return context.from_dict({tuple(exponents): coefficient})

@@ -1,0 +1,335 @@
+"""The ledger: what each assumption adds to the error of each quantity, at the bias point and over the span."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import Any
+
+import numpy as np
+
+from symamp.assumptions.read import Assumption, read_assumptions
+from symamp.circuit.stage import Stage
+from symamp.errors import InputError, StageError
+from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root, parse_quantity, unit_of
+from symamp.exact.derive import derive
+from symamp.exact.formulas import Formula, formula_of
+from symamp.exact.response import Response
+from symamp.judge.error_formula import ErrorFormula, error_formula
+from symamp.judge.errors_at import ErrorTable
+from symamp.judge.pairing import left_over
+from symamp.judge.sets import FIGURES, names_of
+from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
+
+POINTS = 4096
+SEED = 1
+Progress = Callable[[int, int], None]
+
+
+@dataclass(frozen=True)
+class LostRoot:
+    """A root without a partner: its name in the response it belongs to, and its frequency in Hz."""
+
+    name: str
+    hz: float
+
+
+@dataclass(frozen=True)
+class Share:
+    """One assumption's part in a quantity's error: figures at the bias point (None with `why`) and over the span."""
+
+    name: str
+    figures: Mapping[str, float | complex | None]
+    why: Mapping[str, str]
+    span: Mapping[str, SpanFigure]
+
+
+@dataclass(frozen=True)
+class Account:
+    """The account of one quantity of one response under all its assumptions."""
+
+    response: str
+    quantity: Quantity
+    unit: str
+    exact: float | complex | None
+    approximate: float | complex | None
+    error: float | complex | None
+    why: str
+    error_absolute: float | complex | None
+    formula_exact: Formula | None
+    formula_approximate: Formula | None
+    error_formula: ErrorFormula | None
+    modulus: bool
+    absolute: bool
+    lost: tuple[LostRoot, ...]
+    new: tuple[LostRoot, ...]
+    assumptions: tuple[Share, ...]
+    span: SpanFigure | None
+    remarks: tuple[str, ...] = ()
+
+    @property
+    def name(self) -> str:
+        return f"{self.response}.{self.quantity.text}"
+
+
+@dataclass(frozen=True)
+class Ledger:
+    """The accounts of all quantities asked for, with what a reader should know beside them."""
+
+    stage: Stage
+    assumptions: tuple[str, ...]
+    accounts: tuple[Account, ...]
+    warnings: tuple[str, ...]
+    remarks: tuple[str, ...]
+    points: int = 0
+    seed: int | None = None
+    method: str = ""
+
+    def __getitem__(self, name: str) -> Account:
+        for account in self.accounts:
+            if account.name == name:
+                return account
+        raise KeyError(name)
+
+
+@dataclass
+class _Notes:
+    warnings: list[str] = field(default_factory=list)
+    remarks: list[str] = field(default_factory=list)
+
+
+def make_ledger(
+    stage: Stage,
+    *,
+    quantities: Sequence[str] = (),
+    assumptions: Sequence[Assumption] | None = None,
+    points: int = POINTS,
+    seed: int = SEED,
+    progress: Progress | None = None,
+) -> Ledger:
+    """The ledger of a stage: all its assumptions, or those given.
+
+    `quantities` such as "gain.p1"; without any, those of `default_quantities` of every response. `points` Sobol
+    points are drawn from a box with that seed. Raises StageError where a bias value is missing or a name unknown.
+    """
+    made = tuple(read_assumptions(stage) if assumptions is None else assumptions)
+    if not made:
+        raise StageError(
+            "this stage makes no assumption, so there is no error to account for",
+            'add one, such as [[assumption]] with name = "no body effect" and neglect = ["gmb"]',
+            key="assumption",
+            file=stage.file,
+        )
+    asked = _asked(stage, quantities)
+    notes = _Notes(list(stage.warnings), list(stage.remarks))
+    tables = {name: _table(stage, name, made, wanted, notes) for name, wanted in asked.items()}
+    swept = span_errors(stage, list(tables.values()), points, seed, progress)
+    accounts: list[Account] = []
+    for name, table in tables.items():
+        accounts.extend(_accounts(name, table, swept))
+        if not table.plan.shares:
+            notes.remarks.append(
+                f"{name}: shares are worked out for up to 12 assumptions, and there are {table.plan.count}"
+            )
+    return Ledger(
+        stage,
+        tuple(a.name for a in made),
+        tuple(accounts),
+        tuple(dict.fromkeys(notes.warnings)),
+        tuple(dict.fromkeys(notes.remarks)),
+        swept.points if swept else 0,
+        swept.seed if swept else None,
+        swept.method if swept else "",
+    )
+
+
+def _asked(stage: Stage, names: Sequence[str]) -> dict[str, tuple[Quantity, ...] | None]:
+    """{response: its quantities, or None for the default ones}."""
+    if not names:
+        return dict.fromkeys(stage.asked)
+    found: dict[str, list[Quantity]] = {}
+    for name in names:
+        response, dot, rest = name.partition(".")
+        if response not in stage.asked or not dot:
+            known = ", ".join(stage.asked)
+            raise StageError(
+                f"{name!r} names no quantity of a response",
+                f"write RESPONSE.QUANTITY, such as {next(iter(stage.asked))}.dc; responses are {known}",
+                key="--quantity",
+            )
+        try:
+            quantity = parse_quantity(rest)
+        except InputError as error:
+            raise error.at(key="--quantity") from None
+        found.setdefault(response, [])
+        if quantity not in found[response]:
+            found[response].append(quantity)
+    return {name: tuple(found[name]) for name in stage.asked if name in found}
+
+
+def default_quantities(exact: Response) -> tuple[Quantity, ...]:
+    """dc, the poles and zeros, bandwidth, and unity-gain frequency where the response has one."""
+    names = ["dc"]
+    names += [f"p{k}" for k in range(1, len(exact.poles()) + 1)]
+    names += [f"z{k}" for k in range(1, len(exact.zeros()) + 1)]
+    names += [
+        name for name in ("bandwidth", "unity_gain_frequency") if exact.quantity(name).value is not None
+    ]
+    return tuple(parse_quantity(name) for name in names)
+
+
+def _table(
+    stage: Stage, name: str, made: Sequence[Assumption], wanted: tuple[Quantity, ...] | None, notes: _Notes
+) -> ErrorTable:
+    exact = derive(stage, stage.asked[name])
+    if exact.missing:
+        raise StageError(
+            f"the ledger needs a bias value for {', '.join(exact.missing)}",
+            f'give it in [bias], such as {exact.missing[0]} = "…"',
+            key="bias",
+            file=stage.file,
+        )
+    table = ErrorTable(exact, made, wanted or default_quantities(exact))
+    full = table.approximations[table.plan.masks[-1]]
+    for approximation in table.approximations.values():
+        notes.warnings.extend(approximation.warnings)
+    notes.remarks.extend(f"{name}: {remark}" for remark in full.remarks)
+    if full.response is None:
+        notes.remarks.append(f"{name}: under all assumptions there is no response left: {full.why}")
+    return table
+
+
+def _accounts(name: str, table: ErrorTable, swept: SpanErrors | None) -> list[Account]:
+    at_bias = table.at_bias()
+    return [_account(name, table, quantity, *at_bias[quantity], swept) for quantity in table.quantities]
+
+
+def _account(
+    name: str,
+    table: ErrorTable,
+    quantity: Quantity,
+    values: np.ndarray,
+    errors: np.ndarray,
+    swept: SpanErrors | None,
+) -> Account:
+    exact, full = table.exact, table.approximations[table.plan.masks[-1]]
+    figures = table.plan.figures(errors)[:, 0]
+    span = swept.of(name, quantity) if swept else None
+    lost, new = _left_over(table, quantity)
+    approximate = full.response
+    value_e, value_a = _number(values[0, 0]), _number(values[-1, 0])
+    why = _why(table, quantity, values, lost)
+    formula = None if approximate is None else error_formula(exact, approximate, quantity)
+    return Account(
+        response=name,
+        quantity=quantity,
+        unit=unit_of(quantity, exact.unit),
+        exact=value_e,
+        approximate=value_a,
+        error=_number(figures[0]),
+        why=why,
+        error_absolute=value_a - value_e if value_e == 0 and value_a is not None else None,
+        formula_exact=formula_of(exact, quantity),
+        formula_approximate=None if approximate is None else _approximate_formula(table, quantity, values),
+        error_formula=formula,
+        modulus=bool(span and span[0] and span[0].modulus) or bool(np.iscomplexobj(figures) and figures[0].imag),
+        absolute=in_decibels_or_degrees(quantity),
+        lost=lost,
+        new=new,
+        assumptions=_shares(table, figures, errors[:, 0], span),
+        span=span[0] if span else None,
+        remarks=tuple(exact.bias_figures.remarks(quantity)) if value_e is not None else (),
+    )
+
+
+def _approximate_formula(table: ErrorTable, quantity: Quantity, values: np.ndarray) -> Formula | None:
+    """The approximate quantity as a formula: of a root, that of the partner, whatever its index."""
+    response = table.approximations[table.plan.masks[-1]].response
+    assert response is not None
+    if not is_root(quantity):
+        return formula_of(response, quantity)
+    value = values[-1, 0]
+    if np.isnan(value) or quantity.face is not None:
+        return None
+    roots = response.poles() if quantity.name == "p" else response.zeros()
+    for k, root in enumerate(roots, start=1):
+        if root == value:
+            return formula_of(response, Quantity(quantity.name, index=k))
+    return None
+
+
+def _why(table: ErrorTable, quantity: Quantity, values: np.ndarray, lost: Sequence[LostRoot]) -> str:
+    """Why there is no error at the bias point, or ""."""
+    exact, full = table.exact, table.approximations[table.plan.masks[-1]]
+    if np.isnan(values[0, 0]):
+        return exact.bias_figures.why(quantity)
+    if full.response is None:
+        return full.why
+    if np.isnan(values[-1, 0]):
+        mine = f"{quantity.name}{quantity.index}"
+        if is_root(quantity):
+            hz = next((root.hz for root in lost if root.name == mine), None)
+            return f"{mine} is lost" if hz is None else f"{mine}, at {hz:.4g} Hz, is lost: it has no partner"
+        return full.response.bias_figures.why(quantity)
+    if values[0, 0] == 0:
+        return "the exact value is 0, so there is no relative error"
+    return ""
+
+
+def _left_over(table: ErrorTable, quantity: Quantity) -> tuple[tuple[LostRoot, ...], tuple[LostRoot, ...]]:
+    """Lost and new roots under all assumptions, of the kind that the quantity is."""
+    approximate = table.approximations[table.plan.masks[-1]].response
+    if not is_root(quantity) or approximate is None:
+        return (), ()
+    kind = quantity.name
+    exact_roots = table.exact.poles() if kind == "p" else table.exact.zeros()
+    own = approximate.poles() if kind == "p" else approximate.zeros()
+    lost, new = left_over(np.array(exact_roots, dtype=complex), np.array(own, dtype=complex))
+    return _named(kind, lost, exact_roots), _named(kind, new, own)
+
+
+def _named(kind: str, roots: Sequence[complex], among: Sequence[complex]) -> tuple[LostRoot, ...]:
+    return tuple(LostRoot(f"{kind}{list(among).index(root) + 1}", abs(root) / (2 * np.pi)) for root in roots)
+
+
+def _shares(
+    table: ErrorTable, figures: np.ndarray, errors: np.ndarray, span: Sequence[SpanFigure | None] | None
+) -> tuple[Share, ...]:
+    names = [assumption.name for assumption in table.assumptions]
+    shares = []
+    for k, name in enumerate(names):
+        values: dict[str, float | complex | None] = {}
+        why: dict[str, str] = {}
+        over: dict[str, SpanFigure] = {}
+        for figure in FIGURES:
+            row = 1 + table.plan.rows.index((k, figure)) if (k, figure) in table.plan.rows else None
+            if row is None:
+                values[figure] = None
+                why[figure] = "shares are worked out for up to 12 assumptions"
+                continue
+            values[figure] = _number(figures[row])
+            if values[figure] is None:
+                why[figure] = _missing_words(table, row, errors, names)
+            found = span[row] if span else None
+            if found is not None:
+                over[figure] = found
+        shares.append(Share(name, values, why, over))
+    return tuple(shares)
+
+
+def _missing_words(table: ErrorTable, row: int, errors: np.ndarray, names: Sequence[str]) -> str:
+    mask = table.plan.smallest_missing(row, errors)
+    if mask is None:
+        return "the quantity has no value"
+    listed = " and ".join(repr(name) for name in names_of(mask, names))
+    words = table.approximations[mask].why
+    return f"under {listed} the quantity has no value" + (f": {words}" if words else "")
+
+
+def _number(value: Any) -> float | complex | None:
+    """A number as plain Python; None for nan; real where the imaginary part is exactly 0."""
+    if np.isnan(value):
+        return None
+    if np.iscomplexobj(value):
+        return complex(value) if value.imag else float(value.real)
+    return float(value)

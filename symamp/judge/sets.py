@@ -1,0 +1,103 @@
+"""Sets of assumptions and the figures of a ledger as weighted sums over them.
+
+With e(S) the error when just the set S is made, alone, added, last and share of each assumption and the error of
+all are linear in the e(S): a matrix of weights times the errors. A set is a bit mask over the listed assumptions.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+from math import factorial
+
+import numpy as np
+
+SHARES_LIMIT = 12  # assumptions up to which shares are worked out, by all 2**n sets
+
+FIGURES = ("alone", "added", "last", "share")
+
+
+@dataclass(frozen=True)
+class Plan:
+    """Which sets are needed for n assumptions, and the rows of figures over them."""
+
+    count: int
+
+    @property
+    def shares(self) -> bool:
+        """Whether shares are worked out."""
+        return self.count <= SHARES_LIMIT
+
+    @cached_property
+    def masks(self) -> tuple[int, ...]:
+        """The sets, the empty one first and the full one last."""
+        everything = (1 << self.count) - 1
+        if self.shares:
+            return tuple(range(1 << self.count))
+        needed = {0, everything}
+        for k in range(self.count):
+            needed |= {1 << k, (1 << (k + 1)) - 1, everything ^ (1 << k)}
+        return tuple(sorted(needed))
+
+    @cached_property
+    def rows(self) -> tuple[tuple[int, str], ...]:
+        """(assumption, figure) of each row after the first, which is the error of all (assumption −1)."""
+        names = FIGURES if self.shares else FIGURES[:3]
+        return tuple((k, name) for k in range(self.count) for name in names)
+
+    @cached_property
+    def weights(self) -> np.ndarray:
+        """(1 + rows, sets): row 0 is e(all); e of the empty set is 0 and has weight 0 throughout."""
+        column = {mask: i for i, mask in enumerate(self.masks)}
+        everything = (1 << self.count) - 1
+        matrix = np.zeros((1 + len(self.rows), len(self.masks)))
+        matrix[0, column[everything]] = 1.0
+        for row, (k, figure) in enumerate(self.rows, start=1):
+            bit = 1 << k
+            if figure == "alone":
+                matrix[row, column[bit]] = 1.0
+            elif figure == "added":
+                matrix[row, column[(bit << 1) - 1]] += 1.0
+                matrix[row, column[bit - 1]] -= 1.0
+            elif figure == "last":
+                matrix[row, column[everything]] += 1.0
+                matrix[row, column[everything ^ bit]] -= 1.0
+            else:
+                self._share(matrix[row], column, bit)
+        matrix[:, column[0]] = 0.0
+        return matrix
+
+    def _share(self, row: np.ndarray, column: dict[int, int], bit: int) -> None:
+        """The Shapley value (Shapley, "A value for n-person games", 1953): the mean increment over all orders."""
+        n = self.count
+        for mask in self.masks:
+            if not mask & bit:
+                size = mask.bit_count()
+                weight = factorial(size) * factorial(n - size - 1) / factorial(n)
+                row[column[mask | bit]] += weight
+                row[column[mask]] -= weight
+
+    def figures(self, errors: np.ndarray) -> np.ndarray:
+        """(1 + rows, P) from errors of shape (sets, P); nan where a set that a figure needs has no value."""
+        missing = np.isnan(errors)
+        if not missing.any():
+            return np.asarray(self.weights @ errors)
+        found = self.weights @ np.where(missing, 0.0, errors)
+        lacking = (self.weights != 0).astype(float) @ missing.astype(float) > 0
+        found[lacking] = np.nan
+        return np.asarray(found)
+
+    def smallest_missing(self, row: int, errors: np.ndarray) -> int | None:
+        """The smallest set, listed order first, that a row needs and whose error is nan; errors (sets,)."""
+        needed = [
+            mask
+            for mask, weight, error in zip(self.masks, self.weights[row], errors, strict=True)
+            if weight and np.isnan(error)
+        ]
+        return min(needed, key=lambda mask: (mask.bit_count(), mask), default=None)
+
+
+def names_of(mask: int, names: Sequence[str]) -> tuple[str, ...]:
+    """The assumptions of a set."""
+    return tuple(name for k, name in enumerate(names) if mask >> k & 1)

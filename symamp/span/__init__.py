@@ -1,0 +1,1 @@
+"""Spans: boxes and tables of bias points, and what is sampled from them (imports assumptions and below)."""

@@ -1,0 +1,80 @@
+"""Least and greatest values of many figures while points stream by, and where each was reached.
+
+A figure may be real or complex. Of both kinds the extremes of the real number and of the modulus are kept; which
+of the two a figure shows is settled at the end, by whether any point was complex.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+
+@dataclass(frozen=True)
+class Extreme:
+    """Least and greatest value of a figure, each with its point (u of a box, or the row of a table)."""
+
+    least: float
+    greatest: float
+    at_least: np.ndarray
+    at_greatest: np.ndarray
+    modulus: bool
+
+
+class Extremes:
+    """Running extremes of `rows` figures."""
+
+    def __init__(self, rows: int) -> None:
+        self._value = np.full((4, rows), np.nan)  # least and greatest signed, least and greatest modulus
+        self._place: list[list[np.ndarray | None]] = [[None] * rows for _ in range(4)]
+        self._complex = np.zeros(rows, dtype=bool)
+        self.missing = np.zeros(rows, dtype=int)
+
+    @property
+    def rows(self) -> int:
+        return int(self._value.shape[1])
+
+    def take(self, figures: np.ndarray, places: np.ndarray) -> None:
+        """Take in figures (rows, P) at places (d, P)."""
+        nan = np.isnan(figures)
+        self.missing += nan.sum(axis=1)
+        if np.iscomplexobj(figures):
+            self._complex |= (np.where(nan, 0.0, figures).imag != 0).any(axis=1)
+            signed, size = figures.real, np.abs(figures)
+        else:
+            signed, size = figures, np.abs(figures)
+        for kind, data in enumerate((signed, signed, size, size)):
+            least = kind % 2 == 0
+            filled = np.where(nan, np.inf if least else -np.inf, data)
+            at = filled.argmin(axis=1) if least else filled.argmax(axis=1)
+            best = filled[np.arange(self.rows), at]
+            known = self._value[kind]
+            gain = np.isfinite(best) & (np.isnan(known) | (best < known if least else best > known))
+            for row in np.flatnonzero(gain):
+                self._value[kind, row] = best[row]
+                self._place[kind][row] = places[:, at[row]].copy()
+
+    def kinds(self, row: int) -> tuple[int, int]:
+        """Which two of the four kinds this figure shows."""
+        return (2, 3) if self._complex[row] else (0, 1)
+
+    def place(self, kind: int, row: int) -> np.ndarray | None:
+        """Where an extreme was reached; None while the figure has had no value."""
+        return self._place[kind][row]
+
+    def result(self, row: int, modulus: bool | None = None) -> Extreme | None:
+        """The extremes of a figure, of its modulus if that is asked for; None where it never had a value."""
+        use = bool(self._complex[row]) if modulus is None else modulus
+        low, high = (2, 3) if use else (0, 1)
+        at_low, at_high = self._place[low][row], self._place[high][row]
+        if at_low is None or at_high is None:
+            return None
+        return Extreme(
+            float(self._value[low, row]), float(self._value[high, row]), at_low, at_high, use
+        )
+
+    @property
+    def any_complex(self) -> bool:
+        """Whether any figure was complex at any point."""
+        return bool(self._complex.any())

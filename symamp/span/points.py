@@ -1,0 +1,152 @@
+"""Bias points of a span: a box with its sides, or the rows of a table, as arrays of symbol values."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from symamp.circuit.stage import Span, Stage
+
+BLOCK = 8192
+CORNER_LIMIT = 1 << 12  # corners beyond which a seeded draw of that many stands for all
+Values = dict[str, Any]
+
+
+@dataclass(frozen=True)
+class Box:
+    """The box of a span: a point is a vector u in the unit cube, one component a side.
+
+    A side is spaced geometrically where both its ends are positive, else evenly.
+    """
+
+    stage: Stage
+    _base: Mapping[str, float] = field(repr=False)
+
+    @classmethod
+    def of(cls, stage: Stage) -> Box:
+        """The box of a stage's span."""
+        return cls(stage, {name: float(value) for name, value in stage.bias.items()})
+
+    @property
+    def span(self) -> Span:
+        return self.stage.span
+
+    @property
+    def dimensions(self) -> int:
+        """How many sides there are."""
+        return len(self.span.sides)
+
+    @cached_property
+    def varied(self) -> tuple[str, ...]:
+        """The symbols that the span sets, in the order of the stage."""
+        names = {side.symbol for side in self.span.sides} | {f.symbol for f in self.span.follows}
+        return tuple(name for name in self.stage.symbols if name in names)
+
+    def values(self, u: np.ndarray) -> Values:
+        """Symbol values at points u of shape (sides, P): arrays for symbols that vary, scalars for the others."""
+        values: Values = dict(self._base)
+        for side, component in zip(self.span.sides, u, strict=True):
+            low, high = float(side.low), float(side.high)
+            if low > 0:
+                value = low * (high / low) ** component
+            else:
+                value = low + (high - low) * component
+            # The ends are the ends, to the last digit.
+            value = np.where(component <= 0, low, np.where(component >= 1, high, value))
+            values[side.symbol] = value**side.exponent if side.exponent != 1 else value
+        for side in self.span.sides:
+            for name, power in side.times.items():
+                values[side.symbol] = values[side.symbol] * self._followed(values, name) ** power
+        for follow in self.span.follows:
+            values[follow.symbol] = self._followed(values, follow.symbol)
+        return values
+
+    @cached_property
+    def _leaders(self) -> dict[str, tuple[str, float]]:
+        return {f.symbol: (f.leader, float(f.ratio)) for f in self.span.follows}
+
+    def _followed(self, values: Mapping[str, Any], name: str) -> Any:
+        """The value of a symbol, through those that it follows (the reader has refused rings)."""
+        factor = 1.0
+        while name in self._leaders:
+            name, ratio = self._leaders[name]
+            factor *= ratio
+        return values[name] * factor
+
+    @cached_property
+    def bias_point(self) -> np.ndarray:
+        """u of the bias point, (sides, 1); a component may lie outside [0, 1]."""
+        return np.array([[self._component(side)] for side in self.span.sides]).reshape(self.dimensions, 1)
+
+    def _component(self, side: Any) -> float:
+        value = self._base[side.symbol]
+        for name, power in side.times.items():
+            value /= self._base[name] ** power
+        value = value ** (1 / side.exponent)
+        low, high = float(side.low), float(side.high)
+        if high == low:
+            return 0.0
+        if low > 0:
+            return float(np.log(value / low) / np.log(high / low))
+        return (value - low) / (high - low)
+
+    def corners(self, seed: int) -> np.ndarray:
+        """All corners of the box (sides, 2**sides), or a seeded draw of CORNER_LIMIT where there are more."""
+        d = self.dimensions
+        if d <= CORNER_LIMIT.bit_length() - 1:
+            codes = np.arange(1 << d)
+            return ((codes[None, :] >> np.arange(d)[:, None]) & 1).astype(float)
+        return np.random.default_rng(seed).integers(0, 2, size=(d, CORNER_LIMIT)).astype(float)
+
+    @property
+    def all_corners(self) -> bool:
+        return self.dimensions <= CORNER_LIMIT.bit_length() - 1
+
+    def blocks(self, points: int, seed: int) -> Iterator[np.ndarray]:
+        """The bias point and corners, then `points` scrambled Sobol points, in blocks (sides, ≤ BLOCK).
+
+        Sobol, USSR Comput. Math. and Math. Phys. 7, 1967; scrambled after Owen 1998, as scipy does.
+        """
+        fixed = np.concatenate([self.bias_point, self.corners(seed)], axis=1)
+        for start in range(0, fixed.shape[1], BLOCK):
+            yield fixed[:, start : start + BLOCK]
+        if points < 1:
+            return
+        from scipy.stats import qmc  # heavy: half a second, and only a box needs it
+
+        sobol = qmc.Sobol(self.dimensions, scramble=True, rng=np.random.default_rng(seed))
+        for start in range(0, points, BLOCK):
+            count = min(BLOCK, points - start)
+            whole = 1 << (count - 1).bit_length()  # the first draw keeps its balance
+            yield sobol.random(whole if start == 0 else count)[:count].T
+
+    def count(self, points: int) -> int:
+        """How many points `blocks` gives."""
+        return 1 + min(1 << self.dimensions, CORNER_LIMIT) + points
+
+
+@dataclass(frozen=True)
+class Rows:
+    """The rows of a table as bias points."""
+
+    stage: Stage
+
+    @property
+    def varied(self) -> tuple[str, ...]:
+        assert self.stage.span.table is not None
+        return self.stage.span.table.columns
+
+    def blocks(self) -> Iterator[tuple[int, Values]]:
+        """(number of rows, symbol values) in blocks."""
+        table = self.stage.span.table
+        assert table is not None
+        base = {name: float(value) for name, value in self.stage.bias.items()}
+        data = np.array([[float(cell) for cell in row] for row in table.rows])
+        for start in range(0, len(data), BLOCK):
+            part = data[start : start + BLOCK]
+            columns = {n: np.ascontiguousarray(c) for n, c in zip(table.columns, part.T, strict=True)}
+            yield len(part), {**base, **columns}
