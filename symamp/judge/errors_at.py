@@ -18,6 +18,8 @@ from symamp.exact.tape import Tape
 from symamp.judge.pairing import partners
 from symamp.judge.sets import Plan
 
+_ROUNDING = 1e-14  # a relative difference below this is rounding, and no error of an assumption
+
 
 class Bank:
     """Polynomials of many forms on one tape, so that what they share is worked out once a block."""
@@ -216,6 +218,7 @@ def error_of(quantity: Quantity, approximate: np.ndarray, exact: np.ndarray) -> 
         return np.asarray(difference)
     with np.errstate(all="ignore"):
         relative = difference / exact
+    relative = np.where(np.abs(relative) < _ROUNDING, 0.0, relative)
     return np.where(exact == 0, np.nan, relative)
 
 

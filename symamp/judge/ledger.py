@@ -20,6 +20,7 @@ from symamp.judge.errors_at import ErrorTable
 from symamp.judge.pairing import left_over
 from symamp.judge.sets import FIGURES, names_of
 from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
+from symamp.values import show_value
 
 POINTS = 4096
 SEED = 1
@@ -269,7 +270,8 @@ def _why(table: ErrorTable, quantity: Quantity, values: np.ndarray, lost: Sequen
         mine = f"{quantity.name}{quantity.index}"
         if is_root(quantity):
             hz = next((root.hz for root in lost if root.name == mine), None)
-            return f"{mine} is lost" if hz is None else f"{mine}, at {hz:.4g} Hz, is lost: it has no partner"
+            where = "" if hz is None else f", at {show_value(hz, 'Hz')},"
+            return f"{mine}{where} is lost: it has no partner"
         return full.response.bias_figures.why(quantity)
     if values[0, 0] == 0:
         return "the exact value is 0, so there is no relative error"

@@ -15,6 +15,8 @@ import numpy as np
 
 SHARES_LIMIT = 12  # assumptions up to which shares are worked out, by all 2**n sets
 
+_ROUNDING = 1e-13  # a weighted sum of errors below this is the rounding of its parts
+
 FIGURES = ("alone", "added", "last", "share")
 
 
@@ -81,12 +83,13 @@ class Plan:
     def figures(self, errors: np.ndarray) -> np.ndarray:
         """(1 + rows, P) from errors of shape (sets, P); nan where a set that a figure needs has no value."""
         missing = np.isnan(errors)
-        if not missing.any():
-            return np.asarray(self.weights @ errors)
-        found = self.weights @ np.where(missing, 0.0, errors)
-        lacking = (self.weights != 0).astype(float) @ missing.astype(float) > 0
-        found[lacking] = np.nan
-        return np.asarray(found)
+        any_missing = bool(missing.any())
+        found = np.asarray(self.weights @ (np.where(missing, 0.0, errors) if any_missing else errors))
+        found[np.abs(found) < _ROUNDING] = 0.0
+        if any_missing:
+            lacking = (self.weights != 0).astype(float) @ missing.astype(float) > 0
+            found[lacking] = np.nan
+        return found
 
     def smallest_missing(self, row: int, errors: np.ndarray) -> int | None:
         """The smallest set, listed order first, that a row needs and whose error is nan; errors (sets,)."""

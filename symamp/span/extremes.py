@@ -10,6 +10,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
+_ROUNDING = 1e-12  # a value better by less than this, relatively, is not better: the earlier point stays
+
 
 @dataclass(frozen=True)
 class Extreme:
@@ -50,7 +52,9 @@ class Extremes:
             at = filled.argmin(axis=1) if least else filled.argmax(axis=1)
             best = filled[np.arange(self.rows), at]
             known = self._value[kind]
-            gain = np.isfinite(best) & (np.isnan(known) | (best < known if least else best > known))
+            margin = _ROUNDING * np.abs(known)
+            beats = best < known - margin if least else best > known + margin
+            gain = np.isfinite(best) & (np.isnan(known) | beats)
             for row in np.flatnonzero(gain):
                 self._value[kind, row] = best[row]
                 self._place[kind][row] = places[:, at[row]].copy()

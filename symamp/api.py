@@ -1,0 +1,183 @@
+"""The front for Python: a stage that answers, and responses that can be put under assumptions.
+
+Thin objects over the rooms below: each method is one call into one of them.
+"""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Sequence
+from functools import cached_property
+from pathlib import Path
+from typing import Any
+
+from symamp.assumptions.apply import Approximation, Approximator
+from symamp.assumptions.read import Assumption, chosen, read_assumptions
+from symamp.circuit.builder import StageBuilder as PlainBuilder
+from symamp.circuit.stage import Stage as StageData
+from symamp.circuit.stagefile import read_stage
+from symamp.circuit.writer import save_stage
+from symamp.errors import StageError
+from symamp.exact.derive import derive
+from symamp.exact.response import QuantityValue, Response
+from symamp.exact.time_constants import TimeConstant, time_constants
+from symamp.judge.ledger import POINTS, SEED, Ledger, make_ledger
+from symamp.show.html import ledger_html
+from symamp.show.json_parts import ledger_json
+from symamp.show.ledger_text import ledger_page
+from symamp.show.page import Page
+
+
+def load(path: str | os.PathLike[str]) -> Stage:
+    """Read a stage file. Raises StageError or ReadError, each naming file, line, key and the way out."""
+    return Stage(read_stage(path))
+
+
+class Stage:
+    """A stage: its responses, and the judgements on it. `data` is the plain data underneath."""
+
+    def __init__(self, data: StageData) -> None:
+        self.data = data
+        self._responses: dict[str, StageResponse] = {}
+
+    @property
+    def title(self) -> str:
+        return self.data.title
+
+    @property
+    def warnings(self) -> tuple[str, ...]:
+        return self.data.warnings
+
+    @property
+    def symbols(self) -> dict[str, float | None]:
+        """Every symbol's bias value in SI units, None for one without."""
+        bias = self.data.bias
+        return {name: float(bias[name]) if name in bias else None for name in self.data.symbols}
+
+    @property
+    def responses(self) -> tuple[str, ...]:
+        """The names of the responses."""
+        return tuple(self.data.asked)
+
+    @cached_property
+    def assumptions(self) -> tuple[Assumption, ...]:
+        """The assumptions, read. Raises StageError for one that means nothing or contradicts another."""
+        return read_assumptions(self.data)
+
+    def response(self, name: str) -> StageResponse:
+        """The exact response of that name, worked out once. Raises StageError for an unknown one."""
+        if name not in self.data.asked:
+            known = ", ".join(self.data.asked)
+            raise StageError(f"there is no response {name!r}", f"this stage has {known}", file=self.data.file)
+        if name not in self._responses:
+            self._responses[name] = StageResponse(self, derive(self.data, self.data.asked[name]))
+        return self._responses[name]
+
+    def ledger(
+        self, quantities: Sequence[str] = (), *, points: int = POINTS, seed: int = SEED
+    ) -> StageLedger:
+        """The errors that the assumptions add, at the bias point and over the span (see `make_ledger`)."""
+        made = make_ledger(
+            self.data, quantities=quantities, assumptions=self.assumptions, points=points, seed=seed
+        )
+        return StageLedger(made)
+
+    def save(self, path: str | os.PathLike[str]) -> Path:
+        """Save as a stage file that reads back to the same stage."""
+        return save_stage(self.data, path)
+
+    def __repr__(self) -> str:
+        return f"<stage {self.title!r}: responses {', '.join(self.responses)}>"
+
+
+class StageResponse:
+    """An exact response of a stage."""
+
+    def __init__(self, stage: Stage, exact: Response) -> None:
+        self.stage = stage
+        self.exact = exact
+        self._engine = Approximator(exact)
+
+    @property
+    def numerator(self) -> list[Any] | None:
+        """Coefficients of s, ascending, as SymPy expressions; None while nested."""
+        return self.exact.numerator
+
+    @property
+    def denominator(self) -> list[Any] | None:
+        """Coefficients of s, ascending, as SymPy expressions; None while nested."""
+        return self.exact.denominator
+
+    @property
+    def unit(self) -> str:
+        return self.exact.unit
+
+    @property
+    def terms(self) -> int:
+        """Terms written out, or the product terms that a nested response stands for."""
+        return self.exact.terms
+
+    def at(self, hz: Any, bias: dict[str, Any] | None = None) -> Any:
+        """The complex response at a frequency in Hz or an array of them (see `Response.at`)."""
+        return self.exact.at(hz, bias)
+
+    def poles(self) -> list[complex]:
+        """Poles at the bias point in rad/s, by increasing magnitude."""
+        return self.exact.poles()
+
+    def zeros(self) -> list[complex]:
+        """Zeros at the bias point in rad/s, by increasing magnitude."""
+        return self.exact.zeros()
+
+    def quantity(self, name: str) -> QuantityValue:
+        """A quantity with its value at the bias point and its formula."""
+        return self.exact.quantity(name)
+
+    def time_constants(self) -> tuple[TimeConstant, ...]:
+        """The open-circuit time constants of the capacitors and inductors."""
+        return time_constants(self.stage.data, self.exact.asked)
+
+    def under(self, *names: str) -> Approximation:
+        """The approximate response under the assumptions of these names ("all" for every one), as a set."""
+        return self._engine.under(chosen(self.stage.assumptions, names))
+
+    def _repr_latex_(self) -> str | None:
+        return self.exact._repr_latex_()
+
+    def __repr__(self) -> str:
+        return f"<response {self.exact.name!r} of {self.stage.title!r}>"
+
+
+class StageLedger:
+    """A ledger: `ledger["gain.dc"]` is one account; it prints as in the terminal and shows itself in a notebook."""
+
+    def __init__(self, plain: Ledger) -> None:
+        self.plain = plain
+
+    @property
+    def accounts(self) -> tuple[Any, ...]:
+        """The accounts, one a quantity."""
+        return self.plain.accounts
+
+    def __getitem__(self, name: str) -> Any:
+        return self.plain[name]
+
+    def json(self) -> dict[str, Any]:
+        """The object that `symamp ledger --json` prints."""
+        return ledger_json(self.plain)
+
+    def __str__(self) -> str:
+        page = Page()
+        ledger_page(page, self.plain)
+        return page.text()
+
+    def _repr_html_(self) -> str:
+        return ledger_html(self.plain)
+
+
+class StageBuilder(PlainBuilder):
+    """A stage written part by part (see `symamp.circuit.builder`); `build()` gives the stage that answers."""
+
+    def build(self) -> Stage:
+        """The stage, checked as if it had been read from a file."""
+        return Stage(self.stage())

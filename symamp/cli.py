@@ -1,0 +1,90 @@
+"""The command line: what is typed, and nothing else; what it does is in `symamp.show.run`.
+
+The rooms are brought in when a command runs, so that `--help` answers at once.
+"""
+
+from __future__ import annotations
+
+import sys
+from importlib import import_module
+from typing import Any
+
+import click
+
+from symamp import __version__
+from symamp.errors import InputError, SymampError
+
+_FILE = click.argument("file", metavar="FILE")
+_JSON = click.option("--json", "as_json", is_flag=True, help="Print one JSON object and nothing else.")
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(__version__, prog_name="symamp")
+def cli() -> None:
+    """Exact small-signal analysis of transistor stages, and the error that each hand assumption adds.
+
+    FILE is a stage file, a text that ends in .stage.toml. Results are small-signal and linear, at the stated bias.
+    """
+
+
+@cli.command()
+@_FILE
+@click.option("--assume", metavar="NAME", multiple=True, help="Show the response under this assumption (or: all).")
+@click.option("--at", "frequencies", metavar="FREQ", multiple=True, help='Also the response at FREQ, such as "10 MHz".')
+@click.option("--response", "responses", metavar="NAME", multiple=True, help="Only this response.")
+@click.option("--second-opinion", is_flag=True, help="Derive it again by lcapy, with random values, and compare.")
+@_JSON
+def derive(
+    file: str,
+    assume: tuple[str, ...],
+    frequencies: tuple[str, ...],
+    responses: tuple[str, ...],
+    second_opinion: bool,
+    as_json: bool,
+) -> None:
+    """Exact expressions of every response, their quantities and time constants."""
+    _run("derive", file, assume, frequencies, responses, second_opinion, as_json)
+
+
+@cli.command()
+@_FILE
+@click.option(
+    "--quantity",
+    "quantities",
+    metavar="RESPONSE.QUANTITY",
+    multiple=True,
+    help="Which quantity, such as gain.p1 (repeatable); without any: dc, poles, zeros, bandwidth, unity gain.",
+)
+@click.option("--points", type=click.IntRange(0, 100_000_000), default=4096, show_default=True, help="Points sampled from a box.")
+@click.option("--seed", type=click.IntRange(0), default=1, show_default=True, help="Seed of the sampling.")
+@_JSON
+def ledger(file: str, quantities: tuple[str, ...], points: int, seed: int, as_json: bool) -> None:
+    """The error that each assumption adds, at the bias point and over the span."""
+    _run("ledger", file, quantities, points, seed, as_json)
+
+
+def _run(command: str, *arguments: Any) -> None:
+    """Bring the command in and run it; what the user got wrong is said in one message, exit 2."""
+    try:
+        code = getattr(import_module("symamp.show.run"), command)(*arguments)
+    except InputError as error:
+        _refuse(str(error))
+    except SymampError as error:
+        _refuse(str(error))
+    except KeyboardInterrupt:
+        click.echo("interrupted", err=True)
+        sys.exit(130)
+    except BrokenPipeError:
+        sys.stderr.close()
+        sys.exit(0)
+    sys.exit(code)
+
+
+def _refuse(message: str) -> None:
+    click.echo(message, err=True)
+    sys.exit(2)
+
+
+def main() -> None:
+    """The installed command."""
+    cli(prog_name="symamp")

@@ -1,0 +1,173 @@
+"""`derive` in the terminal: exact and approximate expressions, quantities, roots and time constants."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from symamp.assumptions.apply import Approximation
+from symamp.exact.forms import Expanded, Nested
+from symamp.exact.response import QuantityValue, Response
+from symamp.exact.shape import shape_of
+from symamp.exact.time_constants import TimeConstant
+from symamp.show.columns import LEFT, POINT, table_lines
+from symamp.show.formulas import formula_lines, one_line, polynomial_lines
+from symamp.show.page import Page
+from symamp.show.words import MINUS, asked_words, root_words, value_words
+
+_AROUND_PEAK = ("peak_frequency", "low_corner", "high_corner")
+_QUANTITIES = (
+    "dc",
+    "hf",
+    "bandwidth",
+    "peak_frequency",
+    "low_corner",
+    "high_corner",
+    "unity_gain_frequency",
+    "gain_bandwidth",
+    "phase_margin",
+    "gain_margin",
+)
+
+
+def response_page(
+    page: Page, response: Response, constants: Sequence[TimeConstant], frequencies: Sequence[float]
+) -> None:
+    """One exact response."""
+    page.heading(f"{response.name}: {asked_words(response.asked)}   ({form_words(response)})")
+    _body(page, response, frequencies)
+    if constants:
+        _constants(page, constants)
+
+
+def approximation_page(page: Page, approximation: Approximation, exact: Response, frequencies: Sequence[float]) -> None:
+    """The same response under assumptions, and what was dropped."""
+    names = ", ".join(f"“{name}”" for name in approximation.assumptions)
+    if not approximation.assumptions:
+        page.heading(f"{exact.name}: no assumption made is for this response")
+        return
+    page.heading(f"{exact.name} under {names}")
+    if approximation.response is None:
+        page.line(f"  there is no approximate response: {approximation.why}")
+    else:
+        _body(page, approximation.response, frequencies)
+    _dropped(page, approximation)
+    page.notes(approximation.warnings, approximation.remarks)
+
+
+def form_words(response: Response) -> str:
+    """How the response is held."""
+    form = response.form
+    if isinstance(form, Nested):
+        return f"nested: {form.graph.minors} minors stand for {_count(response.terms)} product terms"
+    return f"written out, {response.terms} term{'s' if response.terms != 1 else ''}"
+
+
+def _count(n: int) -> str:
+    return f"{n:,}" if n < 10**9 else f"some {n:.1e}"
+
+
+def _body(page: Page, response: Response, frequencies: Sequence[float]) -> None:
+    form = response.form
+    if isinstance(form, Expanded):
+        weights = response.bias_values or None
+        page.line()
+        for label, row in (("N(s)", form.numerator), ("D(s)", form.denominator)):
+            shapes = [shape_of(c, weights=weights) for c in row]
+            page.block(polynomial_lines(shapes, page.width - 4, label=label), indent=2)
+        page.line()
+        dc = response.quantity("dc")
+        if dc.shape is not None:
+            page.block(formula_lines(dc.shape, page.width - 4, label="dc"), indent=2)
+    _quantities(page, response)
+    _roots(page, response)
+    for hz in frequencies:
+        if not response.missing:
+            value = response.at(hz)
+            page.line(f"  at {value_words(hz, 'Hz')}: {value_words(value, response.unit)}")
+
+
+def _quantities(page: Page, response: Response) -> None:
+    rows, notes = [], []
+    # Of a response that is largest at DC the corners say no more than the bandwidth.
+    flat = response.quantity("peak_frequency").value in (0, None)
+    for name in _QUANTITIES:
+        if flat and name in _AROUND_PEAK:
+            continue
+        found = response.quantity(name)
+        if found.value is None and name not in ("dc", "bandwidth"):
+            continue
+        rows.append([name, value_words(found.value, found.unit), _beside(response, name, found)])
+        notes += [f"{name}: {remark}" for remark in found.remarks]
+    page.line()
+    page.block(table_lines(["quantity", "value", ""], rows, [LEFT, POINT, LEFT]))
+    page.block([f"remark: {note}" for note in notes], indent=2)
+
+
+def _beside(response: Response, name: str, found: QuantityValue) -> str:
+    """What stands beside a value: why there is none, dB for levels without a unit, a short formula."""
+    if found.value is None:
+        return found.why or ""
+    if name in ("dc", "hf") and not response.unit and found.value:
+        words = value_words(response.quantity(f"{name}.db").value, "dB")
+        return f"{words}   {_short(found)}" if name == "hf" else words
+    return _short(found) if name != "dc" else ""
+
+
+def _short(found: QuantityValue, most: int = 60) -> str:
+    if found.shape is None:
+        return ""
+    text = one_line(found.shape)
+    return text if 1 < len(text) <= most else ""
+
+
+def _roots(page: Page, response: Response) -> None:
+    if response.missing:
+        page.line(f"  {', '.join(response.missing)} has no bias value, so there are no numbers")
+        return
+    rows = []
+    for letter, word, roots in (("p", "pole", response.poles()), ("z", "zero", response.zeros())):
+        for k, root in enumerate(roots, start=1):
+            found = response.quantity(f"{letter}{k}")
+            rows.append([f"{letter}{k}", word, *root_words(root), _short(found)])
+    if rows:
+        page.line()
+        headers = ["", "", "frequency", "damping", "formula (rad/s)" if any(r[4] for r in rows) else ""]
+        page.block(table_lines(headers, rows, [LEFT, LEFT, POINT, LEFT, LEFT]))
+
+
+def _constants(page: Page, constants: Sequence[TimeConstant]) -> None:
+    rows = []
+    for constant in constants:
+        formula = "" if constant.formula is None else one_line(constant.formula)
+        share = "none" if constant.share is None else f"{100 * constant.share:.1f} %".replace("-", MINUS)
+        rows.append(
+            [
+                constant.part,
+                value_words(constant.resistance, "ohm") if constant.resistance is not None else "infinite",
+                value_words(constant.seconds, "s"),
+                share,
+                formula if len(formula) <= 60 else "",
+            ]
+        )
+    page.line()
+    headers = ["open-circuit", "resistance", "time constant", "share of b1", ""]
+    page.block(table_lines(headers, rows, [LEFT, POINT, POINT, POINT, LEFT]))
+
+
+def _dropped(page: Page, approximation: Approximation) -> None:
+    if not approximation.dropped:
+        return
+    rows = []
+    for item in approximation.dropped:
+        ratio = "none" if item.ratio is None else f"{100 * item.ratio:.3g} %".replace("-", MINUS)
+        rows.append([item.coefficient, _dots(item.term), _dots(item.against), ratio])
+    page.line()
+    page.block(
+        table_lines(
+            ["dropped from", "term", "fell to", "ratio at bias"], rows, [LEFT, LEFT, LEFT, POINT]
+        )
+    )
+
+
+def _dots(text: str) -> str:
+    return text.replace("**2", "²").replace("**3", "³").replace("**", "^").replace("*", "·").replace("-", MINUS)

@@ -1,0 +1,255 @@
+"""JSON of responses and ledgers, by the keys of the design: numbers in SI units, null with a "why" beside it."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+import numpy as np
+
+from symamp.assumptions.apply import Approximation
+from symamp.circuit.stage import Stage
+from symamp.exact.forms import Expanded
+from symamp.exact.response import QuantityValue, Response
+from symamp.exact.shape import polynomial_text
+from symamp.exact.time_constants import TimeConstant
+from symamp.judge.ledger import Account, Ledger, LostRoot, Share
+from symamp.judge.sets import FIGURES
+from symamp.judge.span_errors import SpanFigure
+
+QUANTITIES = (
+    "dc",
+    "hf",
+    "bandwidth",
+    "peak",
+    "peak_frequency",
+    "low_corner",
+    "high_corner",
+    "unity_gain_frequency",
+    "gain_bandwidth",
+    "phase_margin",
+    "gain_margin",
+)
+
+
+def number(value: complex | float | None) -> Any:
+    """A JSON number, {"re", "im"} for a complex one, None for none."""
+    if value is None:
+        return None
+    if isinstance(value, complex) or np.iscomplexobj(value):
+        return {"re": float(value.real), "im": float(value.imag)}
+    return float(value)
+
+
+def head(stage: Stage, warnings: Sequence[str], remarks: Sequence[str]) -> dict[str, Any]:
+    """What every object has."""
+    symbols = {}
+    for name, symbol in stage.symbols.items():
+        value = stage.bias.get(name)
+        symbols[name] = {"value": None if value is None else float(value), "unit": symbol.unit}
+        if value is None:
+            symbols[name]["why"] = "no bias value"
+    return {
+        "stage": stage.title,
+        "symbols": symbols,
+        "warnings": list(warnings),
+        "remarks": list(remarks),
+    }
+
+
+def quantity_json(found: QuantityValue) -> dict[str, Any]:
+    """One quantity of a response."""
+    complex_kind = isinstance(found.value, complex)
+    result: dict[str, Any] = {
+        "formula": found.text,
+        "latex": found.latex,
+        "value": number(found.value) if complex_kind else found.value,
+        "unit": found.unit,
+    }
+    if found.why is not None:
+        result["why"] = found.why
+    if found.remarks:
+        result["remarks"] = list(found.remarks)
+    return result
+
+
+def quantity_names(response: Response) -> list[str]:
+    """All quantities that a response has a name for: those of the table, its roots and its coefficients."""
+    names = list(QUANTITIES)
+    if isinstance(response.form, Expanded):
+        poles, zeros = len(response.form.denominator) - 1, len(response.form.numerator) - 1
+        if response.first_zero is not None:
+            zeros = 1
+    elif response.missing:
+        return names
+    else:
+        poles, zeros = len(response.poles()), len(response.zeros())
+    names += [f"p{k}" for k in range(1, poles + 1)] + [f"z{k}" for k in range(1, zeros + 1)]
+    return names + [f"b{k}" for k in range(poles + 1)] + [f"a{k}" for k in range(zeros + 1)]
+
+
+def response_json(
+    response: Response, constants: Sequence[TimeConstant], frequencies: Sequence[float]
+) -> dict[str, Any]:
+    """One response of `derive`."""
+    form = response.form
+    expanded = isinstance(form, Expanded)
+    result: dict[str, Any] = {
+        "unit": response.unit,
+        "form": "expanded" if expanded else "nested",
+        "terms": response.terms,
+        "numerator": [polynomial_text(c) for c in form.numerator] if isinstance(form, Expanded) else None,
+        "denominator": [polynomial_text(c) for c in form.denominator] if isinstance(form, Expanded) else None,
+    }
+    if not expanded:
+        result["why"] = f"{response.terms} product terms are too many to be written out"
+    result["quantities"] = {name: quantity_json(response.quantity(name)) for name in quantity_names(response)}
+    result |= _roots_json(response)
+    result["time_constants"] = [_constant_json(constant) for constant in constants]
+    if frequencies:
+        result["at"] = [_at_json(response, hz) for hz in frequencies]
+    return result
+
+
+def _roots_json(response: Response) -> dict[str, Any]:
+    if response.missing:
+        why = f"{', '.join(response.missing)} has no bias value"
+        return {"poles": None, "zeros": None, "why_roots": why}
+    return {
+        "poles": [number(complex(p)) for p in response.poles()],
+        "zeros": [number(complex(z)) for z in response.zeros()],
+    }
+
+
+def _at_json(response: Response, hz: float) -> dict[str, Any]:
+    if response.missing:
+        why = f"{', '.join(response.missing)} has no bias value"
+        return {"hz": hz, "re": None, "im": None, "why": why}
+    value = response.at(hz)
+    if not np.isfinite(value):
+        return {"hz": hz, "re": None, "im": None, "why": "the response is infinite there"}
+    return {"hz": hz, "re": value.real, "im": value.imag}
+
+
+def _constant_json(constant: TimeConstant) -> dict[str, Any]:
+    result: dict[str, Any] = {
+        "part": constant.part,
+        "resistance": constant.resistance,
+        "seconds": constant.seconds,
+        "share": constant.share,
+        "formula": None if constant.formula is None else constant.formula.text(),
+    }
+    if constant.why:
+        result["why"] = constant.why
+    return result
+
+
+def approximation_json(
+    approximation: Approximation,
+    exact: Mapping[str, Any],
+    constants: Sequence[TimeConstant],
+    frequencies: Sequence[float],
+) -> dict[str, Any]:
+    """One response of `derive --assume`: the approximate one, with the exact one and what was dropped beside it."""
+    response = approximation.response
+    if response is None:
+        result: dict[str, Any] = {
+            "unit": exact["unit"],
+            "form": exact["form"],
+            "terms": 0,
+            "numerator": None,
+            "denominator": None,
+            "why": approximation.why,
+            "quantities": {},
+            "poles": None,
+            "zeros": None,
+            "time_constants": [],
+        }
+    else:
+        result = response_json(response, constants, frequencies)
+    result["assumptions"] = list(approximation.assumptions)
+    result["dropped"] = [
+        {"coefficient": d.coefficient, "term": d.term, "against": d.against, "ratio": d.ratio}
+        for d in approximation.dropped
+    ]
+    result["warnings"] = list(approximation.warnings)
+    result["remarks"] = list(approximation.remarks)
+    result["exact"] = dict(exact)
+    return result
+
+
+def ledger_json(ledger: Ledger) -> dict[str, Any]:
+    """The object of `ledger`."""
+    result = head(ledger.stage, ledger.warnings, ledger.remarks)
+    result["quantities"] = {account.name: _account_json(account, ledger) for account in ledger.accounts}
+    return result
+
+
+def _account_json(account: Account, ledger: Ledger) -> dict[str, Any]:
+    error = account.error_formula
+    result: dict[str, Any] = {
+        "unit": account.unit,
+        "exact": number(account.exact),
+        "approximate": number(account.approximate),
+        "formula_exact": None if account.formula_exact is None else account.formula_exact.text(),
+        "formula_approximate": None
+        if account.formula_approximate is None
+        else account.formula_approximate.text(),
+        "error": number(account.error),
+        "error_unit": account.unit if account.absolute else "",
+        "error_formula": None if error is None else error.shape.text(),
+        "leading_term": None if error is None or error.leading is None else error.leading.text(),
+        "measure": "modulus" if account.modulus else "signed",
+        "lost": [_lost_json(root) for root in account.lost],
+        "new": [_lost_json(root) for root in account.new],
+    }
+    if account.why:
+        result["why"] = account.why
+    if account.error_absolute is not None:
+        result["error_absolute"] = number(account.error_absolute)
+    if account.remarks:
+        result["remarks"] = list(account.remarks)
+    result["assumptions"] = [_share_json(share, ledger) for share in account.assumptions]
+    if account.span is not None:
+        points = {"points": ledger.points, "seed": ledger.seed}
+        result["span"] = {"error": {**span_json(account.span, ledger.method), **points}}
+    else:
+        result["span"] = None
+        result["why_span"] = (
+            "the stage gives no span" if ledger.stage.span.empty else "no value anywhere over the span"
+        )
+    return result
+
+
+def _lost_json(root: LostRoot) -> dict[str, Any]:
+    return {"name": root.name, "hz": root.hz}
+
+
+def _share_json(share: Share, ledger: Ledger) -> dict[str, Any]:
+    result: dict[str, Any] = {"name": share.name}
+    for figure in FIGURES:
+        result[figure] = number(share.figures[figure])
+    if share.why:
+        result["why"] = dict(share.why)
+    result["span"] = {
+        figure: span_json(share.span[figure], ledger.method) if figure in share.span else None
+        for figure in FIGURES
+    }
+    return result
+
+
+def span_json(figure: SpanFigure, method: str) -> dict[str, Any]:
+    """A figure over the span; what is sampled is never proved."""
+    result: dict[str, Any] = {
+        "min": figure.least,
+        "max": figure.greatest,
+        "where_min": dict(figure.where_least),
+        "where_max": dict(figure.where_greatest),
+        "proved": False,
+        "method": method,
+    }
+    if figure.missing:
+        result["missing"] = figure.missing
+    return result
+
+

@@ -1,0 +1,55 @@
+"""A page for the terminal: lines with a style each, printed plain where there is no terminal."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass, field
+
+from rich.console import Console
+from rich.text import Text
+
+WIDEST = 120
+
+
+@dataclass
+class Page:
+    """Lines of text. `heading` and `strong` are bold; colour only ever supports a word that is there anyway."""
+
+    width: int = 100
+    lines: list[tuple[str, str]] = field(default_factory=list)
+
+    def line(self, text: str = "", style: str = "") -> None:
+        """One line."""
+        self.lines.append((text, style))
+
+    def block(self, lines: Iterable[str], indent: int = 0, style: str = "") -> None:
+        """Several lines, indented."""
+        for text in lines:
+            self.line((" " * indent + text).rstrip(), style)
+
+    def heading(self, text: str) -> None:
+        """A heading, with an empty line above it unless it opens the page."""
+        if self.lines:
+            self.line()
+        self.line(text, "bold")
+
+    def notes(self, warnings: Iterable[str], remarks: Iterable[str]) -> None:
+        """Warnings and remarks, each with its word in front."""
+        for text in warnings:
+            self.line(f"warning: {text}", "yellow")
+        for text in remarks:
+            self.line(f"remark: {text}")
+
+    def text(self) -> str:
+        """All lines without styles."""
+        return "\n".join(text for text, _ in self.lines) + "\n"
+
+    def show(self, console: Console) -> None:
+        """Print, each line as it is: nothing is wrapped or read as markup."""
+        for text, style in self.lines:
+            console.print(Text(text, style=style), soft_wrap=True, highlight=False)
+
+
+def console_width(console: Console) -> int:
+    """The width to lay a page out for; 100 columns where there is no terminal."""
+    return min(console.width, WIDEST) if console.is_terminal else 100
