@@ -29,21 +29,29 @@ def cli() -> None:
 
 @cli.command()
 @_FILE
-@click.option("--assume", metavar="NAME", multiple=True, help="Show the response under this assumption (or: all).")
-@click.option("--at", "frequencies", metavar="FREQ", multiple=True, help='Also the response at FREQ, such as "10 MHz".')
+@click.option(
+    "--assume", metavar="NAME", multiple=True, help="Show the response under this assumption (or: all)."
+)
+@click.option(
+    "--at", "frequencies", metavar="FREQ", multiple=True, help='Also the response at FREQ, such as "10 MHz".'
+)
 @click.option("--response", "responses", metavar="NAME", multiple=True, help="Only this response.")
-@click.option("--second-opinion", is_flag=True, help="Derive it again by lcapy, with random values, and compare.")
+@click.option("--ro", "resistances", is_flag=True, help="Write gds1 as 1/ro1, gpi1 as 1/rpi1.")
+@click.option(
+    "--second-opinion", is_flag=True, help="Derive it again by lcapy, with random values, and compare."
+)
 @_JSON
 def derive(
     file: str,
     assume: tuple[str, ...],
     frequencies: tuple[str, ...],
     responses: tuple[str, ...],
+    resistances: bool,
     second_opinion: bool,
     as_json: bool,
 ) -> None:
     """Exact expressions of every response, their quantities and time constants."""
-    _run("derive", file, assume, frequencies, responses, second_opinion, as_json)
+    _run("derive", file, assume, frequencies, responses, resistances, second_opinion, as_json)
 
 
 @cli.command()
@@ -55,12 +63,27 @@ def derive(
     multiple=True,
     help="Which quantity, such as gain.p1 (repeatable); without any: dc, poles, zeros, bandwidth, unity gain.",
 )
-@click.option("--points", type=click.IntRange(0, 100_000_000), default=4096, show_default=True, help="Points sampled from a box.")
+@click.option(
+    "--points",
+    type=click.IntRange(0, 100_000_000),
+    default=4096,
+    show_default=True,
+    help="Points sampled from a box.",
+)
 @click.option("--seed", type=click.IntRange(0), default=1, show_default=True, help="Seed of the sampling.")
 @_JSON
 def ledger(file: str, quantities: tuple[str, ...], points: int, seed: int, as_json: bool) -> None:
     """The error that each assumption adds, at the bias point and over the span."""
     _run("ledger", file, quantities, points, seed, as_json)
+
+
+@cli.command()
+@click.option(
+    "--schema", is_flag=True, required=True, help="Print the JSON Schema of stage files, for editors."
+)
+def start(schema: bool) -> None:
+    """What a new stage file needs: its JSON Schema, so that an editor completes and checks it."""
+    _run("print_schema")
 
 
 def _run(command: str, *arguments: Any) -> None:

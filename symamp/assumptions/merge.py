@@ -2,23 +2,24 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Hashable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
-from typing import Any, Generic, TypeVar
+from functools import cached_property
 
-from symamp.assumptions.dominance import Pair
-from symamp.assumptions.read import Assumption, Miller
+from symamp.assumptions.record import Assumption, Miller, Pair
 from symamp.circuit.stage import Stage
 from symamp.errors import StageError
-from symamp.formula import Node, fold, names
-
-Value = TypeVar("Value")
+from symamp.formula import Node, names
 
 
 @dataclass(frozen=True)
 class Pooled:
-    """A set of assumptions as one: nothing here depends on the order in which they were listed."""
+    """A set of assumptions as one: nothing here depends on the order in which they were listed.
+
+    `rename` maps a symbol to the one that stands for it; `replace` maps a symbol to its formula, each before
+    those whose targets it holds; `orders` are limits of symbols after renaming.
+    """
 
     rename: Mapping[str, str] = field(default_factory=dict)
     replace: Mapping[str, Node] = field(default_factory=dict)
@@ -30,40 +31,98 @@ class Pooled:
     band: Fraction | None = None
     remarks: tuple[str, ...] = ()
 
+    @cached_property
+    def key(self) -> Hashable:
+        """What steps 1 and 2 depend on."""
+        parts = (self.rename, self.replace, self.orders)
+        return tuple(tuple(sorted(part.items(), key=lambda item: item[0])) for part in parts)
 
-def pooled(stage: Stage, assumptions: Sequence[Assumption]) -> Pooled:
-    """Pool a set; raises StageError where two of them contradict one another."""
-    rename = _renaming(stage, [group for a in assumptions for group in a.equal])
+
+def pooled(stage: Stage, assumptions: Iterable[Assumption]) -> Pooled:
+    """Pool a set; raises StageError where two of them contradict one another in steps 1 to 3."""
+    listed = sorted(assumptions, key=lambda a: a.name)
+    rename = _renaming(stage, [group for a in listed for group in a.equal])
     replace: dict[str, Node] = {}
     orders: dict[str, int] = {}
-    for assumption in assumptions:
+    told = Told()
+    for assumption in listed:
         for name, node in assumption.replace.items():
-            _add(replace, rename.get(name, name), node, assumption.name)
+            told.once("set", rename.get(name, name), node, assumption.name)
+            replace[rename.get(name, name)] = node
         for name, order in assumption.orders.items():
-            _add(orders, rename.get(name, name), order, assumption.name)
-    pairs = tuple(
-        Pair(_moved(pair.small, rename), _moved(pair.against, rename), pair.assumption)
-        for a in assumptions
-        for pair in a.pairs
-    )
+            told.once("limit", rename.get(name, name), order, assumption.name)
+            orders[rename.get(name, name)] = order
+        for bridge in assumption.miller:
+            told.once("miller", bridge.symbol, bridge, assumption.name)
     return Pooled(
         rename,
         {name: replace[name] for name in _in_order(replace, rename, stage)},
         orders,
-        tuple(dict.fromkeys(m for a in assumptions for m in a.miller)),
-        pairs,
-        any(a.dominant_pole for a in assumptions),
-        any(a.poles_far_apart for a in assumptions),
-        next((a.band for a in assumptions if a.band is not None), None),
-        tuple(dict.fromkeys(r for a in assumptions for r in a.remarks)),
+        tuple(dict.fromkeys(m for a in listed for m in a.miller)),
+        tuple(_renamed_pair(pair, rename) for a in listed for pair in a.pairs),
+        any(a.dominant_pole for a in listed),
+        any(a.poles_far_apart for a in listed),
+        next((a.band for a in listed if a.band is not None), None),
+        tuple(dict.fromkeys(r for a in listed for r in a.remarks)),
     )
 
 
-def _add(into: dict[str, Any], name: str, value: Any, assumption: str) -> None:
-    if into.setdefault(name, value) != value:
-        raise StageError(
-            f"assumption {assumption!r} contradicts another about {name}", "keep one of them", key="assumption"
-        )
+def trimmed(ask: Pooled, stage: Stage, held: Iterable[str]) -> Pooled:
+    """What of steps 1 and 2 concerns a polynomial that holds these symbols; the rest cannot change it."""
+    met = set(held)
+    present = {ask.rename.get(name, name) for name in met}
+    replace: dict[str, Node] = {}
+    for name, node in ask.replace.items():
+        if name in present:
+            replace[name] = node
+            used = raw_symbols(stage, node)
+            met.update(used)
+            present.discard(name)
+            present.update(ask.rename.get(n, n) for n in used)
+    return Pooled(
+        {name: ask.rename[name] for name in sorted(met) if name in ask.rename},
+        replace,
+        {name: order for name, order in sorted(ask.orders.items()) if name in present},
+    )
+
+
+_CLASH: dict[str, Callable[[str], str]] = {
+    "set": lambda name: f"they set {name} to two formulas",
+    "limit": lambda name: f"one takes {name} to zero, the other to infinity",
+    "miller": lambda name: f"both split {name}, in two ways",
+}
+
+
+class Contradiction(StageError):
+    """Assumptions that cannot stand together; `assumptions` are their names."""
+
+    assumptions: tuple[str, ...] = ()
+
+
+def contradiction(found: Iterable[str], why: str, remedy: str) -> Contradiction:
+    """The error that names the assumptions; one name alone contradicts itself."""
+    listed = tuple(dict.fromkeys(found))
+    quoted = " and ".join(repr(name) for name in listed)
+    subject = f"the assumptions {quoted} contradict one another" if len(listed) > 1 else (
+        f"the assumption {quoted} contradicts itself"
+    )
+    error = Contradiction(f"{subject}: {why}", remedy, key="assumption")
+    error.assumptions = listed
+    return error
+
+
+class Told:
+    """What has been said of each thing so far, and by which assumption."""
+
+    def __init__(self) -> None:
+        self._said: dict[tuple[str, str], tuple[object, str]] = {}
+
+    def once(self, about: str, name: str, value: object, assumption: str) -> None:
+        """Take down what an assumption says; Contradiction where another has said otherwise."""
+        before = self._said.setdefault((about, name), (value, assumption))
+        if before[0] != value:
+            remedy = "keep one of them, or limit each to its responses with for = [...]"
+            raise contradiction((before[1], assumption), _CLASH[about](name), remedy)
 
 
 def _renaming(stage: Stage, groups: Sequence[tuple[str, ...]]) -> dict[str, str]:
@@ -80,27 +139,24 @@ def _renaming(stage: Stage, groups: Sequence[tuple[str, ...]]) -> dict[str, str]
         first, *others = sorted({lead(label) for label in group}, key=place.__getitem__)
         for other in others:
             leader[other] = first
-    rename = {}
-    for label in leader:
+    rename: dict[str, str] = {}
+    stands: dict[tuple[str, str], str] = {}
+    for label in sorted(leader, key=place.__getitem__):
         part, top = stage.parts[label], stage.parts[lead(label)]
         for parameter in part.parameters:
-            if parameter in top.parameters and part is not top:
-                rename[part.symbol(parameter)] = top.symbol(parameter)
-    return _lacking(stage, leader, lead, rename)
-
-
-def _lacking(stage: Stage, leader: Any, lead: Any, rename: dict[str, str]) -> dict[str, str]:
-    """Parameters that the leader lacks stay; those of several followers are one with the first of them."""
-    first: dict[tuple[str, str], str] = {}
-    for label in sorted(leader, key=list(stage.parts).index):
-        part = stage.parts[label]
-        for parameter in part.parameters:
             symbol = part.symbol(parameter)
-            if symbol not in rename and part.label != lead(label):
-                stands = first.setdefault((lead(label), parameter), symbol)
-                if stands != symbol:
-                    rename[symbol] = stands
+            # A parameter that the leader lacks stays: the first follower that has it stands for the others.
+            own = top.symbol(parameter) if parameter in top.parameters else symbol
+            target = stands.setdefault((top.label, parameter), own)
+            if target != symbol:
+                rename[symbol] = target
     return rename
+
+
+def _renamed_pair(pair: Pair, rename: Mapping[str, str]) -> Pair:
+    if not rename:
+        return pair
+    return Pair(_moved(pair.small, rename), _moved(pair.against, rename), pair.assumption)
 
 
 def _moved(powers: Mapping[str, Fraction], rename: Mapping[str, str]) -> dict[str, Fraction]:
@@ -121,7 +177,7 @@ def _in_order(replace: Mapping[str, Node], rename: Mapping[str, str], stage: Sta
             return
         if name in visiting:
             ring = " → ".join((*visiting[visiting.index(name) :], name))
-            raise StageError(f"set formulas run in a ring: {ring}", "break it at one of them", key="assumption")
+            raise StageError(f"set formulas run in a ring: {ring}", "break it at one of them", key="set")
         visiting.append(name)
         for used in base_symbols(stage, replace[name], rename):
             if used in replace:
@@ -134,93 +190,14 @@ def _in_order(replace: Mapping[str, Node], rename: Mapping[str, str], stage: Sta
     return order[::-1]
 
 
-def base_symbols(stage: Stage, node: Node, rename: Mapping[str, str]) -> list[str]:
-    """The symbols that a formula holds, aliases resolved and symbols renamed."""
+def raw_symbols(stage: Stage, node: Node) -> list[str]:
+    """The symbols that a formula holds, aliases resolved."""
     found: list[str] = []
     for name in names(node):
-        for symbol in stage.aliases[name] if name in stage.aliases else (name,):
-            found.append(rename.get(symbol, symbol))
+        found.extend(stage.aliases.get(name, (name,)))
     return found
 
 
-class Field(Generic[Value]):
-    """A formula's algebra over values that know + − · /: floats, arrays, fractions."""
-
-    def __init__(self, stage: Stage, rename: Mapping[str, str], value_of: Any) -> None:
-        self._stage, self._rename, self._value_of = stage, rename, value_of
-
-    def number(self, value: Fraction, unit: str) -> Any:
-        return self._value_of(value)
-
-    def pi(self) -> Any:
-        raise StageError("a set formula cannot hold pi")
-
-    def name(self, text: str) -> Any:
-        powers = self._stage.aliases.get(text, {text: 1})
-        total: Any = self.number(Fraction(1), "")
-        for symbol, power in powers.items():
-            value = self._value_of(self._rename.get(symbol, symbol))
-            total = self.multiply(total, value) if power > 0 else self.divide(total, value)
-        return total
-
-    def add(self, a: Any, b: Any) -> Any:
-        return a + b
-
-    def subtract(self, a: Any, b: Any) -> Any:
-        return a - b
-
-    def multiply(self, a: Any, b: Any) -> Any:
-        return a * b
-
-    def divide(self, a: Any, b: Any) -> Any:
-        return a / b
-
-    def power(self, base: Any, exponent: Fraction) -> Any:
-        whole = int(exponent)
-        total = self.number(Fraction(1), "")
-        for _ in range(abs(whole)):
-            total = self.multiply(total, base)
-        return total if whole >= 0 else self.divide(self.number(Fraction(1), ""), total)
-
-    def parallel(self, a: Any, b: Any) -> Any:
-        return self.divide(self.multiply(a, b), self.add(a, b))
-
-    def negate(self, a: Any) -> Any:
-        return self.subtract(self.number(Fraction(0), ""), a)
-
-    def call(self, function: str, argument: Any) -> Any:
-        raise StageError(f"a set formula cannot hold {function}")
-
-
-class Ratios(Field[Any]):
-    """The same over ratios (numerator, denominator) of polynomials of one ring."""
-
-    def add(self, a: Any, b: Any) -> Any:
-        return a[0] * b[1] + b[0] * a[1], a[1] * b[1]
-
-    def subtract(self, a: Any, b: Any) -> Any:
-        return a[0] * b[1] - b[0] * a[1], a[1] * b[1]
-
-    def multiply(self, a: Any, b: Any) -> Any:
-        return a[0] * b[0], a[1] * b[1]
-
-    def divide(self, a: Any, b: Any) -> Any:
-        return a[0] * b[1], a[1] * b[0]
-
-
-def formula_value(stage: Stage, node: Node, rename: Mapping[str, str], value_of: Any) -> Any:
-    """A formula's value; `value_of` takes a symbol's name or a Fraction."""
-    return fold(node, Field(stage, rename, value_of))
-
-
-def formula_ratio(stage: Stage, node: Node, rename: Mapping[str, str], context: Any) -> Any:
-    """A formula as a ratio of polynomials of the ring."""
-    generator = dict(zip(context.names(), context.gens(), strict=True))
-    one = context.constant(1)
-
-    def value_of(what: Any) -> Any:
-        if isinstance(what, Fraction):
-            return context.constant(what.numerator), context.constant(what.denominator)
-        return generator[what], one
-
-    return fold(node, Ratios(stage, rename, value_of))
+def base_symbols(stage: Stage, node: Node, rename: Mapping[str, str]) -> list[str]:
+    """The symbols that a formula holds, aliases resolved and symbols renamed."""
+    return [rename.get(name, name) for name in raw_symbols(stage, node)]

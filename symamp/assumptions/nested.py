@@ -2,174 +2,246 @@
 
 from __future__ import annotations
 
-import random
-from collections.abc import Mapping
-from dataclasses import dataclass, field, replace
-from fractions import Fraction
-from typing import Any
+from collections.abc import Hashable, Mapping
+from dataclasses import dataclass, replace
 
-import numpy as np
-
-from symamp.assumptions.bridge import Half, gain_across, split_stage
-from symamp.assumptions.merge import Pooled, formula_value
-from symamp.assumptions.read import Miller
-from symamp.assumptions.rewrite import depends_words
-from symamp.circuit.kinds import CONDUCTANCE, INDUCTANCE, RESISTANCE
-from symamp.circuit.stage import Asked, Stage
-from symamp.exact.cofactors import Ratio, entry_symbols, ratio_of
+from symamp.assumptions.bridge import Half, dc_words, gain_across, split_stage
+from symamp.assumptions.merge import Pooled, trimmed
+from symamp.assumptions.record import Miller
+from symamp.assumptions.rewrite import INFINITE, NOTHING_LEFT, depends_words, symbol_value
+from symamp.assumptions.roots import powers_of
+from symamp.assumptions.rules import GainRule, Rule, ValueRule
+from symamp.assumptions.written import DC_LOST, ZERO, Settled, WrittenEngine, struck_ratio, zero_form
+from symamp.circuit.kinds import CAPACITANCE
+from symamp.circuit.stage import Stage
+from symamp.exact.cofactors import Ratio, entry_symbols
 from symamp.exact.derive import form_of, nested_of
-from symamp.exact.forms import Expanded, Nested, vanishes
+from symamp.exact.forms import Expanded, Nested
 from symamp.exact.graded import PRIME, leading_residues
+from symamp.exact.polys import ring_of
 from symamp.exact.response import Response
-from symamp.exact.system import System, build_system, without_symbols
+from symamp.exact.skeleton import images_with, random_values
+
+_S = 1234567890123  # where s stands when only identities are asked for
 
 
 @dataclass(frozen=True)
-class NestedResult:
-    """What is left: a form (written out where that became possible, steps 2 and 3 done), or None with why."""
+class _Network:
+    """The network of the response with some bridges in two."""
 
-    form: Nested | Expanded | None
     stage: Stage
-    why: str = ""
-    remarks: tuple[str, ...] = field(default=())
+    halves: tuple[Half, ...]
+    ratio: Ratio
+    held: frozenset[str]
 
 
-def nested_form(exact: Response, ask: Pooled) -> NestedResult:
-    """Steps 1 to 3 for a nested response."""
-    bridges = tuple(b for b in ask.miller if ask.rename.get(b.symbol, b.symbol) not in ask.orders)
-    stage, halves = split_stage(exact.stage, bridges) if bridges else (exact.stage, ())
-    orders = _spread(stage, ask)
-    system = build_system(stage, exact.asked.without)
-    computed = _renamings(stage, ask)
-    for half in halves:
-        gain = _gain_rule(exact.stage, exact.asked, half, ask)
-        if isinstance(gain, str):
-            return NestedResult(None, stage, gain)
-        computed.append((half.symbol, gain))
-    struck = {name for name, order in orders.items() if order > 0}
-    if struck and all(order > 0 for order in orders.values()):
-        result = _struck(stage, exact.asked, system, struck, tuple(computed))
-        if result is not None:
-            return result
-    return _graded(stage, exact.asked, system, orders, tuple(computed))
+@dataclass(frozen=True)
+class _Changed:
+    """What a set of assumptions does to the symbols of a graph: limits by power of t, and rules for values."""
+
+    orders: Mapping[str, int]
+    rules: tuple[tuple[str, Rule], ...]
 
 
-def _spread(stage: Stage, ask: Pooled) -> dict[str, int]:
-    """The limits of all symbols of the graph: one that is made one with another goes where that goes."""
-    return {
-        name: ask.orders[ask.rename.get(name, name)]
-        for name in stage.symbols
-        if ask.rename.get(name, name) in ask.orders
-    }
+class NestedEngine:
+    """Steps 1 to 3 for one nested response."""
+
+    def __init__(self, exact: Response) -> None:
+        assert isinstance(exact.form, Nested)
+        self._exact = exact
+        self._form = exact.form
+        self._networks: dict[tuple[Miller, ...], _Network] = {}
+        self._gains: dict[Miller, NestedEngine | str] = {}
+        self._written: dict[frozenset[str], WrittenEngine | None] = {}
+        self._settled: dict[Hashable, Settled] = {}
+
+    def depends_on(self, symbol: str) -> bool:
+        """Whether the response changes with the symbol, by random values modulo a prime."""
+        return symbol in entry_symbols(self._form.graph) and bool(_moving(self._form, [symbol]))
+
+    def under(self, ask: Pooled, bridges: tuple[Miller, ...]) -> Settled:
+        """The form under steps 1 to 3; one object for all sets that come to the same."""
+        network = self._network(bridges)
+        asked = trimmed(ask, self._exact.stage, network.held)
+        key = (bridges, asked.key)
+        if key not in self._settled:
+            nothing = not bridges and not asked.rename and not asked.replace and not asked.orders
+            self._settled[key] = Settled(self._form) if nothing else self._settle(asked, bridges, network)
+        return self._settled[key]
+
+    def _network(self, bridges: tuple[Miller, ...]) -> _Network:
+        if bridges not in self._networks:
+            stage, halves = split_stage(self._exact.stage, bridges)
+            ratio = struck_ratio(stage, self._exact.asked, frozenset())
+            held = set(entry_symbols(ratio.graph)) | {bridge.symbol for bridge in bridges}
+            for bridge in bridges:
+                gain = self._gain(bridge)
+                held.update(() if isinstance(gain, str) else entry_symbols(gain._form.graph))
+            held &= set(self._exact.stage.symbols)
+            self._networks[bridges] = _Network(stage, halves, ratio, frozenset(held))
+        return self._networks[bridges]
+
+    def _settle(self, ask: Pooled, bridges: tuple[Miller, ...], network: _Network) -> Settled:
+        changed = _changed(network, ask)
+        if isinstance(changed, str):
+            return Settled(None, changed)
+        orders, rules = dict(changed.orders), list(changed.rules)
+        for half in network.halves:
+            rule = self._half_rule(half, ask)
+            if isinstance(rule, str):
+                return Settled(None, rule)
+            if rule is None:
+                orders[half.symbol], rule = -1, _nominal(network.stage)
+            rules.append((half.symbol, rule))
+        if orders and all(order > 0 for order in orders.values()):
+            result = self._strike(ask, bridges, network, frozenset(orders), tuple(rules))
+            if result is not None:
+                return result
+        return self._in_limit(ask, network, orders, tuple(rules))
+
+    # Parts struck before derivation
+
+    def _strike(
+        self,
+        ask: Pooled,
+        bridges: tuple[Miller, ...],
+        network: _Network,
+        struck: frozenset[str],
+        rules: tuple[tuple[str, Rule], ...],
+    ) -> Settled | None:
+        """The limit by a smaller network; None where its determinant vanishes, or a resistance is to be zero."""
+        if any(t.symbol in struck and t.power < 0 for entry in network.ratio.graph.entries for t in entry):
+            return None
+        form = nested_of(network.stage, struck_ratio(network.stage, self._exact.asked, struck))
+        form = replace(form, computed=_needed(rules, form))
+        (low_n, _), (low_d, _) = leading_residues(form.graph, random_values(form, 3), _S, {})
+        if low_d < 0:
+            return None
+        if low_n < 0:
+            return Settled(zero_form(self._exact.stage), "", (ZERO,))
+        plain = nested_of(network.stage, network.ratio)
+        before = replace(plain, computed=_needed(rules, plain))
+        lost = (DC_LOST,) if form.skeleton.low > before.skeleton.low else ()
+        written = self._write(struck)
+        if written is not None:
+            found = written.under(ask, bridges)
+            return replace(found, remarks=tuple(dict.fromkeys((*found.remarks, *lost))))
+        return Settled(form, "", lost)
+
+    def _write(self, struck: frozenset[str]) -> WrittenEngine | None:
+        """The response without these symbols, where it is small enough to be written out."""
+        if struck not in self._written:
+            ratio = struck_ratio(self._exact.stage, self._exact.asked, struck)
+            form = form_of(self._exact.stage, ratio)
+            engine = WrittenEngine(replace(self._exact, form=form), struck) if isinstance(form, Expanded) else None
+            self._written[struck] = engine
+        return self._written[struck]
+
+    # The whole graph, to leading order in t
+
+    def _in_limit(
+        self, ask: Pooled, network: _Network, orders: Mapping[str, int], rules: tuple[tuple[str, Rule], ...]
+    ) -> Settled:
+        plain = nested_of(network.stage, network.ratio)
+        before = replace(plain, computed=_needed(rules, plain))
+        (low_n, _), (low_d, _) = leading_residues(before.graph, random_values(before, 3), _S, orders)
+        if low_d < 0:
+            return Settled(None, NOTHING_LEFT if low_n < 0 else INFINITE)
+        if low_n < 0 or low_n > low_d:
+            return Settled(zero_form(self._exact.stage), "", (ZERO,))
+        if low_n < low_d:
+            return Settled(None, "the response grows without bound")
+        form = replace(before, limits=dict(orders), valuation=(low_n, low_d))
+        if not orders:
+            return Settled(form)
+        left = _moving(form, list(ask.orders))
+        if left:
+            return Settled(None, depends_words(left))
+        return Settled(form, "", (DC_LOST,) if form.skeleton.low > before.skeleton.low else ())
+
+    # Bridges
+
+    def _half_rule(self, half: Half, ask: Pooled) -> Rule | str | None:
+        """The rule that values a half; None where it is without bound, or the words for there being no half."""
+        engine = self._gain(half.bridge)
+        if isinstance(engine, str):
+            return engine
+        found = engine.under(ask, ())
+        if found.form is None:
+            return f"Miller across {half.bridge.symbol}: {found.why}"
+        words = dc_words(half.bridge, *(0 not in powers for powers in powers_of(found.form)))
+        if words:
+            return words
+        stage = self._exact.stage
+        nature = stage.symbols[half.bridge.symbol].nature
+        if nature != CAPACITANCE and _is_one(found.form):
+            return None
+        value = ValueRule(symbol_value(stage, half.bridge.symbol, ask)[1])
+        return GainRule(half, nature, value, found.form)
+
+    def _gain(self, bridge: Miller) -> NestedEngine | str:
+        """The gain across a bridge in the network as it stands, or the words for there being none."""
+        if bridge not in self._gains:
+            stage, across = gain_across(self._exact.stage, self._exact.asked, bridge)
+            form = nested_of(stage, struck_ratio(stage, across, frozenset()))
+            (low_n, _), (low_d, _) = leading_residues(form.graph, random_values(form, 3), _S, {})
+            words = dc_words(bridge, low_n < 0, low_d < 0)
+            engine = NestedEngine(Response(stage, across, "", form))
+            self._gains[bridge] = words or engine
+        return self._gains[bridge]
 
 
-def _renamings(stage: Stage, ask: Pooled) -> list[tuple[str, Any]]:
-    """Value rules for step 1, in an order in which each finds what it needs."""
-    rules: list[tuple[str, Any]] = []
-    for name, node in reversed(ask.replace.items()):
-        rules.append((name, _formula_rule(stage, node, ask.rename)))
-    for name, leader in ask.rename.items():
-        rules.append((name, lambda values, leader=leader: values[leader]))
-    return rules
+def _changed(network: _Network, ask: Pooled) -> _Changed | str:
+    """Limits and value rules for the symbols of the graph; or the words for a formula without value."""
+    orders: dict[str, int] = {}
+    rules: list[tuple[str, Rule]] = []
+    own = {half.symbol for half in network.halves}
+    for name in entry_symbols(network.ratio.graph):
+        leader = ask.rename.get(name, name)
+        touched = leader != name or leader in ask.replace
+        if name in own or not (touched or name in ask.orders):
+            continue
+        order, ratio = symbol_value(network.stage, name, ask)
+        if ratio[1].is_zero():
+            return f"the formula set for {name} divides by zero"
+        if ratio[0].is_zero():
+            orders[name] = 1  # a formula that is zero: the symbol itself goes to zero
+            rules.append((name, _nominal(network.stage)))
+            continue
+        if order:
+            orders[name] = order
+        if touched:
+            rules.append((name, ValueRule(ratio)))
+    return _Changed(orders, tuple(rules))
 
 
-def _formula_rule(stage: Stage, node: Any, rename: Mapping[str, str]) -> Any:
-    def rule(values: Mapping[str, Any]) -> Any:
-        exact = all(isinstance(v, Fraction) for v in values.values())
-
-        def value_of(what: Any) -> Any:
-            if isinstance(what, Fraction):
-                return what if exact else float(what)
-            return values[what]
-
-        return formula_value(stage, node, rename, value_of)
-
-    return rule
+def _nominal(stage: Stage) -> ValueRule:
+    """The value 1, for a symbol that is in its limit whatever its value."""
+    one = ring_of(stage.symbols, ()).constant(1)
+    return ValueRule((one, one))
 
 
-def _struck(
-    stage: Stage, asked: Asked, system: System, struck: set[str], computed: tuple[Any, ...]
-) -> NestedResult | None:
-    """Parts struck before derivation; None where the determinant so left is identically zero."""
-    inverse = {t.symbol for row in system.rows for entry in row.values() for t in entry if t.power < 0}
-    if struck & inverse:
-        return None
-    ratio = ratio_of(without_symbols(system, struck), asked)
-    zero, infinite = vanishes(ratio.graph)
-    if infinite:
-        return None
-    if zero:
-        return NestedResult(None, stage, "the response goes to zero")
-    form = form_of(stage, ratio)
-    if isinstance(form, Nested):
-        return NestedResult(replace(form, computed=computed), stage)
-    if any(" at " in name for name, _ in computed):
-        # The halves' values are found by the graph, so the form stays nested.
-        return NestedResult(replace(nested_of(stage, ratio), computed=computed), stage)
-    return NestedResult(form, stage)
+def _is_one(gain: Nested | Expanded) -> bool:
+    """Whether a gain is 1 at s = 0, whatever the values."""
+    if isinstance(gain, Expanded):
+        return bool(gain.numerator[0] == gain.denominator[0])
+    above, below = images_with(gain, random_values(gain, 11))
+    return bool(above[gain.skeleton.low] == below[gain.skeleton.low])
 
 
-def _graded(
-    stage: Stage, asked: Asked, system: System, orders: Mapping[str, int], computed: tuple[Any, ...]
-) -> NestedResult:
-    """The graph to leading order in t."""
-    ratio: Ratio = ratio_of(system, asked)
-    form = replace(nested_of(stage, ratio), computed=computed)
-    held = {name: order for name, order in orders.items() if name in entry_symbols(ratio.graph)}
-    if not held:
-        return NestedResult(form, stage)
-    draw = random.Random(3)
-    values = {name: draw.randrange(2, PRIME) for name in entry_symbols(ratio.graph)}
-    s = draw.randrange(2, PRIME)
-    (low_n, value_n), (low_d, value_d) = leading_residues(ratio.graph, values, s, held)
-    if low_d < 0 or (low_n >= 0 and low_n < low_d):
-        return NestedResult(None, stage, "the response grows without bound")
-    if low_n < 0 or low_n > low_d:
-        return NestedResult(None, stage, "the response goes to zero")
-    moved = {**values, **{name: draw.randrange(2, PRIME) for name in held}}
-    (_, other_n), (_, other_d) = leading_residues(ratio.graph, moved, s, held)
-    if value_n * other_d % PRIME != other_n * value_d % PRIME:
-        return NestedResult(None, stage, depends_words(held))
-    return NestedResult(replace(form, limits=held, valuation=(low_n, low_d)), stage)
+def _needed(rules: tuple[tuple[str, Rule], ...], form: Nested) -> tuple[tuple[str, Rule], ...]:
+    """The rules of symbols that the graph holds."""
+    held = set(entry_symbols(form.graph))
+    return tuple((name, rule) for name, rule in rules if name in held)
 
 
-def _gain_rule(stage: Stage, asked: Asked, half: Half, ask: Pooled) -> Any:
-    """The rule that values a half: its bridge times 1 − A or 1 − 1/A, A by the graph at s = 0."""
-    across = gain_across(asked, half.bridge)
-    where = f"Miller across {half.bridge.symbol}"
-    ratio = ratio_of(build_system(stage, asked.without), across)
-    zero, infinite = vanishes(ratio.graph)
-    if infinite:
-        return f"{where}: V({half.bridge.start}) is zero"
-    if zero and half.bridge.both:
-        return f"{where}: the gain across the part is zero, so 1 − 1/A does not exist"
-    gain = nested_form(
-        Response(stage, across, "", nested_of(stage, ratio)), replace(ask, miller=(), pairs=())
-    )
-    if gain.form is None:
-        return f"{where}: {gain.why}"
-    return _half_rule(stage, half, gain.form)
-
-
-def _half_rule(stage: Stage, half: Half, gain: Nested | Expanded) -> Any:
-    nature = stage.symbols[half.bridge.symbol].nature
-    inverse = nature in (RESISTANCE, INDUCTANCE)
-
-    def rule(values: Mapping[str, Any]) -> Any:
-        above, below = _at_dc(gain, values)
-        factor = (below - above) / below if half.at_start else (above - below) / above
-        bridge = values[half.bridge.symbol]
-        if nature == CONDUCTANCE:
-            return 1 / (bridge * factor)
-        return bridge / factor if inverse else bridge * factor
-
-    return rule
-
-
-def _at_dc(gain: Nested | Expanded, values: Mapping[str, Any]) -> tuple[Any, Any]:
-    if all(isinstance(v, Fraction) for v in values.values()):
-        numerator, denominator = gain.exact_coefficients(values)
-        return tuple(Fraction(int(p[0].p), int(p[0].q)) for p in (numerator, denominator))  # type: ignore[return-value]
-    points = max((v.size for v in values.values() if isinstance(v, np.ndarray) and v.ndim), default=1)
-    found = gain.coefficients(values, points)
-    return found.numerator[0], found.denominator[0]
+def _moving(form: Nested, symbols: list[str]) -> list[str]:
+    """Those of the symbols with which the response moves, by random values modulo the prime."""
+    found = []
+    base = [value for _, value in leading_residues(form.graph, random_values(form, 3), _S, form.limits)]
+    for symbol in symbols:
+        values = random_values(form, 3, [symbol])
+        n, d = (value for _, value in leading_residues(form.graph, values, _S, form.limits))
+        if (n * base[1] - base[0] * d) % PRIME:
+            found.append(symbol)
+    return found

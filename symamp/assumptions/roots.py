@@ -2,58 +2,90 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import replace
 from math import pi
 
 import numpy as np
+from flint import fmpz_mpoly
 
 from symamp.assumptions.merge import Pooled
-from symamp.exact.forms import Expanded, Nested
+from symamp.assumptions.rewrite import tidy
+from symamp.circuit.stage import Stage
+from symamp.exact.forms import Expanded, Nested, expanded_of
+from symamp.exact.polys import from_coefficients, lowest_terms
 from symamp.exact.response import Response
 
+Powers = tuple[list[int], list[int]]
+Outcome = tuple[Response | None, str, list[str]]
 
-def step_on_roots(response: Response, ask: Pooled) -> tuple[Response | None, str, list[str]]:
+
+def step_on_roots(response: Response, ask: Pooled) -> Outcome:
     """The response after step 5, or None with why, and remarks."""
     if ask.band is not None:
         return _banded(response, float(ask.band))
     if not (ask.dominant_pole or ask.poles_far_apart):
         return response, "", []
-    if ask.dominant_pole:
-        low_n, low_d = _lowest_powers(response)
-        if low_n > 0:
-            return None, "a zero lies at DC, so a dominant pole does not apply", []
-        if ask.poles_far_apart:
-            # Together: every root from its neighbours, the bandwidth from the lowest pole alone.
-            return replace(response, apart=True, single_pole=True), "", []
-        return _one_pole(response, low_d), "", []
-    return replace(response, apart=True), "", []
+    powers = powers_of(response.form)
+    why = (ask.dominant_pole and _no_dominant_pole(*powers)) or (ask.poles_far_apart and _not_apart(*powers))
+    if why:
+        return None, why, []
+    if ask.poles_far_apart:
+        # With a dominant pole too: every root from its neighbours, the bandwidth from the lowest pole alone.
+        return replace(response, apart=True, single_pole=ask.dominant_pole), "", []
+    return _one_pole(response, powers), "", []
 
 
-def _lowest_powers(response: Response) -> tuple[int, int]:
-    form = response.form
-    if isinstance(form, Expanded):
-        rows = (form.numerator, form.denominator)
-        return tuple(next((k for k, c in enumerate(row) if not c.is_zero()), 0) for row in rows)  # type: ignore[return-value]
-    numerator, denominator = response.exact_coefficients
-    return tuple(
-        next((k for k in range(p.degree() + 1) if p[k] != 0), 0) for p in (numerator, denominator)
-    )  # type: ignore[return-value]
+def powers_of(form: Expanded | Nested) -> Powers:
+    """The powers of s that numerator and denominator have, whatever the values."""
+    if isinstance(form, Nested):
+        above, below = (
+            [k for k in powers if keep is None or k in keep]
+            for powers, keep in zip(form.skeleton.powers, form.keep, strict=True)
+        )
+    else:
+        above, below = (
+            [k for k, c in enumerate(row) if not c.is_zero()] for row in (form.numerator, form.denominator)
+        )
+    return above, below
 
 
-def _one_pole(response: Response, low: int) -> Response:
+def _no_dominant_pole(above: Sequence[int], below: Sequence[int]) -> str:
+    """Why a dominant pole does not apply, "" where it does."""
+    if above and above[0] > 0:
+        return "a zero lies at DC, so a dominant pole does not apply"
+    if below[0] > 1:
+        return "several poles lie at DC, so a dominant pole does not apply"
+    if 1 not in below and below[-1] > 1:
+        return "the denominator has no term in s, so a dominant pole does not apply: its poles come in pairs"
+    return ""
+
+
+def _not_apart(above: Sequence[int], below: Sequence[int]) -> str:
+    """Why roots are no ratios of neighbouring coefficients, "" where they are."""
+    for what, powers in (("zeros", above), ("poles", below)):
+        if powers and len(powers) <= powers[-1] - powers[0]:
+            gap = next(k for k in range(powers[0], powers[-1]) if k not in powers)
+            letter = "a" if what == "zeros" else "b"
+            return f"{letter}{gap} is zero, so the {what} are no ratios of neighbouring coefficients"
+    return ""
+
+
+def _one_pole(response: Response, powers: Powers) -> Response:
     """D = b0 + b1·s and N = a0; z1 alone is taken from a0 + a1·s."""
     form = response.form
+    has_zero = 1 in powers[0]
     if isinstance(form, Expanded):
-        kept = Expanded(form.numerator[:1], form.denominator[: low + 2])
-        first = Expanded(form.numerator[:2], form.denominator[: low + 2]) if len(form.numerator) > 1 else None
+        kept = _cut(response.stage, form.numerator[:1], form.denominator[:2])
+        first = Expanded(form.numerator[:2], form.denominator[:1]) if has_zero else None
         return replace(response, form=kept, first_zero=first, single_pole=True)
-    below = frozenset(range(low + 2))
-    nested = replace(form, keep=(frozenset({0}), below))
-    first_nested = replace(form, keep=(frozenset({0, 1}), below))
-    return replace(response, form=nested, first_zero=first_nested, single_pole=True)
+    above, below = (frozenset(p) & {0, 1} for p in powers)
+    first_nested = replace(form, keep=(above, below)) if has_zero else None
+    kept_nested = replace(form, keep=(above & {0}, below))
+    return replace(response, form=kept_nested, first_zero=first_nested, single_pole=True)
 
 
-def _banded(response: Response, hertz: float) -> tuple[Response | None, str, list[str]]:
+def _banded(response: Response, hertz: float) -> Outcome:
     """Of numerator and denominator the power of s that is largest at the frequency, at the bias point."""
     if response.missing:
         return None, f"a band is judged at the bias point, and {', '.join(response.missing)} has no value", []
@@ -67,11 +99,14 @@ def _banded(response: Response, hertz: float) -> tuple[Response | None, str, lis
     if isinstance(form, Nested):
         kept = replace(form, keep=(frozenset({tops[0]}), frozenset({tops[1]})))
         return replace(response, form=kept), "", []
-    zero = form.context.constant(0)
     rows = [
-        tuple(c if k == top else zero for k, c in enumerate(row[: top + 1]))
+        tuple(c if k == top else form.context.constant(0) for k, c in enumerate(row[: top + 1]))
         for row, top in zip((form.numerator, form.denominator), tops, strict=True)
     ]
-    # s^3/s^2 and its like are brought to lowest terms again.
-    shared = min(tops)
-    return replace(response, form=Expanded(rows[0][shared:], rows[1][shared:])), "", []
+    return replace(response, form=_cut(response.stage, *rows)), "", []
+
+
+def _cut(stage: Stage, numerator: Sequence[fmpz_mpoly], denominator: Sequence[fmpz_mpoly]) -> Expanded:
+    """The form of these coefficients, in lowest terms."""
+    ratio = lowest_terms(from_coefficients(numerator), from_coefficients(denominator))
+    return expanded_of(*tidy(stage, ratio))

@@ -36,9 +36,7 @@ def form_of(stage: Stage, ratio: Ratio) -> Expanded | Nested:
 def nested_of(stage: Stage, ratio: Ratio) -> Nested:
     """The nested form, whatever the graph's count."""
     reactive = frozenset(
-        name
-        for name in entry_symbols(ratio.graph)
-        if stage.symbols[name].nature in (CAPACITANCE, INDUCTANCE)
+        name for name in entry_symbols(ratio.graph) if stage.symbols[name].nature in (CAPACITANCE, INDUCTANCE)
     )
     return Nested(ratio.graph, ratio.scale, sum(ratio.graph.count_terms()), reactive)
 

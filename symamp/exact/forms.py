@@ -15,8 +15,10 @@ from flint import fmpq, fmpq_poly, fmpz_mpoly, fmpz_mpoly_ctx
 from symamp.circuit.stage import Symbol
 from symamp.exact.cofactors import Ratio, entry_symbols
 from symamp.exact.graded import exact_in_limit, scaled_entries, walk_in_powers
+from symamp.exact.hidden import without_hidden
 from symamp.exact.minors import MinorGraph
 from symamp.exact.polys import S, coefficients_of_s, inverted, lowest_terms, ring_of
+from symamp.exact.skeleton import Skeleton, skeleton_of
 from symamp.exact.tape import Tape, term_dict
 
 Values = Mapping[str, np.ndarray | float]
@@ -60,7 +62,7 @@ class Expanded:
         names = self.context.names()
         held: set[str] = set()
         for polynomial in (*self.numerator, *self.denominator):
-            held.update(name for name, degree in zip(names, polynomial.degrees(), strict=True) if degree)
+            held.update(name for name, degree in zip(names, polynomial.degrees(), strict=True) if degree > 0)
         return frozenset(held)
 
     def coefficients(self, values: Values, points: int) -> Coefficients:
@@ -111,8 +113,19 @@ class Nested:
         return self.keep == (None, None) and not self.limits
 
     @cached_property
+    def skeleton(self) -> Skeleton:
+        """Degrees, powers of s that vanish, and what numerator and denominator share, whatever the values."""
+        return skeleton_of(self)
+
+    @cached_property
     def symbols(self) -> frozenset[str]:
-        return frozenset(entry_symbols(self.graph))
+        """The symbols whose values are needed: of computed ones those that their rules need."""
+        held = set(entry_symbols(self.graph))
+        for name, rule in self.computed:
+            if name in held:
+                held.discard(name)
+                held.update(getattr(rule, "needs", ()))
+        return frozenset(held)
 
     def full_values(self, values: Mapping[str, Any]) -> dict[str, Any]:
         """The values with all computed symbols worked out."""
@@ -137,7 +150,13 @@ class Nested:
             blocks_d.append(d)
         numerator = np.concatenate(blocks_n, axis=1) * float(self.scale)
         denominator = np.concatenate(blocks_d, axis=1)
-        return Coefficients(_kept(numerator, self.keep[0]), _kept(denominator, self.keep[1]), omega)
+        numerator, denominator = without_hidden(numerator, denominator, self.skeleton)
+        # A coefficient that vanishes by cancelling comes from the graph as rounding noise, which would be a root.
+        above, below = (
+            frozenset(powers) if keep is None else keep
+            for powers, keep in zip(self.skeleton.powers, self.keep, strict=True)
+        )
+        return Coefficients(_kept(numerator, above), _kept(denominator, below), omega)
 
     def at(self, s: np.ndarray, values: Values) -> np.ndarray:
         """The response at complex frequencies s; symbol values scalars or arrays that broadcast with s."""
@@ -161,17 +180,22 @@ class Nested:
             entries = [_rational_entry(entry, full) for entry in self.graph.entries]
             numerator, denominator = self.graph.walk(entries, fmpq_poly([1]), fmpq_poly([0]))
         numerator = numerator * fmpq(self.scale.numerator, self.scale.denominator)
+        common = numerator.gcd(denominator)
+        if common.degree() > 0:
+            numerator, denominator = numerator / common, denominator / common
+        if self.keep == (None, None):
+            return numerator, denominator
         numerator, denominator = (
             p if keep is None else fmpq_poly([p[k] if k in keep else 0 for k in range(p.degree() + 1)])
             for p, keep in zip((numerator, denominator), self.keep, strict=True)
         )
-        common = numerator.gcd(denominator)
-        return (numerator / common, denominator / common) if common.degree() > 0 else (numerator, denominator)
+        low = min((k for p in (numerator, denominator) for k in range(p.degree() + 1) if p[k] != 0), default=0)
+        return numerator.right_shift(low), denominator.right_shift(low)
 
     def _omega(self, values: Mapping[str, Any]) -> float:
         """A frequency near which conductances and susceptances meet, so that coefficients neither vanish nor burst."""
         logs: dict[bool, list[float]] = {True: [], False: []}
-        for name in self.symbols:
+        for name in entry_symbols(self.graph):
             value = np.abs(np.asarray(values[name], dtype=float)).ravel()
             if value.size and value[0] > 0:
                 logs[name in self.reactive].append(float(np.log(value[0])))
@@ -200,10 +224,8 @@ def _rational_entry(entry: Any, values: Mapping[str, Fraction]) -> fmpq_poly:
     return fmpq_poly([fmpq(p.numerator, p.denominator) for p in powers])
 
 
-def _kept(coefficients: np.ndarray, powers: frozenset[int] | None) -> np.ndarray:
+def _kept(coefficients: np.ndarray, powers: frozenset[int]) -> np.ndarray:
     """The coefficients with all powers but these made zero, and no more rows than needed."""
-    if powers is None:
-        return coefficients
     rows = [k in powers for k in range(coefficients.shape[0])]
     kept = np.where(np.array(rows)[:, None], coefficients, 0.0)
     return kept[: max((k + 1 for k, keep in enumerate(rows) if keep), default=1)]

@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
+from math import pi
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
-from flint import fmpz_mpoly
+from flint import Ordering, fmpz_mpoly, fmpz_mpoly_ctx
 
 from symamp.exact.asked_quantity import Quantity
 from symamp.exact.forms import Expanded
-from symamp.exact.polys import by_power, coefficients_of_s, from_coefficients, lowest_terms
+from symamp.exact.polys import by_power, coefficients_of_s, from_coefficients, into_ring, lowest_terms, ring_of
 from symamp.exact.shape import QuadraticRoot, Shape, shape_of
 from symamp.exact.tape import term_dict
 
@@ -30,21 +31,56 @@ def formula_of(response: Response, quantity: Quantity) -> Formula | None:
         return shape_of(*ratio, weights=response.bias_values or None)
     if quantity.name in ("p", "z") and isinstance(response.form, Expanded):
         return _quadratic_root(response, quantity)
+    if quantity.name in ("bandwidth", "gain_bandwidth"):
+        return _one_pole_band(response, quantity)
     return None
+
+
+def _one_pole_band(response: Response, quantity: Quantity) -> Formula | None:
+    """b0/(2π·b1), or |a0|/(2π·b1), of a response with one pole and no zero whose coefficients have one sign each."""
+    form = _levels(response)
+    if form is None or len(form.denominator) != 2 or len(form.numerator) != 1:
+        return None
+    b0, b1 = form.denominator
+    above = form.numerator[0] if quantity.name == "gain_bandwidth" else b0
+    if _sign(b0) <= 0 or _sign(b1) <= 0 or not _sign(above) or response.negative_ok & form.symbols:
+        return None
+    names = ring_of(response.stage.symbols, form.symbols).names()
+    context = fmpz_mpoly_ctx.get(("pi", *names), Ordering.lex)
+    above, below = (into_ring(p, context) for p in (above * _sign(above), 2 * b1))
+    below *= context.gens()[0]
+    weights = {**response.bias_values, "pi": pi} if response.bias_values else None
+    return shape_of(*lowest_terms(above, below), weights=weights)
+
+
+def _sign(polynomial: fmpz_mpoly) -> int:
+    """+1 or −1 where all terms have that sign, else 0."""
+    signs = {1 if c > 0 else -1 for c in polynomial.coeffs()}
+    return signs.pop() if len(signs) == 1 else 0
 
 
 def rational_of(response: Response, quantity: Quantity) -> PolyRatio | None:
     """numerator/denominator in lowest terms of a quantity that is rational in the symbols, or None."""
-    form = response.form
-    if not isinstance(form, Expanded):
+    form = _levels(response)
+    if form is None:
         return None
     if quantity.name in ("dc", "hf", "a", "b"):
+        if quantity.name in ("a", "b") and response.apart and not response.single_pole:
+            return None  # the coefficients are those of the roots' product
         ratio = _coefficient_ratio(form, quantity)
     elif quantity.name in ("p", "z"):
         ratio = _rational_root(response, quantity)
     else:
         return None
     return None if ratio is None else lowest_terms(*ratio)
+
+
+def _levels(response: Response) -> Expanded | None:
+    """The written-out form from which all but the roots come."""
+    form = response.form
+    if not isinstance(form, Expanded):
+        return None
+    return Expanded(form.numerator[:1], form.denominator[:2]) if response.apart and response.single_pole else form
 
 
 def _coefficient_ratio(form: Expanded, quantity: Quantity) -> PolyRatio | None:

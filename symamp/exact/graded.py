@@ -107,7 +107,7 @@ def exact_in_limit(
     context = fmpq_mpoly_ctx.get(("s", "t"), Ordering.lex)
     entries = []
     for entry, row in zip(graph.entries, graph.entry_rows, strict=True):
-        terms: dict[tuple[int, int], fmpq] = {}
+        terms: dict[tuple[int, ...], Any] = {}
         for coefficient, symbol, power, s_power in entry:
             t = shifts[row] + (limits.get(symbol, 0) * power if symbol else 0)
             value = coefficient * (values[symbol] ** power if symbol else Fraction(1))

@@ -24,6 +24,8 @@ def latex_name(symbol: str) -> str:
     A device's parameter has its letter (C for a capacitance) with the rest and the device as subscript; any
     other symbol its first letter with the rest as subscript, a joining underscore left out.
     """
+    if symbol == "pi":
+        return r"\pi"
     device = _DEVICE.fullmatch(symbol)
     if device is None:
         return _escaped(symbol[:1]) + _subscript(_escaped(_rest(symbol[1:])))

@@ -136,7 +136,9 @@ def _greedy(masks: Sequence[int], start: int, least: int | None) -> tuple[list[i
         row = min(left, key=lambda i: _open_after(masks[i], touched, closed, remaining, i))
 
 
-def _open_after(mask: int, touched: int, closed: int, remaining: list[int], index: int) -> tuple[int, int, int]:
+def _open_after(
+    mask: int, touched: int, closed: int, remaining: list[int], index: int
+) -> tuple[int, int, int]:
     closing = sum(1 for column in _bits(mask) if remaining[column] == 1)
     fresh = (mask & ~touched).bit_count()
     return (fresh - closing, fresh, index)
@@ -162,7 +164,9 @@ def _first_rows(masks: Sequence[int]) -> dict[int, int]:
 _Edges = list[tuple[int, int, int]]  # (child's column set, column, sign)
 
 
-def _reach(rows: Sequence[dict[int, Entry]], first_row: dict[int, int], targets: set[int]) -> list[dict[int, _Edges]]:
+def _reach(
+    rows: Sequence[dict[int, Entry]], first_row: dict[int, int], targets: set[int]
+) -> list[dict[int, _Edges]]:
     """For each row count, the column sets that the targets need, each with its edges downward."""
     levels: list[dict[int, _Edges]] = [{} for _ in range(len(rows) + 1)]
     levels[-1] = {mask: [] for mask in targets}

@@ -10,6 +10,7 @@ element is {"what": a key of `_SHAPES`, "nodes": [int, …], "value": "p/q", "co
 
 from __future__ import annotations
 
+import contextlib
 import json
 import sys
 import warnings
@@ -78,19 +79,24 @@ def main() -> None:
     """Answer the one question on standard input."""
     warnings.simplefilter("ignore")  # importing lcapy warns, and so do its sign conventions
     question = json.load(sys.stdin)
+    with contextlib.redirect_stdout(sys.stderr):  # what a library prints must not mix with the answer
+        answer = _answer(question["networks"])
+    json.dump(answer, sys.stdout)
+
+
+def _answer(networks: Sequence[Mapping[str, Any]]) -> dict[str, Any]:
     try:
         import lcapy
         import sympy
     except ImportError as error:
-        json.dump({"missing": str(error)}, sys.stdout)
-        return
+        return {"missing": str(error)}
     answers: list[dict[str, Any]] = []
-    for network in question["networks"]:
+    for network in networks:
         try:
             answers.append({"voltages": voltages(lcapy, sympy, network)})
         except (ArithmeticError, AttributeError, KeyError, RuntimeError, TypeError, ValueError) as error:
             answers.append({"error": f"{type(error).__name__}: {error}"})
-    json.dump({"answers": answers}, sys.stdout)
+    return {"answers": answers}
 
 
 if __name__ == "__main__":

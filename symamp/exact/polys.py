@@ -6,13 +6,14 @@ import random
 from collections.abc import Iterable, Mapping, Sequence
 from math import gcd
 
-from flint import fmpz_mpoly, fmpz_mpoly_ctx, nmod_poly, Ordering
+from flint import Ordering, fmpz_mpoly, fmpz_mpoly_ctx, nmod_poly
 
 from symamp.circuit import kinds
 from symamp.circuit.stage import Symbol
 
 S = "s"
 _PRIME = (1 << 61) - 1
+_GCD_AT_ONCE = 5000  # terms up to which a greatest common divisor is sought without asking whether there may be one
 
 # What an analog designer writes first: transconductances, then conductances, resistances, reactances.
 _RANK = {
@@ -39,15 +40,41 @@ def ring_of(symbols: Mapping[str, Symbol], names: Iterable[str], extra: Sequence
     return fmpz_mpoly_ctx.get((*ordered, *extra, S), Ordering.lex)
 
 
+def into_ring(polynomial: fmpz_mpoly, context: fmpz_mpoly_ctx) -> fmpz_mpoly:
+    """The same polynomial in a ring that has all the generators it holds. KeyError where it lacks one."""
+    own = polynomial.context()
+    if own is context:
+        return polynomial
+    known = context.names()
+    for name, degree in zip(own.names(), polynomial.degrees(), strict=True):
+        if degree > 0 and name not in known:
+            raise KeyError(name)
+    return polynomial.project_to_context(context)
+
+
+def held(*polynomials: fmpz_mpoly) -> set[str]:
+    """The generators that the polynomials hold, s left out."""
+    found: set[str] = set()
+    for polynomial in polynomials:
+        names = polynomial.context().names()
+        found.update(name for name, degree in zip(names, polynomial.degrees(), strict=True) if degree > 0)
+    return found - {S}
+
+
 def by_power(polynomial: fmpz_mpoly, index: int | None = None) -> dict[int, fmpz_mpoly]:
     """Split by the power of one generator (s, the last, unless `index` says otherwise)."""
     context = polynomial.context()
     place = context.nvars() - 1 if index is None else index
-    parts: dict[int, dict[tuple[int, ...], int]] = {}
-    for exponents, coefficient in polynomial.terms():
-        rest = (*exponents[:place], 0, *exponents[place + 1 :])
-        parts.setdefault(exponents[place], {})[rest] = coefficient
-    return {power: context.from_dict(part) for power, part in parts.items()}
+    name, generator = context.names()[place], context.gens()[place]
+    parts: dict[int, fmpz_mpoly] = {}
+    power = 0
+    while not polynomial.is_zero():
+        low = polynomial.subs({name: 0})
+        if not low.is_zero():
+            parts[power] = low
+        polynomial = (polynomial - low) / generator
+        power += 1
+    return parts
 
 
 def coefficients_of_s(polynomial: fmpz_mpoly) -> tuple[fmpz_mpoly, ...]:
@@ -71,19 +98,10 @@ def least_exponents(polynomials: Iterable[fmpz_mpoly]) -> list[int]:
     """The least exponent of each generator over all terms of the polynomials."""
     least: list[int] | None = None
     for polynomial in polynomials:
-        for exponents in polynomial.monoms():
-            least = list(exponents) if least is None else [min(a, int(b)) for a, b in zip(least, exponents)]
-    return [int(e) for e in least or []]
-
-
-def shifted(polynomial: fmpz_mpoly, shift: Sequence[int]) -> fmpz_mpoly:
-    """The polynomial times the monomial of exponents `shift` (which may be negative where it divides)."""
-    if not any(shift):
-        return polynomial
-    context = polynomial.context()
-    return context.from_dict(
-        {tuple(int(e) + d for e, d in zip(exponents, shift)): c for exponents, c in polynomial.terms()}
-    )
+        if not polynomial.is_zero():
+            here = [int(e) for e in polynomial.term_content().monoms()[0]]
+            least = here if least is None else [min(a, b) for a, b in zip(least, here, strict=True)]
+    return least or []
 
 
 def inverted(numerator: fmpz_mpoly, denominator: fmpz_mpoly, names: set[str]) -> tuple[fmpz_mpoly, fmpz_mpoly]:
@@ -121,9 +139,11 @@ def lowest_terms(numerator: fmpz_mpoly, denominator: fmpz_mpoly) -> tuple[fmpz_m
         raise ZeroDivisionError("ratio with denominator zero")
     if numerator.is_zero():
         return numerator, context.constant(1)
-    shift = [-e for e in least_exponents((numerator, denominator))]
-    numerator, denominator = shifted(numerator, shift), shifted(denominator, shift)
-    if _may_share(numerator, denominator):
+    shared = least_exponents((numerator, denominator))
+    if any(shared):
+        monomial = context.from_dict({tuple(shared): 1})
+        numerator, denominator = numerator / monomial, denominator / monomial
+    if len(numerator) + len(denominator) <= _GCD_AT_ONCE or _may_share(numerator, denominator):
         common = numerator.gcd(denominator)
         numerator, denominator = numerator / common, denominator / common
     else:
@@ -145,8 +165,10 @@ def _content(polynomial: fmpz_mpoly) -> int:
 
 
 def _mostly_negative(polynomial: fmpz_mpoly) -> bool:
-    lowest = coefficients_of_s(polynomial)
-    first = next(c for c in lowest if not c.is_zero())
+    """Of the coefficient of the lowest power of s."""
+    context = polynomial.context()
+    low = least_exponents((polynomial,))[-1]
+    first = (polynomial / context.gens()[-1] ** low).subs({S: 0})
     signs = sum(1 if c > 0 else -1 for c in first.coeffs())
     return signs < 0 or (signs == 0 and first.coeffs()[0] < 0)
 
@@ -179,7 +201,7 @@ def _residues(polynomial: fmpz_mpoly, values: list[int]) -> list[tuple[tuple[int
     rows = []
     for exponents, coefficient in polynomial.terms():
         residue = int(coefficient) % _PRIME
-        for value, exponent in zip(values, exponents):
+        for value, exponent in zip(values, exponents, strict=True):
             for _ in range(int(exponent)):
                 residue = residue * value % _PRIME
         rows.append((tuple(int(e) for e in exponents), residue))

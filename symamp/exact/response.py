@@ -13,11 +13,12 @@ from flint import fmpq_poly
 
 from symamp.circuit.stage import Asked, Stage
 from symamp.errors import StageError
-from symamp.exact.asked_quantity import Quantity, parse_quantity, unit_of
+from symamp.exact.asked_quantity import parse_quantity, unit_of
+from symamp.exact.crossings import ends, without_common_s
 from symamp.exact.figures import Figures
 from symamp.exact.forms import Coefficients, Expanded, Nested, Values
 from symamp.exact.formulas import Formula, formula_of
-from symamp.exact.shape import polynomial_sympy
+from symamp.exact.shape import polynomial_latex, polynomial_sympy
 
 
 @dataclass(frozen=True)
@@ -59,7 +60,8 @@ class Response:
     """A response of a stage, exact or approximate.
 
     `form` is Expanded or Nested. `apart` says that each root is taken as the ratio of two neighbouring
-    coefficients; `first_zero`, where given, is the numerator from which z1 alone is taken.
+    coefficients; with `single_pole` too, all else comes from a0 and b0 + b1·s. `first_zero`, where given, is
+    the numerator from which z1 alone is taken.
     """
 
     stage: Stage
@@ -149,11 +151,17 @@ class Response:
         return np.asarray(top / _horner(given.denominator, sigma))
 
     def coefficients(self, values: Values, points: int) -> Coefficients:
-        """Coefficients of s/omega at `points` bias points; with `apart`, those of the roots' product."""
+        """Coefficients of s/omega at `points` bias points.
+
+        With `apart` those of the roots' product; with a single pole too, a0 and b0 + b1·s.
+        """
         given = self.form.coefficients(values, points)
         if not self.apart:
             return given
-        return Coefficients(_apart(given.numerator), _apart(given.denominator), given.omega)
+        numerator, denominator = without_common_s(given.numerator, given.denominator)
+        if self.single_pole:
+            return Coefficients(numerator[:1], denominator[:2], given.omega)
+        return Coefficients(_apart(numerator), _apart(denominator), given.omega)
 
     def figures(self, values: Values, points: int) -> Figures:
         """All quantities at `points` bias points (without `first_zero`, which `value` minds)."""
@@ -161,7 +169,8 @@ class Response:
         found = Figures(given.numerator, given.denominator, self.unit, given.omega)
         if self.apart:
             raw = self.form.coefficients(values, points)
-            found.set_roots(_ratios(raw.numerator) * raw.omega, _ratios(raw.denominator) * raw.omega)
+            zeros, poles = (_ratios(c) * raw.omega for c in without_common_s(raw.numerator, raw.denominator))
+            found.set_roots(zeros, poles)
         return found
 
     def zero_figures(self, values: Values, points: int) -> Figures | None:
@@ -178,7 +187,7 @@ class Response:
             return self.figures(self.bias_values, 1)
         numerator, denominator = self.exact_coefficients
         omega = self.form.coefficients(self.bias_values, 1).omega if isinstance(self.form, Nested) else 1.0
-        found = Figures(_floats(numerator, omega), _floats(denominator, omega), self.unit, omega)
+        found = Figures(*_floats(numerator, denominator, omega), self.unit, omega)
         found.set_roots(_exact_roots(numerator), _exact_roots(denominator))
         return found
 
@@ -217,8 +226,6 @@ class Response:
     def _repr_latex_(self) -> str | None:
         if not isinstance(self.form, Expanded):
             return None
-        from symamp.exact.shape import polynomial_latex
-
         parts = []
         for coefficients in (self.form.numerator, self.form.denominator):
             written = [
@@ -238,34 +245,46 @@ def _horner(coefficients: np.ndarray, sigma: np.ndarray) -> np.ndarray:
 
 
 def _ratios(coefficients: np.ndarray) -> np.ndarray:
-    """−c_(k−1)/c_k: the roots of a polynomial whose roots lie far apart, ascending in magnitude."""
-    with np.errstate(divide="ignore", invalid="ignore"):
-        found = -coefficients[:-1] / coefficients[1:]
+    """The roots of a polynomial whose roots lie far apart, ascending in magnitude; nan for none."""
+    found = _neighbours(coefficients)
     found = np.where(np.isfinite(found), found, np.nan)
     order = np.argsort(np.abs(found), axis=0, kind="stable")
     return np.take_along_axis(found, order, axis=0).astype(complex)
 
 
-def _apart(coefficients: np.ndarray) -> np.ndarray:
-    """The polynomial that has `_ratios` for roots and the same leading coefficient."""
+def _neighbours(coefficients: np.ndarray) -> np.ndarray:
+    """−c_(k−1)/c_k for every k; 0 below the lowest coefficient that is not zero."""
     with np.errstate(divide="ignore", invalid="ignore"):
         found = -coefficients[:-1] / coefficients[1:]
-    total = coefficients[-1:].copy()
-    for root in found:
+    below = np.cumsum(coefficients[:-1] != 0, axis=0) == 0
+    return np.where(below, 0.0, found)
+
+
+def _apart(coefficients: np.ndarray) -> np.ndarray:
+    """The polynomial with `_ratios` for roots and the same lowest coefficient: its factors are s and 1 − s/root."""
+    roots = _neighbours(coefficients)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        slopes = np.where(coefficients[1:] == 0, 0.0, -1 / roots)  # no root where the next coefficient is 0
+    low, _ = ends(coefficients)
+    total = coefficients[low, np.arange(coefficients.shape[1])][None]
+    for k, slope in enumerate(slopes):
         shifted = np.zeros((total.shape[0] + 1, total.shape[1]))
-        shifted[1:] += total
-        shifted[:-1] -= root * total
+        shifted[:-1] += np.where(k < low, 0.0, total)
+        shifted[1:] += np.where(k < low, total, total * np.where(k < low, 0.0, slope))
         total = shifted
     return total
 
 
-def _floats(polynomial: fmpq_poly, omega: float) -> np.ndarray:
+def _floats(numerator: fmpq_poly, denominator: fmpq_poly, omega: float) -> tuple[np.ndarray, np.ndarray]:
+    """Coefficients of s/omega as floats, both divided by the denominator's largest so that none bursts."""
     scale = Fraction(omega)
-    values = []
-    for k in range(polynomial.degree() + 1):
-        c = polynomial[k]
-        values.append(float(Fraction(int(c.p), int(c.q)) * scale**k))
-    return np.array(values or [0.0]).reshape(-1, 1)
+    rows = [
+        [Fraction(int(p[k].p), int(p[k].q)) * scale**k for k in range(p.degree() + 1)]
+        for p in (numerator, denominator)
+    ]
+    largest = max((abs(c) for c in rows[1]), default=Fraction(1)) or Fraction(1)
+    above, below = (np.array([float(c / largest) for c in row] or [0.0]).reshape(-1, 1) for row in rows)
+    return above, below
 
 
 def _exact_roots(polynomial: fmpq_poly) -> np.ndarray:
@@ -273,7 +292,8 @@ def _exact_roots(polynomial: fmpq_poly) -> np.ndarray:
     if polynomial.degree() < 1:
         return np.empty((0, 1), dtype=complex)
     found: list[complex] = []
-    for root, multiplicity in polynomial.numer().complex_roots():
+    roots: Any = polynomial.numer().complex_roots()
+    for root, multiplicity in roots:
         value = complex(float(root.real.mid()), float(root.imag.mid()))
         found.extend([value] * multiplicity)
     found.sort(key=lambda r: (abs(r), -r.imag))

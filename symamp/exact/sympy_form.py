@@ -15,9 +15,11 @@ if TYPE_CHECKING:
 
 
 def symbol_sympy(name: str, negative_ok: frozenset[str] = frozenset()) -> sympy.Symbol:
-    """The symbol: positive; real where `negative_ok` names it; complex where it is s."""
+    """The symbol: positive; real where `negative_ok` names it; complex where it is s; pi is the number."""
     if name == "s":
         return sympy.Symbol(name)
+    if name == "pi":
+        return sympy.pi
     return sympy.Symbol(name, real=True) if name in negative_ok else sympy.Symbol(name, positive=True)
 
 

@@ -80,7 +80,7 @@ class Tape:
                 np.add(slots[a], slots[b], out=target)
             else:
                 np.subtract(slots[a], slots[b], out=target)
-        for result, source in zip(results, self._sources):
+        for result, source in zip(results, self._sources, strict=False):
             result[start:stop] = slots[source]
 
     # Building: a node is an index into `_ops`, or a leaf.

@@ -7,6 +7,7 @@ of L over that resistance, with the other capacitors open, the other inductors s
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -18,7 +19,7 @@ from symamp.exact.cofactors import Ratio, entry_symbols, ratio_of
 from symamp.exact.derive import nested_of
 from symamp.exact.forms import EXPAND_LIMIT, raw_polynomials
 from symamp.exact.polys import by_power, lowest_terms
-from symamp.exact.shape import Shape, shape_of
+from symamp.exact.shape import Shape, shape_in_resistances
 from symamp.exact.system import build_system
 
 
@@ -38,17 +39,20 @@ class TimeConstant:
     why: str = ""
 
 
-def time_constants(stage: Stage, asked: Asked) -> tuple[TimeConstant, ...]:
+def time_constants(
+    stage: Stage, asked: Asked, rename: Mapping[str, str] | None = None
+) -> tuple[TimeConstant, ...]:
     """The time constants of all reactive parts that the response's denominator holds.
 
-    They are those of the network: a factor that cancels from the response counts here.
+    They are those of the network: a factor that cancels from the response counts here. `rename` maps a
+    conductance to the resistance to write in its place ({"gds1": "ro1"}).
     """
     ratio = ratio_of(build_system(stage, asked.without), asked)
     held = set(entry_symbols(ratio.graph))
     names = [n for n in stage.symbols if n in held and stage.symbols[n].nature in (CAPACITANCE, INDUCTANCE)]
     if not names:
         return ()
-    formulas = _formulas(stage, ratio, names)
+    formulas = _formulas(stage, ratio, names, rename or {})
     missing = [name for name in stage.symbols if name in held and name not in stage.bias]
     if missing:
         why = f"{', '.join(missing)} has no bias value"
@@ -83,10 +87,12 @@ def _seconds(stage: Stage, ratio: Ratio, names: list[str]) -> np.ndarray:
     with np.errstate(all="ignore"):
         b1 = below[1] if below.shape[0] > 1 else np.zeros(points)
         tau = b1 / below[0] / given.omega
-    return np.where(below[0] == 0, np.inf, tau)
+    return np.where(below[0] == 0, np.inf, tau + 0.0)  # + 0.0 makes a zero of −0.0
 
 
-def _formulas(stage: Stage, ratio: Ratio, names: list[str]) -> dict[str, Shape]:
+def _formulas(
+    stage: Stage, ratio: Ratio, names: list[str], rename: Mapping[str, str]
+) -> dict[str, Shape]:
     """The resistances as formulas; those of a part that sees none or an infinite one are left out."""
     if sum(ratio.graph.count_terms()) > EXPAND_LIMIT:
         return {}
@@ -108,7 +114,7 @@ def _formulas(stage: Stage, ratio: Ratio, names: list[str]) -> dict[str, Shape]:
             continue
         coefficient = by_power(slope, place[name])[1]
         pair = (coefficient, b0) if stage.symbols[name].nature == CAPACITANCE else (b0, coefficient)
-        found[name] = shape_of(*lowest_terms(*pair), weights=weights)
+        found[name] = shape_in_resistances(*lowest_terms(*pair), rename, weights)
     return found
 
 

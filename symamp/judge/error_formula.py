@@ -7,10 +7,9 @@ from dataclasses import dataclass
 import numpy as np
 from flint import fmpz_mpoly
 
-from symamp.assumptions.rewrite import into_ring
 from symamp.exact.asked_quantity import Quantity, is_root
 from symamp.exact.formulas import rational_of
-from symamp.exact.polys import S, lowest_terms, ring_of
+from symamp.exact.polys import held, into_ring, lowest_terms, ring_of
 from symamp.exact.response import Response
 from symamp.exact.shape import Shape, shape_of
 from symamp.exact.tape import term_dict
@@ -37,8 +36,7 @@ def error_formula(exact: Response, approximate: Response, quantity: Quantity) ->
         return None
     if max(len(e[0]) * len(a[1]), len(a[0]) * len(e[1])) > _TERM_LIMIT:
         return None
-    names = (set(e[0].context().names()) | set(a[0].context().names())) - {S}
-    context = ring_of(exact.stage.symbols, names)
+    context = ring_of(exact.stage.symbols, held(*e, *a))
     (en, ed), (an, ad) = (tuple(into_ring(p, context) for p in ratio) for ratio in (e, a))
     above, below = an * ed - en * ad, en * ad
     if above.is_zero():

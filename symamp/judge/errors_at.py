@@ -17,6 +17,9 @@ from symamp.exact.response import Response
 from symamp.exact.tape import Tape
 from symamp.judge.pairing import partners
 from symamp.judge.sets import Plan
+from symamp.judge.stacking import StackedFigures, stacked
+
+_Figures = Figures | StackedFigures
 
 _ROUNDING = 1e-14  # a relative difference below this is rounding, and no error of an assumption
 
@@ -78,7 +81,9 @@ class BankedForm:
 class ErrorTable:
     """One response under all sets of its assumptions."""
 
-    def __init__(self, exact: Response, assumptions: Sequence[Assumption], quantities: Sequence[Quantity]) -> None:
+    def __init__(
+        self, exact: Response, assumptions: Sequence[Assumption], quantities: Sequence[Quantity]
+    ) -> None:
         self.exact = exact
         self.assumptions = tuple(a for a in assumptions if a.applies(exact.name))
         self.quantities = tuple(quantities)
@@ -121,21 +126,19 @@ class ErrorTable:
     def at(self, values: Mapping[str, Any], points: int) -> dict[Quantity, tuple[np.ndarray, np.ndarray]]:
         """The same at `points` bias points: (sets, points)."""
         with np.errstate(all="ignore"):
-            figures = [variant.figures(values, points) for variant in self._banked]
+            figures = stacked([variant.figures(values, points) for variant in self._banked])
             zeros = [variant.zero_figures(values, points) for variant in self._banked]
             return self._all(figures, zeros)
 
     def _all(
-        self, figures: list[Figures], zeros: list[Figures | None]
+        self, figures: Sequence[_Figures], zeros: Sequence[Figures | None]
     ) -> dict[Quantity, tuple[np.ndarray, np.ndarray]]:
         paired: dict[tuple[int, str], np.ndarray] = {}
         base = self._variant_of[0]
         assert base is not None
         found = {}
         for quantity in self.quantities:
-            rows = [
-                _value(quantity, v, figures, zeros, base, paired) for v in range(len(self.variants))
-            ]
+            rows = [_value(quantity, v, figures, zeros, base, paired) for v in range(len(self.variants))]
             errors = [error_of(quantity, row, rows[base]) for row in rows]
             found[quantity] = (self._by_set(rows), self._by_set(errors))
         return found
@@ -151,18 +154,23 @@ def _banked(variant: Response, bank: Bank) -> Any:
     """The variant with its coefficients out of the bank; a nested one as it is."""
     if not isinstance(variant.form, Expanded):
         return variant
-    first = variant.first_zero
-    return replace(
-        variant,
-        form=BankedForm.of(variant.form, bank),
-        first_zero=BankedForm.of(first, bank) if isinstance(first, Expanded) else first,
-    )
+    # A banked form gives coefficients as the form itself does, which is all that figures ask of it.
+    form: Any = BankedForm.of(variant.form, bank)
+    first: Any = variant.first_zero
+    if isinstance(first, Expanded):
+        first = BankedForm.of(first, bank)
+    return replace(variant, form=form, first_zero=first)
 
 
 def _key(response: Response) -> Any:
     """What tells two responses apart."""
     form, first = response.form, response.first_zero
-    return (_form_key(form), response.apart, response.single_pole, None if first is None else _form_key(first))
+    return (
+        _form_key(form),
+        response.apart,
+        response.single_pole,
+        None if first is None else _form_key(first),
+    )
 
 
 def _form_key(form: Any) -> Any:
@@ -182,8 +190,8 @@ def _poly_key(polynomial: Any) -> Any:
 def _value(
     quantity: Quantity,
     variant: int,
-    figures: list[Figures],
-    zeros: list[Figures | None],
+    figures: Sequence[_Figures],
+    zeros: Sequence[Figures | None],
     base: int,
     paired: dict[tuple[int, str], np.ndarray],
 ) -> np.ndarray:
@@ -195,17 +203,22 @@ def _value(
     missing = np.full(exact.shape[1], complex(np.nan, np.nan))
     if variant == base:
         found = exact[index - 1] if index <= exact.shape[0] else missing
-        return np.asarray(face(found, quantity.face, quantity))
+        return np.asarray(face(_real_if_all_are(found), quantity.face, quantity))
     if (variant, name) not in paired:
         own = zeros[variant] if name == "z" else None
         approximate = _roots(own or figures[variant], name)
         paired[variant, name] = partners(exact, approximate[:1] if own else approximate)
     row = paired[variant, name]
     found = row[index - 1] if index <= row.shape[0] else missing
-    return np.asarray(face(found, quantity.face, quantity))
+    return np.asarray(face(_real_if_all_are(found), quantity.face, quantity))
 
 
-def _roots(figures: Figures, name: str) -> np.ndarray:
+def _real_if_all_are(roots: np.ndarray) -> np.ndarray:
+    """Roots as real numbers where none is complex (nan aside), which all that follows takes far faster."""
+    return roots if (np.abs(roots.imag) > 0).any() else np.ascontiguousarray(roots.real)
+
+
+def _roots(figures: _Figures, name: str) -> np.ndarray:
     return np.asarray(figures.poles if name == "p" else figures.zeros)
 
 
@@ -219,6 +232,4 @@ def error_of(quantity: Quantity, approximate: np.ndarray, exact: np.ndarray) -> 
     with np.errstate(all="ignore"):
         relative = difference / exact
     relative = np.where(np.abs(relative) < _ROUNDING, 0.0, relative)
-    return np.where(exact == 0, np.nan, relative)
-
-
+    return relative if exact.all() else np.where(exact == 0, np.nan, relative)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -215,6 +216,7 @@ def _account(
 ) -> Account:
     exact, full = table.exact, table.approximations[table.plan.masks[-1]]
     figures = table.plan.figures(errors)[:, 0]
+    whys = _Whys(table, quantity, values[:, 0])
     span = swept.of(name, quantity) if swept else None
     lost, new = _left_over(table, quantity)
     approximate = full.response
@@ -233,11 +235,12 @@ def _account(
         formula_exact=formula_of(exact, quantity),
         formula_approximate=None if approximate is None else _approximate_formula(table, quantity, values),
         error_formula=formula,
-        modulus=bool(span and span[0] and span[0].modulus) or bool(np.iscomplexobj(figures) and figures[0].imag),
+        modulus=bool(span and span[0] and span[0].modulus)
+        or bool(np.iscomplexobj(figures) and (np.where(np.isnan(figures), 0.0, figures).imag != 0).any()),
         absolute=in_decibels_or_degrees(quantity),
         lost=lost,
         new=new,
-        assumptions=_shares(table, figures, errors[:, 0], span),
+        assumptions=_shares(whys, figures, errors[:, 0], span),
         span=span[0] if span else None,
         remarks=tuple(exact.bias_figures.remarks(quantity)) if value_e is not None else (),
     )
@@ -295,23 +298,22 @@ def _named(kind: str, roots: Sequence[complex], among: Sequence[complex]) -> tup
 
 
 def _shares(
-    table: ErrorTable, figures: np.ndarray, errors: np.ndarray, span: Sequence[SpanFigure | None] | None
+    whys: _Whys, figures: np.ndarray, errors: np.ndarray, span: Sequence[SpanFigure | None] | None
 ) -> tuple[Share, ...]:
-    names = [assumption.name for assumption in table.assumptions]
-    shares = []
-    for k, name in enumerate(names):
+    plan, shares = whys.table.plan, []
+    for k, name in enumerate(whys.names):
         values: dict[str, float | complex | None] = {}
         why: dict[str, str] = {}
         over: dict[str, SpanFigure] = {}
         for figure in FIGURES:
-            row = 1 + table.plan.rows.index((k, figure)) if (k, figure) in table.plan.rows else None
+            row = 1 + plan.rows.index((k, figure)) if (k, figure) in plan.rows else None
             if row is None:
                 values[figure] = None
                 why[figure] = "shares are worked out for up to 12 assumptions"
                 continue
             values[figure] = _number(figures[row])
             if values[figure] is None:
-                why[figure] = _missing_words(table, row, errors, names)
+                why[figure] = whys.of(plan.smallest_missing(row, errors))
             found = span[row] if span else None
             if found is not None:
                 over[figure] = found
@@ -319,13 +321,35 @@ def _shares(
     return tuple(shares)
 
 
-def _missing_words(table: ErrorTable, row: int, errors: np.ndarray, names: Sequence[str]) -> str:
-    mask = table.plan.smallest_missing(row, errors)
-    if mask is None:
-        return "the quantity has no value"
-    listed = " and ".join(repr(name) for name in names_of(mask, names))
-    words = table.approximations[mask].why
-    return f"under {listed} the quantity has no value" + (f": {words}" if words else "")
+@dataclass
+class _Whys:
+    """Why a figure of a quantity has no value at the bias point; `values` are the quantity's under every set."""
+
+    table: ErrorTable
+    quantity: Quantity
+    values: np.ndarray
+
+    @cached_property
+    def names(self) -> list[str]:
+        return [assumption.name for assumption in self.table.assumptions]
+
+    def of(self, mask: int | None) -> str:
+        """Why there is no error under the smallest set that a figure needs; the set is named."""
+        if np.isnan(self.values[0]) or mask is None:
+            why = self.table.exact.bias_figures.why(self.quantity)
+            return f"the exact {self.quantity.text} has no value" + (f": {why}" if why else "")
+        listed = " and ".join(repr(name) for name in names_of(mask, self.names))
+        if not np.isnan(self.values[self.table.plan.masks.index(mask)]):
+            return f"the exact value is 0, so there is no relative error under {listed}"
+        if is_root(self.quantity) and self.table.response(mask) is not None:
+            return f"under {listed} {self.quantity.name}{self.quantity.index} is lost: it has no partner"
+        return f"under {listed} the quantity has no value: {self._words(mask)}"
+
+    def _words(self, mask: int) -> str:
+        approximation = self.table.approximations[mask]
+        if approximation.response is None:
+            return approximation.why
+        return approximation.response.bias_figures.why(self.quantity)
 
 
 def _number(value: Any) -> float | complex | None:

@@ -16,10 +16,12 @@ def partners(exact: np.ndarray, approximate: np.ndarray) -> np.ndarray:
     Both come sorted by magnitude, nan last where there are fewer. Roots at 0 pair first.
     """
     m, points = exact.shape
-    result = np.full((m, points), complex(np.nan, np.nan))
     if m == 0 or approximate.shape[0] == 0 or points == 0:
-        return result
+        return np.full((m, points), complex(np.nan, np.nan))
     plain = _in_order(exact, approximate)
+    if plain.all():
+        return approximate
+    result = np.full((m, points), complex(np.nan, np.nan))
     if plain.any():
         result[:, plain] = approximate[:, plain]
     rest = np.flatnonzero(~plain)

@@ -16,6 +16,8 @@ import numpy as np
 SHARES_LIMIT = 12  # assumptions up to which shares are worked out, by all 2**n sets
 
 _ROUNDING = 1e-13  # a weighted sum of errors below this is the rounding of its parts
+_SMALL_PRODUCT = 200_000  # multiplications of a product that one thread does alone
+_LEAST_COLUMNS = 64
 
 FIGURES = ("alone", "added", "last", "share")
 
@@ -82,13 +84,37 @@ class Plan:
 
     def figures(self, errors: np.ndarray) -> np.ndarray:
         """(1 + rows, P) from errors of shape (sets, P); nan where a set that a figure needs has no value."""
-        missing = np.isnan(errors)
-        any_missing = bool(missing.any())
-        found = np.asarray(self.weights @ (np.where(missing, 0.0, errors) if any_missing else errors))
+        missing = _missing(errors)
+        known = errors if missing is None else np.where(missing, 0.0, errors)
+        if np.iscomplexobj(known) and not known.imag.any():
+            known = np.ascontiguousarray(known.real)
+        found = self._weighted(known)
         found[np.abs(found) < _ROUNDING] = 0.0
-        if any_missing:
-            lacking = (self.weights != 0).astype(float) @ missing.astype(float) > 0
-            found[lacking] = np.nan
+        if missing is not None:
+            found[self._lacking(missing)] = np.nan
+        return found
+
+    def _lacking(self, missing: np.ndarray) -> np.ndarray:
+        """Which figures need a set that is missing: (1 + rows,) where that is so at all points, else with P."""
+        needs = self.weights != 0
+        throughout = missing.all(axis=1)
+        if np.array_equal(throughout, missing.any(axis=1)):
+            return np.asarray(needs[:, throughout].any(axis=1))
+        lacking = np.zeros((needs.shape[0], missing.shape[1]), dtype=bool)
+        for column in np.flatnonzero(missing.any(axis=1)):
+            lacking[needs[:, column]] |= missing[column]
+        return lacking
+
+    def _weighted(self, errors: np.ndarray) -> np.ndarray:
+        """weights · errors, a few columns at a time.
+
+        The products stay below the size at which a BLAS spreads one over threads: these would wait for one another
+        on a busy machine, and gain nothing on an idle one.
+        """
+        columns = max(_LEAST_COLUMNS, _SMALL_PRODUCT // self.weights.size)
+        found = np.empty((self.weights.shape[0], errors.shape[1]), dtype=errors.dtype)
+        for start in range(0, errors.shape[1], columns):
+            np.matmul(self.weights, errors[:, start : start + columns], out=found[:, start : start + columns])
         return found
 
     def smallest_missing(self, row: int, errors: np.ndarray) -> int | None:
@@ -99,6 +125,15 @@ class Plan:
             if weight and np.isnan(error)
         ]
         return min(needed, key=lambda mask: (mask.bit_count(), mask), default=None)
+
+
+def _missing(errors: np.ndarray) -> np.ndarray | None:
+    """Where errors are nan; None where none is, which their sum tells at less cost."""
+    with np.errstate(all="ignore"):
+        if not np.isnan(errors.sum()):
+            return None
+    missing = np.isnan(errors)
+    return missing if missing.any() else None
 
 
 def names_of(mask: int, names: Sequence[str]) -> tuple[str, ...]:

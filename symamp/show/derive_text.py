@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from symamp.assumptions.apply import Approximation
+from symamp.circuit.kinds import CAPACITANCE, INDUCTANCE
 from symamp.exact.forms import Expanded, Nested
+from symamp.exact.grouped import grouped
 from symamp.exact.response import QuantityValue, Response
-from symamp.exact.shape import shape_of
 from symamp.exact.time_constants import TimeConstant
 from symamp.show.columns import LEFT, POINT, table_lines
 from symamp.show.formulas import formula_lines, one_line, polynomial_lines
@@ -39,7 +40,9 @@ def response_page(
         _constants(page, constants)
 
 
-def approximation_page(page: Page, approximation: Approximation, exact: Response, frequencies: Sequence[float]) -> None:
+def approximation_page(
+    page: Page, approximation: Approximation, exact: Response, frequencies: Sequence[float]
+) -> None:
     """The same response under assumptions, and what was dropped."""
     names = ", ".join(f"“{name}”" for name in approximation.assumptions)
     if not approximation.assumptions:
@@ -47,7 +50,7 @@ def approximation_page(page: Page, approximation: Approximation, exact: Response
         return
     page.heading(f"{exact.name} under {names}")
     if approximation.response is None:
-        page.line(f"  there is no approximate response: {approximation.why}")
+        page.prose(f"there is no approximate response: {approximation.why}", indent=2)
     else:
         _body(page, approximation.response, frequencies)
     _dropped(page, approximation)
@@ -70,9 +73,11 @@ def _body(page: Page, response: Response, frequencies: Sequence[float]) -> None:
     form = response.form
     if isinstance(form, Expanded):
         weights = response.bias_values or None
+        symbols = response.stage.symbols
+        reactive = {n for n in form.symbols if symbols[n].nature in (CAPACITANCE, INDUCTANCE)}
         page.line()
         for label, row in (("N(s)", form.numerator), ("D(s)", form.denominator)):
-            shapes = [shape_of(c, weights=weights) for c in row]
+            shapes = [grouped(c, reactive, weights) for c in row]
             page.block(polynomial_lines(shapes, page.width - 4, label=label), indent=2)
         page.line()
         dc = response.quantity("dc")
@@ -99,8 +104,9 @@ def _quantities(page: Page, response: Response) -> None:
         rows.append([name, value_words(found.value, found.unit), _beside(response, name, found)])
         notes += [f"{name}: {remark}" for remark in found.remarks]
     page.line()
-    page.block(table_lines(["quantity", "value", ""], rows, [LEFT, POINT, LEFT]))
-    page.block([f"remark: {note}" for note in notes], indent=2)
+    page.block(table_lines(["quantity", "value", ""], rows, [LEFT, POINT, LEFT], width=page.width))
+    for note in notes:
+        page.prose(f"remark: {note}", indent=2)
 
 
 def _beside(response: Response, name: str, found: QuantityValue) -> str:
@@ -122,7 +128,7 @@ def _short(found: QuantityValue, most: int = 60) -> str:
 
 def _roots(page: Page, response: Response) -> None:
     if response.missing:
-        page.line(f"  {', '.join(response.missing)} has no bias value, so there are no numbers")
+        page.prose(f"{', '.join(response.missing)} has no bias value, so there are no numbers", indent=2)
         return
     rows = []
     for letter, word, roots in (("p", "pole", response.poles()), ("z", "zero", response.zeros())):
@@ -132,7 +138,7 @@ def _roots(page: Page, response: Response) -> None:
     if rows:
         page.line()
         headers = ["", "", "frequency", "damping", "formula (rad/s)" if any(r[4] for r in rows) else ""]
-        page.block(table_lines(headers, rows, [LEFT, LEFT, POINT, LEFT, LEFT]))
+        page.block(table_lines(headers, rows, [LEFT, LEFT, POINT, LEFT, LEFT], width=page.width))
 
 
 def _constants(page: Page, constants: Sequence[TimeConstant]) -> None:
@@ -143,7 +149,7 @@ def _constants(page: Page, constants: Sequence[TimeConstant]) -> None:
         rows.append(
             [
                 constant.part,
-                value_words(constant.resistance, "ohm") if constant.resistance is not None else "infinite",
+                _resistance_words(constant),
                 value_words(constant.seconds, "s"),
                 share,
                 formula if len(formula) <= 60 else "",
@@ -151,7 +157,13 @@ def _constants(page: Page, constants: Sequence[TimeConstant]) -> None:
         )
     page.line()
     headers = ["open-circuit", "resistance", "time constant", "share of b1", ""]
-    page.block(table_lines(headers, rows, [LEFT, POINT, POINT, POINT, LEFT]))
+    page.block(table_lines(headers, rows, [LEFT, POINT, POINT, POINT, LEFT], width=page.width))
+
+
+def _resistance_words(constant: TimeConstant) -> str:
+    if constant.resistance is None and "infinite" in constant.why:
+        return "infinite"
+    return value_words(constant.resistance, "ohm")
 
 
 def _dropped(page: Page, approximation: Approximation) -> None:
@@ -163,11 +175,11 @@ def _dropped(page: Page, approximation: Approximation) -> None:
         rows.append([item.coefficient, _dots(item.term), _dots(item.against), ratio])
     page.line()
     page.block(
-        table_lines(
-            ["dropped from", "term", "fell to", "ratio at bias"], rows, [LEFT, LEFT, LEFT, POINT]
-        )
+        table_lines(["dropped from", "term", "fell to", "ratio at bias"], rows, [LEFT, LEFT, LEFT, POINT])
     )
 
 
 def _dots(text: str) -> str:
-    return text.replace("**2", "²").replace("**3", "³").replace("**", "^").replace("*", "·").replace("-", MINUS)
+    return (
+        text.replace("**2", "²").replace("**3", "³").replace("**", "^").replace("*", "·").replace("-", MINUS)
+    )

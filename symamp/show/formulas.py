@@ -32,7 +32,11 @@ def _power(base: str, power: int) -> str:
     return base + _SUPERSCRIPT.get(power, f"^{power}")
 
 
-TERMINAL = Notation(str, _power, inline_fraction, "√({})".format, times="·", minus="−")
+def _symbol(name: str) -> str:
+    return "π" if name == "pi" else name
+
+
+TERMINAL = Notation(_symbol, _power, inline_fraction, "√({})".format, times="·", minus="−")
 
 
 def one_line(shape: Shape | QuadraticRoot) -> str:
@@ -67,15 +71,18 @@ def polynomial_lines(
 ) -> list[str]:
     """`label = (…) + (…)·s + (…)·s²` from its coefficients, ascending (shapes, or fmpz_mpoly).
 
+    A coefficient that is a tuple of shapes, which add up to it, gives one addend each.
+
     One line where it fits; else each power begins a line. Width, long formulas and errors as in
     `formula_lines`.
     """
     _check_width(width)
     addends: list[list[_Word]] = []
     for power, each in enumerate(coefficients):
-        shape = each if isinstance(each, Shape) else shape_of(each)
-        if shape.coefficient:
-            addends.append(_addend(shape, power, variable, first=not addends))
+        for part in each if isinstance(each, tuple) else (each,):
+            shape = part if isinstance(part, Shape) else shape_of(part)
+            if shape.coefficient:
+                addends.append(_addend(shape, power, variable, first=not addends))
     every = [word for addend in addends for word in addend] or [_Word("0")]
     head, lead = _head(label, "", width, every)
     room = width - len(lead)

@@ -7,7 +7,7 @@ from typing import Any
 
 import numpy as np
 
-from symamp.assumptions.apply import Approximation
+from symamp.assumptions.apply import Approximation, Dropped
 from symamp.circuit.stage import Stage
 from symamp.exact.forms import Expanded
 from symamp.exact.response import QuantityValue, Response
@@ -30,6 +30,8 @@ QUANTITIES = (
     "phase_margin",
     "gain_margin",
 )
+
+_NO_FORMULA = "no closed form is written out"
 
 
 def number(value: complex | float | None) -> Any:
@@ -68,6 +70,8 @@ def quantity_json(found: QuantityValue) -> dict[str, Any]:
     }
     if found.why is not None:
         result["why"] = found.why
+    if found.text is None:
+        result["why_formula"] = _NO_FORMULA
     if found.remarks:
         result["remarks"] = list(found.remarks)
     return result
@@ -114,7 +118,7 @@ def response_json(
 def _roots_json(response: Response) -> dict[str, Any]:
     if response.missing:
         why = f"{', '.join(response.missing)} has no bias value"
-        return {"poles": None, "zeros": None, "why_roots": why}
+        return {"poles": None, "zeros": None, "why_poles": why, "why_zeros": why}
     return {
         "poles": [number(complex(p)) for p in response.poles()],
         "zeros": [number(complex(z)) for z in response.zeros()],
@@ -141,6 +145,12 @@ def _constant_json(constant: TimeConstant) -> dict[str, Any]:
     }
     if constant.why:
         result["why"] = constant.why
+    elif constant.resistance is None:
+        result["why_resistance"] = f"{constant.part} is 0 or its time constant is"
+    if constant.share is None and not constant.why:
+        result["why_share"] = "the time constants have no finite sum"
+    if constant.formula is None:
+        result["why_formula"] = _NO_FORMULA
     return result
 
 
@@ -168,14 +178,16 @@ def approximation_json(
     else:
         result = response_json(response, constants, frequencies)
     result["assumptions"] = list(approximation.assumptions)
-    result["dropped"] = [
-        {"coefficient": d.coefficient, "term": d.term, "against": d.against, "ratio": d.ratio}
-        for d in approximation.dropped
-    ]
+    result["dropped"] = [_dropped_json(item) for item in approximation.dropped]
     result["warnings"] = list(approximation.warnings)
     result["remarks"] = list(approximation.remarks)
     result["exact"] = dict(exact)
     return result
+
+
+def _dropped_json(item: Dropped) -> dict[str, Any]:
+    found = {"coefficient": item.coefficient, "term": item.term, "against": item.against, "ratio": item.ratio}
+    return found if item.ratio is not None else {**found, "why": "a symbol of the two has no bias value, or is 0"}
 
 
 def ledger_json(ledger: Ledger) -> dict[str, Any]:
@@ -205,20 +217,29 @@ def _account_json(account: Account, ledger: Ledger) -> dict[str, Any]:
     }
     if account.why:
         result["why"] = account.why
+    for key in ("formula_exact", "formula_approximate", "error_formula"):
+        if result[key] is None:
+            result[f"why_{key}"] = _NO_FORMULA
+    if result["leading_term"] is None:
+        result["why_leading_term"] = _NO_FORMULA if error is None else "the error is 0"
     if account.error_absolute is not None:
         result["error_absolute"] = number(account.error_absolute)
     if account.remarks:
         result["remarks"] = list(account.remarks)
     result["assumptions"] = [_share_json(share, ledger) for share in account.assumptions]
     if account.span is not None:
-        points = {"points": ledger.points, "seed": ledger.seed}
+        points: dict[str, Any] = {"points": ledger.points, "seed": ledger.seed}
+        if ledger.seed is None:
+            points["why_seed"] = "every row is tried, and none is drawn"
         result["span"] = {"error": {**span_json(account.span, ledger.method), **points}}
     else:
         result["span"] = None
-        result["why_span"] = (
-            "the stage gives no span" if ledger.stage.span.empty else "no value anywhere over the span"
-        )
+        result["why_span"] = _why_no_span(ledger)
     return result
+
+
+def _why_no_span(ledger: Ledger) -> str:
+    return "the stage gives no span" if ledger.stage.span.empty else "no value anywhere over the span"
 
 
 def _lost_json(root: LostRoot) -> dict[str, Any]:
@@ -231,10 +252,14 @@ def _share_json(share: Share, ledger: Ledger) -> dict[str, Any]:
         result[figure] = number(share.figures[figure])
     if share.why:
         result["why"] = dict(share.why)
-    result["span"] = {
+    if ledger.stage.span.empty:
+        return {**result, "span": None, "why_span": _why_no_span(ledger)}
+    over: dict[str, Any] = {
         figure: span_json(share.span[figure], ledger.method) if figure in share.span else None
         for figure in FIGURES
     }
+    lacking = {figure: share.why.get(figure) or _why_no_span(ledger) for figure in FIGURES if over[figure] is None}
+    result["span"] = {**over, "why": lacking} if lacking else over
     return result
 
 
@@ -251,5 +276,3 @@ def span_json(figure: SpanFigure, method: str) -> dict[str, Any]:
     if figure.missing:
         result["missing"] = figure.missing
     return result
-
-

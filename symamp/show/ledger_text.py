@@ -6,13 +6,15 @@ import math
 from collections.abc import Sequence
 
 from symamp.judge.ledger import Account, Ledger, LostRoot, Share
+from symamp.judge.sets import FIGURES, SHARES_LIMIT
 from symamp.judge.span_errors import SpanFigure
-from symamp.show.columns import LEFT, POINT, table_lines
+from symamp.show.columns import LEFT, POINT, table_groups
 from symamp.show.formulas import formula_lines, one_line
 from symamp.show.page import Page
 from symamp.show.words import error_words, value_words, where_words
 
 _NAME = 30  # characters of an assumption's name in a row; the list above has it whole
+_SHORT_NAME = 16  # the same where the page is narrow
 
 
 def ledger_page(page: Page, ledger: Ledger) -> None:
@@ -24,7 +26,7 @@ def ledger_page(page: Page, ledger: Ledger) -> None:
     page.line()
     if ledger.points:
         seed = "" if ledger.seed is None else f", seed {ledger.seed}"
-        page.line(f"Over the span: {ledger.points:,} bias points{seed}; {ledger.method}.")
+        page.prose(f"Over the span: {ledger.points:,} bias points{seed}; {ledger.method}.")
         if ledger.seed is not None:
             page.line("Sampled, not proved: a worse point may lie between those tried.")
     else:
@@ -34,18 +36,18 @@ def ledger_page(page: Page, ledger: Ledger) -> None:
 
 def _listed(page: Page, ledger: Ledger) -> None:
     for k, name in enumerate(ledger.assumptions, start=1):
-        page.line(f"  {k}  {name}")
+        page.prose(f"{k}  {name}", indent=2)
 
 
 def _account(page: Page, account: Account, ledger: Ledger) -> None:
     page.heading(account.name)
     _formulas(page, account)
     if _untouched(account):
-        page.line(f"  exact {_value(account.exact, account)}; no assumption changes it", "bold")
+        page.prose(f"exact {_value(account.exact, account)}; no assumption changes it", "bold", indent=2)
         return
     values = f"exact {_value(account.exact, account)}, approximate {_value(account.approximate, account)}"
-    error = _error(account.error, account)
-    page.line(f"  {values}, error {error}" + (f": {account.why}" if account.why else ""), "bold")
+    error = _error(account.error, account) + (" (modulus)" if _modulus_here(account) else "")
+    page.prose(f"{values}, error {error}" + (f": {account.why}" if account.why else ""), "bold", indent=2)
     if account.error_absolute is not None:
         page.line(f"  absolute error {value_words(account.error_absolute, account.unit)}")
     if account.error_formula is not None and account.error_formula.leading is not None:
@@ -54,12 +56,13 @@ def _account(page: Page, account: Account, ledger: Ledger) -> None:
         if len(text) <= page.width - 14:
             page.line(f"  error = {text}")
         if leading != text:
-            page.line(f"  its leading term {leading}")
+            page.prose(f"its leading term {leading}", indent=2)
     _roots(page, "lost", account.lost)
     _roots(page, "new", account.new)
     page.line()
     _table(page, account, ledger)
-    page.block([f"remark: {remark}" for remark in account.remarks], indent=2)
+    for remark in account.remarks:
+        page.prose(f"remark: {remark}", indent=2)
 
 
 def _untouched(account: Account) -> bool:
@@ -91,61 +94,90 @@ def _formulas(page: Page, account: Account) -> None:
 def _roots(page: Page, word: str, roots: Sequence[LostRoot]) -> None:
     if roots:
         listed = ", ".join(f"{root.name} at {value_words(root.hz, 'Hz')}" for root in roots)
-        page.line(f"  {word} under all assumptions: {listed}")
+        page.prose(f"{word} under all assumptions: {listed}", indent=2)
 
 
 def _error(value: complex | float | None, account: Account) -> str:
-    return error_words(value, account.unit, absolute=account.absolute)
+    return error_words(value, account.unit, absolute=account.absolute, modulus=_modulus_here(account))
+
+
+def _modulus_here(account: Account) -> bool:
+    """Whether a figure at the bias point is complex, so that all are shown as moduli."""
+    figures = [f for share in account.assumptions for f in share.figures.values()]
+    return any(isinstance(f, complex) and bool(f.imag) for f in (account.error, *figures))
 
 
 def _table(page: Page, account: Account, ledger: Ledger) -> None:
-    units = {name: symbol.unit for name, symbol in ledger.stage.symbols.items()}
-    over = account.span is not None
-    headers = ["assumption", "alone", "added", "last", "share"]
-    if over:
-        word = "modulus" if account.modulus else "share"
-        headers += [f"{word} least", f"{word} greatest", "worst at"]
-    numbers = {name: k for k, name in enumerate(ledger.assumptions, start=1)}
-    rows = [_row(share, account, units, over, numbers[share.name]) for share in account.assumptions]
-    rows.append(_total(account, units, over))
-    kinds = [LEFT, *[POINT] * 4, *([POINT, POINT, LEFT] if over else [])]
-    lines = table_lines(headers, rows, kinds)
-    page.block(lines[:-1])
-    page.line(lines[-1], "bold")
+    """One table; where it would be too wide, what is over the span in a second one, and names cut short."""
+    for name, apart in ((_NAME, False), (_NAME, True), (_SHORT_NAME, True)):
+        groups = _groups(page, account, ledger, name, apart)
+        if max(len(line) for table in groups for lines in table for line in lines) <= page.width:
+            break
+    for k, table in enumerate(groups):
+        if k:
+            page.line()
+        for lines in table[:-1]:
+            page.block(lines)
+        page.block(table[-1], style="bold")
     # Each figure has a why of its own; the shortest names the smallest set, which is what matters.
     whys = sorted({why for share in account.assumptions for why in share.why.values()}, key=len)
-    page.block(whys[:1], indent=2)
+    for why in whys[:1]:
+        page.prose(why, indent=2)
 
 
-def _row(share: Share, account: Account, units: dict[str, str], over: bool, number: int) -> list[str]:
-    row = [_label(number, share.name), *(_error(share.figures[figure], account) for figure in ("alone", "added", "last", "share"))]
-    if over:
-        row += _over(share.span.get("share") or share.span.get("added"), account, units)
-    return row
+def _groups(page: Page, account: Account, ledger: Ledger, name: int, apart: bool) -> list[list[list[str]]]:
+    """The lines of one table or two, a list a row."""
+    numbers = {name: k for k, name in enumerate(ledger.assumptions, start=1)}
+    labels = [_label(numbers[share.name], share.name, name) for share in account.assumptions] + ["all"]
+    here = [[_error(share.figures[figure], account) for figure in FIGURES] for share in account.assumptions]
+    here.append(["", "", "", _error(account.error, account)])
+    headers, kinds = list(FIGURES), [POINT] * len(FIGURES)
+    if account.span is None:
+        return [_numbered(labels, "assumption", headers, here, kinds)]
+    over_headers, over = _over_span(account, ledger)
+    over_kinds = [POINT, POINT, LEFT]
+    if not apart:
+        both = [a + b for a, b in zip(here, over, strict=True)]
+        return [_numbered(labels, "assumption", headers + over_headers, both, kinds + over_kinds)]
+    return [
+        _numbered(labels, "at the bias point", headers, here, kinds),
+        _numbered(labels, "over the span", over_headers, over, over_kinds, page.width),
+    ]
 
 
-def _label(number: int, name: str) -> str:
-    return f"{number} {name}" if len(name) <= _NAME else f"{number} {name[: _NAME - 1]}…"
+def _numbered(
+    labels: Sequence[str],
+    title: str,
+    headers: Sequence[str],
+    rows: Sequence[Sequence[str]],
+    kinds: Sequence[str],
+    width: int | None = None,
+) -> list[list[str]]:
+    whole = [[label, *row] for label, row in zip(labels, rows, strict=True)]
+    return table_groups([title, *headers], whole, [LEFT, *kinds], width=width)
 
 
-def _total(account: Account, units: dict[str, str], over: bool) -> list[str]:
-    row = ["all", "", "", "", _error(account.error, account)]
-    if over:
-        row += _over(account.span, account, units)
-    return row
+def _over_span(account: Account, ledger: Ledger) -> tuple[list[str], list[list[str]]]:
+    """Headers and cells of what is over the span: shares, or what each adds where there are no shares."""
+    units = {name: symbol.unit for name, symbol in ledger.stage.symbols.items()}
+    figure = "share" if len(account.assumptions) <= SHARES_LIMIT else "added"
+    word = "modulus" if account.modulus else figure
+    cells = [_over(share.span.get(figure), account, units) for share in account.assumptions]
+    cells.append(_over(account.span, account, units))
+    return [f"{word} least", f"{word} greatest", "worst at"], cells
+
+
+def _label(number: int, name: str, most: int) -> str:
+    return f"{number} {name}" if len(name) <= most else f"{number} {name[: most - 1]}…"
 
 
 def _over(figure: SpanFigure | None, account: Account, units: dict[str, str]) -> list[str]:
     if figure is None:
         return ["none", "none", ""]
     worst = figure.where_greatest if abs(figure.greatest) >= abs(figure.least) else figure.where_least
-    if figure.least == figure.greatest == 0:
-        place = ""
-    else:
-        place = where_words(worst, units)
+    place = "" if figure.least == figure.greatest == 0 else where_words(worst, units)
     if figure.missing:
         place += f" (no value at {figure.missing} points)"
-    return [
-        error_words(x, account.unit, absolute=account.absolute, modulus=figure.modulus)
-        for x in (figure.least, figure.greatest)
-    ] + [place]
+    ends = (figure.least, figure.greatest)
+    words = [error_words(x, account.unit, absolute=account.absolute, modulus=figure.modulus) for x in ends]
+    return [*words, place.strip()]

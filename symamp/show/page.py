@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Iterable
 from dataclasses import dataclass, field
 
@@ -27,25 +28,38 @@ class Page:
         for text in lines:
             self.line((" " * indent + text).rstrip(), style)
 
+    def prose(self, text: str, style: str = "", *, indent: int = 0) -> None:
+        """A sentence, broken between words where the page is too narrow for it."""
+        deeper = " " * (indent + 2)
+        for line in textwrap.wrap(
+            text,
+            self.width,
+            initial_indent=" " * indent,
+            subsequent_indent=deeper,
+            break_long_words=False,
+            break_on_hyphens=False,
+        ):
+            self.line(line, style)
+
     def heading(self, text: str) -> None:
         """A heading, with an empty line above it unless it opens the page."""
         if self.lines:
             self.line()
-        self.line(text, "bold")
+        self.prose(text, "bold")
 
     def notes(self, warnings: Iterable[str], remarks: Iterable[str]) -> None:
         """Warnings and remarks, each with its word in front."""
         for text in warnings:
-            self.line(f"warning: {text}", "yellow")
+            self.prose(f"warning: {text}", "yellow")
         for text in remarks:
-            self.line(f"remark: {text}")
+            self.prose(f"remark: {text}")
 
     def text(self) -> str:
         """All lines without styles."""
         return "\n".join(text for text, _ in self.lines) + "\n"
 
     def show(self, console: Console) -> None:
-        """Print, each line as it is: nothing is wrapped or read as markup."""
+        """Print, each line as it is: nothing is wrapped any more, or read as markup."""
         for text, style in self.lines:
             console.print(Text(text, style=style), soft_wrap=True, highlight=False)
 

@@ -5,20 +5,24 @@ from __future__ import annotations
 import json
 import sys
 import time
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
 from typing import Any
 
 from rich.console import Console
 from rich.progress import BarColumn, Progress, TextColumn, TimeRemainingColumn
 
-from symamp.assumptions.apply import Approximator
+from symamp.assumptions.apply import Approximation, Approximator
 from symamp.assumptions.read import Assumption, chosen, read_assumptions
+from symamp.circuit.schema import stage_schema
 from symamp.circuit.stage import Stage
 from symamp.circuit.stagefile import read_stage
 from symamp.errors import InputError, StageError
 from symamp.exact.derive import derive as derive_response
 from symamp.exact.opinion import Opinion, second_opinion
-from symamp.exact.time_constants import time_constants
+from symamp.exact.resistive import in_resistances, resistance_names
+from symamp.exact.response import Response
+from symamp.exact.time_constants import TimeConstant, time_constants
 from symamp.judge.ledger import make_ledger
 from symamp.show.derive_text import approximation_page, response_page
 from symamp.show.json_parts import approximation_json, head, ledger_json, response_json
@@ -29,11 +33,22 @@ from symamp.values import read_frequency
 _PATIENCE = 2.0  # seconds before a progress bar appears
 
 
+@dataclass(frozen=True)
+class _Derived:
+    """What `derive` shows of one response: exact, and under the assumptions asked for."""
+
+    exact: Response
+    approximation: Approximation | None
+    constants: tuple[TimeConstant, ...]
+    opinion: Opinion | None
+
+
 def derive(
     file: str,
     assume: Sequence[str],
     frequencies: Sequence[str],
     responses: Sequence[str],
+    resistances: bool,
     with_opinion: bool,
     as_json: bool,
 ) -> int:
@@ -41,47 +56,60 @@ def derive(
     stage = read_stage(file)
     hertz = [_frequency(text) for text in frequencies]
     assumptions = read_assumptions(stage)
-    made = chosen(assumptions, assume) if assume else ()
-    wanted = _wanted(stage, responses)
-    exact = {name: derive_response(stage, stage.asked[name]) for name in wanted}
-    opinions = {name: second_opinion(stage, stage.asked[name]) for name in wanted} if with_opinion else {}
+    made = chosen(assumptions, assume) if assume else None
+    rename = resistance_names(stage) if resistances else {}
+    found = {name: _derived(stage, name, made, rename, with_opinion) for name in _wanted(stage, responses)}
     if as_json:
-        _print_json(_derive_json(stage, exact, made, hertz, opinions))
+        _print_json(_derive_json(stage, found, hertz))
     else:
-        console = Console(highlight=False)
-        page = Page(console_width(console))
-        page.line(stage.title, "bold")
-        for name, response in exact.items():
-            response_page(page, response, time_constants(stage, response.asked), hertz)
-            if assume:
-                approximation_page(page, Approximator(response).under(made), response, hertz)
-            if name in opinions:
-                page.line(f"  second opinion: {opinions[name].words}")
-        _notes(page, stage)
-        page.show(console)
-    return 1 if any(opinion.agrees is False for opinion in opinions.values()) else 0
+        _show_derived(stage, found, hertz)
+    return 1 if any(each.opinion and each.opinion.agrees is False for each in found.values()) else 0
 
 
-def _derive_json(
+def _derived(
     stage: Stage,
-    exact: dict[str, Any],
-    made: Sequence[Assumption],
-    hertz: Sequence[float],
-    opinions: dict[str, Opinion],
-) -> dict[str, Any]:
+    name: str,
+    made: Sequence[Assumption] | None,
+    rename: Mapping[str, str],
+    with_opinion: bool,
+) -> _Derived:
+    asked = stage.asked[name]
+    exact = derive_response(stage, asked)
+    approximation = None
+    if made is not None:
+        approximation = Approximator(exact).under(made)
+        if approximation.response is not None and rename:
+            approximation = replace(approximation, response=in_resistances(approximation.response))
+    opinion = second_opinion(stage, asked) if with_opinion else None
+    shown = in_resistances(exact) if rename else exact
+    return _Derived(shown, approximation, time_constants(stage, asked, rename), opinion)
+
+
+def _show_derived(stage: Stage, found: Mapping[str, _Derived], hertz: Sequence[float]) -> None:
+    console = Console(highlight=False)
+    page = Page(console_width(console))
+    page.line(stage.title, "bold")
+    for each in found.values():
+        response_page(page, each.exact, each.constants, hertz)
+        if each.approximation is not None:
+            approximation_page(page, each.approximation, each.exact, hertz)
+        if each.opinion is not None:
+            page.line(f"  second opinion: {each.opinion.words}")
+    _notes(page, stage)
+    page.show(console)
+
+
+def _derive_json(stage: Stage, found: Mapping[str, _Derived], hertz: Sequence[float]) -> dict[str, Any]:
     result = head(stage, stage.warnings, stage.remarks)
     result["responses"] = {}
-    for name, response in exact.items():
-        constants = time_constants(stage, response.asked)
-        found = response_json(response, constants, hertz)
-        if made:
-            approximation = Approximator(response).under(made)
-            result["warnings"] += [w for w in approximation.warnings if w not in result["warnings"]]
-            found = approximation_json(approximation, found, constants, hertz)
-        if name in opinions:
-            opinion = opinions[name]
-            found["second_opinion"] = {"agrees": opinion.agrees, "words": opinion.words}
-        result["responses"][name] = found
+    for name, each in found.items():
+        shown = response_json(each.exact, each.constants, hertz)
+        if each.approximation is not None:
+            result["warnings"] += [w for w in each.approximation.warnings if w not in result["warnings"]]
+            shown = approximation_json(each.approximation, shown, each.constants, hertz)
+        if each.opinion is not None:
+            shown["second_opinion"] = {"agrees": each.opinion.agrees, "words": each.opinion.words}
+        result["responses"][name] = shown
     return result
 
 
@@ -97,6 +125,12 @@ def ledger(file: str, quantities: Sequence[str], points: int, seed: int, as_json
     page = Page(console_width(console))
     ledger_page(page, made)
     page.show(console)
+    return 0
+
+
+def print_schema() -> int:
+    """`symamp start --schema`."""
+    _print_json(stage_schema())
     return 0
 
 
@@ -122,8 +156,8 @@ def _notes(page: Page, stage: Stage) -> None:
 
 
 def _print_json(found: dict[str, Any]) -> None:
-    json.dump(found, sys.stdout, indent=1, ensure_ascii=False, allow_nan=False)
-    sys.stdout.write("\n")
+    # Whole before any of it is printed, so that a mistake leaves nothing on standard output.
+    sys.stdout.write(json.dumps(found, indent=1, ensure_ascii=False, allow_nan=False) + "\n")
 
 
 class _Bar:
@@ -147,8 +181,14 @@ class _Bar:
         if not self._watched or time.monotonic() - self._start < _PATIENCE:
             return
         if self._bar is None:
-            columns = (TextColumn("bias points"), BarColumn(), TextColumn("{task.completed:,}/{task.total:,}"))
-            self._bar = Progress(*columns, TimeRemainingColumn(), console=Console(stderr=True), transient=True)
+            columns = (
+                TextColumn("bias points"),
+                BarColumn(),
+                TextColumn("{task.completed:,}/{task.total:,}"),
+            )
+            self._bar = Progress(
+                *columns, TimeRemainingColumn(), console=Console(stderr=True), transient=True
+            )
             self._task = self._bar.add_task("", total=total)
             self._bar.start()
         self._bar.update(self._task, completed=done)

@@ -61,11 +61,11 @@ def _real(value: complex | float) -> float:
 
 def _three(x: float) -> str:
     """Three significant digits, in plain figures where they are readable."""
-    if x < 1e-4 or x >= 1e6:
-        return f"{x:.2e}"
-    places = max(0, 2 - math.floor(math.log10(x)))
-    text = f"{x:.{places}f}"
-    return text
+    rounded = f"{x:.2e}"  # of 9.996 it is 1.00e+01: the places are those of what is shown
+    exponent = int(rounded.partition("e")[2])
+    if not -4 <= exponent < 6:
+        return rounded.replace("-", MINUS)
+    return f"{x:.{max(0, 2 - exponent)}f}"
 
 
 def where_words(where: Mapping[str, Any], units: Mapping[str, str], most: int = 4) -> str:

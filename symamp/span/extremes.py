@@ -74,9 +74,7 @@ class Extremes:
         at_low, at_high = self._place[low][row], self._place[high][row]
         if at_low is None or at_high is None:
             return None
-        return Extreme(
-            float(self._value[low, row]), float(self._value[high, row]), at_low, at_high, use
-        )
+        return Extreme(float(self._value[low, row]), float(self._value[high, row]), at_low, at_high, use)
 
     @property
     def any_complex(self) -> bool:

@@ -10,6 +10,7 @@ from typing import Any
 import numpy as np
 
 from symamp.circuit.stage import Span, Stage
+from symamp.span.sobol import Sobol
 
 BLOCK = 8192
 CORNER_LIMIT = 1 << 12  # corners beyond which a seeded draw of that many stands for all
@@ -51,10 +52,7 @@ class Box:
         values: Values = dict(self._base)
         for side, component in zip(self.span.sides, u, strict=True):
             low, high = float(side.low), float(side.high)
-            if low > 0:
-                value = low * (high / low) ** component
-            else:
-                value = low + (high - low) * component
+            value = low * (high / low) ** component if low > 0 else low + (high - low) * component
             # The ends are the ends, to the last digit.
             value = np.where(component <= 0, low, np.where(component >= 1, high, value))
             values[side.symbol] = value**side.exponent if side.exponent != 1 else value
@@ -107,22 +105,15 @@ class Box:
         return self.dimensions <= CORNER_LIMIT.bit_length() - 1
 
     def blocks(self, points: int, seed: int) -> Iterator[np.ndarray]:
-        """The bias point and corners, then `points` scrambled Sobol points, in blocks (sides, ≤ BLOCK).
-
-        Sobol, USSR Comput. Math. and Math. Phys. 7, 1967; scrambled after Owen 1998, as scipy does.
-        """
+        """The bias point and corners, then `points` scrambled Sobol points, in blocks (sides, ≤ BLOCK)."""
         fixed = np.concatenate([self.bias_point, self.corners(seed)], axis=1)
         for start in range(0, fixed.shape[1], BLOCK):
             yield fixed[:, start : start + BLOCK]
         if points < 1:
             return
-        from scipy.stats import qmc  # heavy: half a second, and only a box needs it
-
-        sobol = qmc.Sobol(self.dimensions, scramble=True, rng=np.random.default_rng(seed))
+        sobol = Sobol(self.dimensions, seed)
         for start in range(0, points, BLOCK):
-            count = min(BLOCK, points - start)
-            whole = 1 << (count - 1).bit_length()  # the first draw keeps its balance
-            yield sobol.random(whole if start == 0 else count)[:count].T
+            yield sobol.points(start, min(BLOCK, points - start))
 
     def count(self, points: int) -> int:
         """How many points `blocks` gives."""

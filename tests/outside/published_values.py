@@ -11,13 +11,12 @@ import json
 import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
-from fractions import Fraction
 from functools import cache
 from pathlib import Path
 from typing import Any
 
 from symamp.circuit.builder import StageBuilder
-from symamp.circuit.stage import GROUND, Asked, Stage
+from symamp.circuit.stage import GROUND, Stage
 from symamp.exact.derive import derive
 from symamp.exact.response import Response
 
@@ -82,7 +81,15 @@ def _data() -> list[dict[str, Any]]:
 @cache
 def stage_of(value_id: str) -> Stage:
     """The value's circuit as a stage that asks for the one response the value is about, named `asked`."""
-    value = values()[value_id]
+    return _stage(values()[value_id])
+
+
+def gain_stage_of(value_id: str) -> Stage:
+    """The same circuit as a stage that asks for the gain from its drive to its output."""
+    return _stage(replace(values()[value_id], what={"type": "dc_gain"}))
+
+
+def _stage(value: Value) -> Stage:
     parts = circuits()[value.circuit]
     build = StageBuilder(value.circuit)
     for kind, label, nodes, size in parts:
@@ -192,6 +199,3 @@ def with_assumptions(stage: Stage, tables: list[dict[str, Any]]) -> Stage:
     """The stage with these assumptions, written as in a stage file; each gets a name."""
     named = tuple({"name": f"step {i}", **table} for i, table in enumerate(tables, 1))
     return replace(stage, assumptions=named)
-
-
-__all__ = ["Asked", "Fraction", "READ", "Value", "circuits", "exact_response", "figure", "stage_of", "values"]

@@ -1,0 +1,68 @@
+"""Exact: poles and zeros that cancel whatever the values, divided out of coefficients at many points.
+
+The minor graph's numerator and denominator share the modes of what the response does not see; written-out
+polynomials are brought to lowest terms, and these here are not.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from symamp.exact.roots import roots
+from symamp.exact.skeleton import Skeleton
+
+
+def without_hidden(numerator: np.ndarray, denominator: np.ndarray, shape: Skeleton) -> tuple[np.ndarray, np.ndarray]:
+    """Both without what they share, shapes (n + 1, P) and (m + 1, P): s^low, then a factor of degree `common`."""
+    above, below = (
+        c[shape.low : max(degree, shape.low) + 1]
+        for c, degree in zip((numerator, denominator), shape.degrees, strict=True)
+    )
+    if not shape.common:
+        return above, below
+    shared = _shared_roots(roots(above), roots(below), shape.common)
+    factor = _product(shared)
+    return _quotient(above, factor), _quotient(below, factor)
+
+
+def _shared_roots(zeros: np.ndarray, poles: np.ndarray, count: int) -> np.ndarray:
+    """The `count` zeros that lie nearest a pole, each to one of its own: (count, P)."""
+    with np.errstate(all="ignore"):
+        distance = np.abs(zeros[:, None] - poles[None]) / (np.abs(zeros[:, None]) + np.abs(poles[None]))
+    distance = np.where(np.isnan(distance), np.inf, distance)
+    every = np.arange(zeros.shape[1])
+    found = []
+    for _ in range(count):
+        flat = distance.reshape(-1, zeros.shape[1]).argmin(axis=0)
+        zero, pole = np.divmod(flat, poles.shape[0])
+        found.append(zeros[zero, every])
+        distance[zero, :, every] = np.inf
+        distance[:, pole, every] = np.inf
+    return np.array(found)
+
+
+def _product(shared: np.ndarray) -> np.ndarray:
+    """Coefficients of Π (1 − s/r), ascending: (count + 1, P); roots come in conjugate pairs, so they are real."""
+    total = np.ones((1, shared.shape[1]), dtype=complex)
+    for root in shared:
+        longer = np.zeros((total.shape[0] + 1, total.shape[1]), dtype=complex)
+        longer[:-1] += total
+        longer[1:] -= total / root
+        total = longer
+    return np.asarray(total.real)
+
+
+def _quotient(polynomial: np.ndarray, factor: np.ndarray) -> np.ndarray:
+    """polynomial/factor, point by point, by least squares in which each coefficient has the same weight."""
+    rows, points = polynomial.shape
+    columns = rows - factor.shape[0] + 1
+    matrix = np.zeros((points, rows, columns))
+    for k in range(columns):
+        matrix[:, k : k + factor.shape[0], k] = factor.T
+    size = np.abs(polynomial.T)
+    weight = 1 / np.where(size > 0, size, size.max(axis=1, keepdims=True))
+    matrix = matrix * weight[:, :, None]
+    scale = np.linalg.norm(matrix, axis=1, keepdims=True)
+    q, r = np.linalg.qr(matrix / scale)
+    right = np.einsum("pij,pi->pj", q, polynomial.T * weight)
+    return np.asarray((np.linalg.solve(r, right[:, :, None])[:, :, 0] / scale[:, 0]).T)

@@ -1,0 +1,1 @@
+"""Speed and memory as ratios, ours against theirs in one run: `python -m tests.benchmarks`."""

@@ -1,0 +1,72 @@
+"""From a cold start, bytecode compiled: commands in processes of their own, against `import sympy`."""
+
+from __future__ import annotations
+
+import json
+import statistics
+import subprocess
+import sys
+import tempfile
+import time
+from pathlib import Path
+
+from symamp.judge.ledger import make_ledger
+
+from .ledgers import environment
+from .record import Row, Sizes, shown
+from .stages import cascode, cascode_file
+
+
+def cold_start(sizes: Sizes) -> list[Row]:
+    """`symamp ledger` and `symamp --help`; runs are interleaved, so that a busy moment falls on all alike."""
+    with tempfile.TemporaryDirectory() as folder:
+        path = Path(folder) / "cascode.stage.toml"
+        path.write_text(cascode_file(), encoding="utf-8")
+        commands = {
+            "sympy": ["-c", "import sympy"],
+            "ledger": ["-m", "symamp", "ledger", str(path)],
+            "help": ["-m", "symamp", "--help"],
+        }
+        for arguments in commands.values():
+            _run(arguments, sizes)
+        times: dict[str, list[float]] = {name: [] for name in commands}
+        for _ in range(sizes.runs):
+            for name, arguments in commands.items():
+                start = time.perf_counter()
+                _run(arguments, sizes)
+                times[name].append(time.perf_counter() - start)
+        printed = json.loads(_run([*commands["ledger"], "--json"], sizes))
+    spent = {name: statistics.median(found) for name, found in times.items()}
+    account = make_ledger(cascode(), quantities=["gain.dc"], points=0)["gain.dc"]
+    assert isinstance(account.error, float)
+    difference = abs(printed["quantities"]["gain.dc"]["error"] / account.error - 1)
+    return [
+        _row("symamp ledger", "ledger", 5.0, spent, difference),
+        _row("symamp --help", "help", 0.5, spent, difference),
+    ]
+
+
+def _row(what: str, name: str, allowed: float, spent: dict[str, float], difference: float) -> Row:
+    ratio = spent[name] / spent["sympy"]
+    return Row(
+        f"{what} from a cold start, against import sympy",
+        f"≤ {allowed:g} times as long",
+        f"{shown(spent[name])} against {shown(spent['sympy'])}",
+        ratio,
+        ratio <= allowed,
+        difference,
+        0.0,
+    )
+
+
+def _run(arguments: list[str], sizes: Sizes) -> str:
+    done = subprocess.run(
+        [sys.executable, *arguments],
+        capture_output=True,
+        text=True,
+        encoding="utf-8",
+        timeout=sizes.patience,
+        check=True,
+        env=environment() | {"PYTHONIOENCODING": "utf-8"},
+    )
+    return done.stdout
