@@ -5,15 +5,21 @@ The rooms are brought in when a command runs, so that `--help` answers at once.
 
 from __future__ import annotations
 
+import os
+import re
+import signal
 import sys
+import threading
 from importlib import import_module
+from types import ModuleType
 from typing import Any
 
 import click
 
 from symamp import __version__
-from symamp.errors import InputError, SymampError
+from symamp.errors import SymampError
 
+_CONTROL = re.compile(r"[\x00-\x09\x0b-\x1f\x7f-\x9f]")  # all but the line's end: a terminal would obey them
 _FILE = click.argument("file", metavar="FILE")
 _JSON = click.option("--json", "as_json", is_flag=True, help="Print one JSON object and nothing else.")
 
@@ -89,23 +95,35 @@ def start(schema: bool) -> None:
 def _run(command: str, *arguments: Any) -> None:
     """Bring the command in and run it; what the user got wrong is said in one message, exit 2."""
     try:
-        code = getattr(import_module("symamp.show.run"), command)(*arguments)
-    except InputError as error:
-        _refuse(str(error))
+        code = getattr(_brought_in("symamp.show.run"), command)(*arguments)
+        sys.stdout.flush()
     except SymampError as error:
-        _refuse(str(error))
+        click.echo(_CONTROL.sub("�", str(error)), err=True)
+        sys.exit(2)
     except KeyboardInterrupt:
         click.echo("interrupted", err=True)
         sys.exit(130)
     except BrokenPipeError:
-        sys.stderr.close()
+        # Whoever reads has had enough; what is left to be flushed at the end goes nowhere.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         sys.exit(0)
     sys.exit(code)
 
 
-def _refuse(message: str) -> None:
-    click.echo(message, err=True)
-    sys.exit(2)
+def _brought_in(name: str) -> ModuleType:
+    """A module; an interrupt waits until it is there, for libraries half brought in make errors of their own of it."""
+    usual = signal.getsignal(signal.SIGINT) is signal.default_int_handler
+    if not usual or threading.current_thread() is not threading.main_thread():
+        return import_module(name)
+    pressed: list[int] = []
+    before = signal.signal(signal.SIGINT, lambda number, _: pressed.append(number))
+    try:
+        module = import_module(name)
+    finally:
+        signal.signal(signal.SIGINT, before)
+    if pressed:
+        raise KeyboardInterrupt
+    return module
 
 
 def main() -> None:

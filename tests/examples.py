@@ -7,6 +7,7 @@ without it a command must succeed. A `pycon` block is a Python session; the sess
 from __future__ import annotations
 
 import contextlib
+import difflib
 import doctest
 import io
 import os
@@ -79,8 +80,10 @@ def hold(path: Path, folder: Path) -> None:
     found = rendered(page, folder)
     if os.environ.get(UPDATE) == "1":
         path.write_text(found, encoding="utf-8")
-    else:
-        assert _TRIED.sub("N", page) == _TRIED.sub("N", found)
+        return
+    told, printed = (_TRIED.sub("N", text).splitlines() for text in (page, found))
+    difference = list(difflib.unified_diff(told, printed, "the page", "what is printed", lineterm=""))
+    assert not difference, "\n".join([f"{path.name} is out of date; {UPDATE}=1 rewrites it", *difference])
 
 
 def copy_of(folder: Path, target: Path) -> Path:

@@ -6,42 +6,19 @@ from collections.abc import Hashable, Iterable, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 
-from flint import fmpz_mpoly
-
-from symamp.assumptions.dominance import Dominance, Fall, idle, pool
+from symamp.assumptions.dominance import Dominance, idle, pool
+from symamp.assumptions.dropping import Dominated, Dropped, TermTable
 from symamp.assumptions.merge import Pooled, pooled
 from symamp.assumptions.nested import NestedEngine
 from symamp.assumptions.record import Assumption, Miller, Pair
-from symamp.assumptions.rewrite import symbol_value, tidy
+from symamp.assumptions.rewrite import symbol_value
 from symamp.assumptions.roots import step_on_roots
 from symamp.assumptions.written import WrittenEngine
 from symamp.errors import StageError
-from symamp.exact.forms import Expanded, Nested, expanded_of
-from symamp.exact.polys import from_coefficients, lowest_terms
+from symamp.exact.forms import Expanded, Nested
 from symamp.exact.response import Response
-from symamp.exact.shape import polynomial_text
 
-_CANCELLING = 10.0  # Σ|term|/|Σ term| above which kept terms are said to nearly cancel
-
-
-@dataclass(frozen=True)
-class Dropped:
-    """A dropped term of a coefficient ("denominator s^1"), and the term of it to which it fell."""
-
-    coefficient: str
-    polynomials: tuple[fmpz_mpoly, fmpz_mpoly]
-    ratio: float | None
-    size: float | None
-
-    @cached_property
-    def term(self) -> str:
-        """The dropped term."""
-        return polynomial_text(self.polynomials[0])
-
-    @cached_property
-    def against(self) -> str:
-        """The term that outweighs it; `ratio` is their ratio at the bias point, `size` the dropped one's value."""
-        return polynomial_text(self.polynomials[1])
+__all__ = ["Approximation", "Approximator", "Dropped"]
 
 
 @dataclass(frozen=True)
@@ -51,18 +28,18 @@ class Approximation:
     assumptions: tuple[str, ...]
     response: Response | None
     why: str = ""
-    dropped: tuple[Dropped, ...] = ()
-    warnings: tuple[str, ...] = ()
+    dominated: Dominated | None = None
     remarks: tuple[str, ...] = ()
 
+    @cached_property
+    def dropped(self) -> tuple[Dropped, ...]:
+        """What dominance dropped, each term with the one it fell to."""
+        return () if self.dominated is None else self.dominated.dropped
 
-@dataclass(frozen=True)
-class _Dominated:
-    """A form after step 4."""
-
-    form: Expanded
-    dropped: tuple[Dropped, ...] = ()
-    warnings: tuple[str, ...] = ()
+    @cached_property
+    def warnings(self) -> tuple[str, ...]:
+        """Where kept terms nearly cancel."""
+        return () if self.dominated is None else self.dominated.warnings
 
 
 class Approximator:
@@ -72,7 +49,8 @@ class Approximator:
         self.exact = exact
         self._engine = WrittenEngine(exact) if exact.expanded else NestedEngine(exact)
         self._cones: dict[Hashable, Dominance | None] = {}
-        self._dominated: dict[Hashable, _Dominated] = {}
+        self._tables: dict[int, TermTable] = {}
+        self._dominated: dict[Hashable, Dominated] = {}
         self._rooted: dict[Hashable, tuple[Response | None, str, list[str]]] = {}
         self._done: dict[frozenset[str], Approximation] = {}
 
@@ -85,7 +63,7 @@ class Approximator:
             try:
                 self._done[key] = self._under(pooled(self.exact.stage, made))
             except StageError as error:
-                # Sets that a stage file cannot hold as a whole, such as a part of one whose whole agrees.
+                # A stage file is refused for this; here it is a part of a set that agrees only as a whole.
                 self._done[key] = Approximation((), None, error.problem)
         return replace(self._done[key], assumptions=names)
 
@@ -94,25 +72,19 @@ class Approximator:
         bridges = self._live_bridges(ask, remarks)
         outcome = self._engine.under(ask, bridges)
         remarks += outcome.remarks
-        if outcome.form is None:
+        form = outcome.form
+        if form is None:
             return Approximation((), None, outcome.why, remarks=_once(remarks))
-        cone_key = tuple(sorted({tuple(sorted(pair.difference.items())) for pair in ask.pairs}))
-        if cone_key not in self._cones:
-            self._cones[cone_key] = pool(ask.pairs)
-        dominance = self._cones[cone_key]
-        key = (id(outcome.form), cone_key)
-        if dominance is not None and not isinstance(outcome.form, Expanded):
-            return Approximation((), None, self._not_written(), remarks=_once(remarks))
-        if key not in self._dominated and isinstance(outcome.form, Expanded):
-            self._dominated[key] = self._dominate(outcome.form, dominance)
-        found = self._dominated.get(key)
-        response, why, more = self._on_roots(ask, key, outcome.form if found is None else found.form)
-        remarks += more
-        if found is None:
-            return Approximation((), response, why, remarks=_once(remarks))
-        return Approximation((), response, why, found.dropped, found.warnings, _once(remarks))
-
-    # Steps 1 to 3
+        cone_key = _cone_key(ask.pairs)
+        dominance = self._pool(cone_key, ask.pairs)
+        dominated = None
+        if dominance is not None:
+            if isinstance(form, Nested):
+                return Approximation((), None, self._not_written(), remarks=_once(remarks))
+            dominated = self._dominate(form, cone_key, dominance)
+            form = dominated.form
+        response, why, more = self._on_roots(ask, form)
+        return Approximation((), response, why, dominated, _once([*remarks, *more]))
 
     def _live_bridges(self, ask: Pooled, remarks: list[str]) -> tuple[Miller, ...]:
         """The bridges that the response has, and that are still there after step 2."""
@@ -120,7 +92,8 @@ class Approximator:
         for bridge in ask.miller:
             if not self._engine.depends_on(bridge.symbol):
                 continue
-            if symbol_value(self.exact.stage, bridge.symbol, ask)[0]:
+            order, (value, _) = symbol_value(self.exact.stage, bridge.symbol, ask)
+            if order or value.is_zero():
                 remarks.append(f"{bridge.symbol} is taken to its limit, so there is no bridge to split")
             else:
                 live.append(bridge)
@@ -132,75 +105,30 @@ class Approximator:
             "terms that are not written out"
         )
 
-    # Step 4
+    def _pool(self, key: Hashable, pairs: Sequence[Pair]) -> Dominance | None:
+        if key not in self._cones:
+            self._cones[key] = pool(pairs)
+        return self._cones[key]
 
-    def _dominate(self, form: Expanded, dominance: Dominance | None) -> _Dominated:
-        if dominance is None:
-            return _Dominated(form)
-        dropped: list[Dropped] = []
-        warnings: list[str] = []
-        kept: list[list[fmpz_mpoly]] = []
-        for where, coefficients in (("numerator", form.numerator), ("denominator", form.denominator)):
-            row = []
-            for power, coefficient in enumerate(coefficients):
-                stays, falls = dominance.judge(coefficient)
-                name = f"{where} s^{power}"
-                records = [self._record(name, coefficient, fall) for fall in falls]
-                warnings += self._nearly_cancelling(name, stays, records)
-                dropped += records
-                row.append(stays)
-            kept.append(row)
-        if not dropped:
-            return _Dominated(form)
-        ratio = lowest_terms(from_coefficients(kept[0]), from_coefficients(kept[1]))
-        return _Dominated(expanded_of(*tidy(self.exact.stage, ratio)), tuple(dropped), tuple(warnings))
+    def _dominate(self, form: Expanded, cone_key: Hashable, dominance: Dominance) -> Dominated:
+        """The form after step 4; forms and their tables are kept, so that their identity stands for them."""
+        if id(form) not in self._tables:
+            self._tables[id(form)] = TermTable(form)
+        key = (id(form), cone_key)
+        if key not in self._dominated:
+            self._dominated[key] = Dominated.of(self._tables[id(form)], dominance, self.exact)
+        return self._dominated[key]
 
-    def _record(self, name: str, coefficient: fmpz_mpoly, fall: Fall) -> Dropped:
-        context = coefficient.context()
-        term = context.from_dict({fall.term: fall.factor})
-        against = context.from_dict({fall.against: fall.against_factor})
-        above, below = self._number(term), self._number(against)
-        ratio = above / below if above is not None and below else None
-        return Dropped(name, (term, against), ratio, above)
-
-    def _number(self, term: fmpz_mpoly) -> float | None:
-        """A single term's value at the bias point."""
-        total = 1.0
-        names = term.context().names()
-        for exponents, coefficient in term.terms():
-            total = float(coefficient)
-            for name, exponent in zip(names, exponents, strict=True):
-                if exponent:
-                    if name not in self.exact.bias_values:
-                        return None
-                    total *= self.exact.bias_values[name] ** int(exponent)
-        return total
-
-    def _nearly_cancelling(self, name: str, stays: fmpz_mpoly, dropped: Sequence[Dropped]) -> list[str]:
-        if not dropped or len({c > 0 for c in stays.coeffs()}) < 2:
-            return []
-        context = stays.context()
-        values = [self._number(context.from_dict({e: c})) for e, c in stays.terms()]
-        known = [v for v in values if v is not None]
-        if len(known) < len(values) or sum(map(abs, known)) <= _CANCELLING * abs(sum(known)):
-            return []
-        largest = max(dropped, key=lambda d: abs(d.size or 0.0))
-        return [
-            f"{self.exact.name}: kept terms of the {name} nearly cancel at the bias point, so the dropped term "
-            f"{largest.term} may matter"
-        ]
-
-    # Step 5
-
-    def _on_roots(
-        self, ask: Pooled, key: Hashable, form: Expanded | Nested
-    ) -> tuple[Response | None, str, list[str]]:
-        whole = (key, ask.dominant_pole, ask.poles_far_apart, ask.band)
+    def _on_roots(self, ask: Pooled, form: Expanded | Nested) -> tuple[Response | None, str, list[str]]:
+        whole = (id(form), ask.dominant_pole, ask.poles_far_apart, ask.band)
         if whole not in self._rooted:
-            same = form is self.exact.form
-            response = self.exact if same else replace(self.exact, form=form)
+            response = self.exact if form is self.exact.form else replace(self.exact, form=form)
             self._rooted[whole] = step_on_roots(response, ask)
         return self._rooted[whole]
+
+
+def _cone_key(pairs: Iterable[Pair]) -> Hashable:
+    return frozenset(pair.key for pair in pairs)
 
 
 def _idle_words(pairs: Sequence[Pair]) -> list[str]:

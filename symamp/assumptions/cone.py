@@ -6,14 +6,18 @@ The question is asked of many pairs of terms, so the cone is turned once from it
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from math import gcd
+
+import numpy as np
 
 from symamp.errors import TooLargeError
 
 Vector = tuple[int, ...]
+Sources = Mapping[Vector, frozenset[str]]
 _RAY_LIMIT = 20_000
+_VECTOR_LIMIT = 20_000
 
 
 @dataclass(frozen=True)
@@ -22,68 +26,132 @@ class Cone:
 
     faces: tuple[Vector, ...]
     planes: tuple[Vector, ...]
-    undoing: tuple[int, ...]  # generators that others can undo: their sum with some of those is zero
+
+
+def without_columns(vectors: Sources, columns: Iterable[int]) -> dict[Vector, frozenset[str]]:
+    """Generators of the part of their cone where these coordinates are 0, each with what it was made of.
+
+    Where a sum of the vectors is zero and all columns go, the zero vector is left. The elimination is that of
+    Fourier (1826) and Motzkin (1936). Raises TooLargeError.
+    """
+    left = dict(vectors)
+    waiting = set(columns)
+    while waiting:
+        column = min(waiting, key=lambda k: (_work(left, k), k))
+        waiting.discard(column)
+        left = _eliminated(left, column)
+        if len(left) > _VECTOR_LIMIT:
+            raise _too_large()
+    return left
 
 
 def cone_of(generators: Sequence[Vector]) -> Cone:
-    """The cone of integer vectors, none of them zero."""
-    size = len(generators[0])
-    lines: list[Vector] = [tuple(int(i == j) for j in range(size)) for i in range(size)]
-    rays: list[Vector] = []
-    done: list[Vector] = []
-    for generator in generators:
-        lines, rays = _cut(lines, rays, generator, done)
-        done.append(generator)
-    middle = [sum(ray[i] for ray in rays) for i in range(size)]
-    undoing = tuple(i for i, g in enumerate(generators) if not _dot(middle, g))
-    return Cone(tuple(rays), tuple(lines), undoing)
+    """The cone of integer vectors, none of them zero. Raises TooLargeError."""
+    dual = _Dual(len(generators[0]), len(generators))
+    for index, generator in enumerate(generators):
+        dual.cut(index, np.array(generator, dtype=object))
+    faces, planes = (tuple(sorted(tuple(int(x) for x in row) for row in rows)) for rows in (dual.rays, dual.lines))
+    return Cone(faces, planes)
 
 
-def _cut(
-    lines: list[Vector], rays: list[Vector], generator: Vector, done: Sequence[Vector]
-) -> tuple[list[Vector], list[Vector]]:
-    """Add the inequality f·generator ≥ 0 to the cone of f spanned by lines (both ways) and rays."""
-    for i, line in enumerate(lines):
-        along = _dot(line, generator)
-        if along:
-            pivot = line if along > 0 else tuple(-x for x in line)
-            step = abs(along)
-            others = [_eliminated(x, pivot, generator, step) for j, x in enumerate(lines) if j != i]
-            return others, [*(_eliminated(x, pivot, generator, step) for x in rays), _reduced(pivot)]
-    return lines, _cut_rays(rays, generator, done)
+def _work(vectors: Iterable[Vector], column: int) -> int:
+    above = sum(1 for v in vectors if v[column] > 0)
+    below = sum(1 for v in vectors if v[column] < 0)
+    return above * below - above - below
 
 
-def _cut_rays(rays: list[Vector], generator: Vector, done: Sequence[Vector]) -> list[Vector]:
-    value = {ray: _dot(ray, generator) for ray in rays}
-    kept = [ray for ray in rays if value[ray] >= 0]
-    ups = [ray for ray in rays if value[ray] > 0]
-    downs = [ray for ray in rays if value[ray] < 0]
-    if not downs:
-        return rays
-    tight = {ray: frozenset(i for i, g in enumerate(done) if not _dot(ray, g)) for ray in rays}
-    for up in ups:
-        for down in downs:
+def _eliminated(vectors: Sources, column: int) -> dict[Vector, frozenset[str]]:
+    """The vectors without the coordinate, and the sums of two that cancel it."""
+    found = {v: names for v, names in vectors.items() if not v[column]}
+    above = [(v, names) for v, names in vectors.items() if v[column] > 0]
+    below = [(v, names) for v, names in vectors.items() if v[column] < 0]
+    for up, up_names in above:
+        for down, down_names in below:
+            a, b = up[column], -down[column]
+            vector = _reduced(tuple(b * x + a * y for x, y in zip(up, down, strict=True)))
+            names = up_names | down_names
+            if vector not in found or len(names) < len(found[vector]):
+                found[vector] = names
+    return found
+
+
+class _Dual:
+    """The cone of all f with f·g ≥ 0 for the generators so far: lines (both ways) and extreme rays.
+
+    `tight[r, g]` says that ray r is zero on generator g.
+    """
+
+    def __init__(self, size: int, generators: int) -> None:
+        self.size = size
+        self.lines = np.array([[int(i == k) for k in range(size)] for i in range(size)], dtype=object)
+        self.rays = np.empty((0, size), dtype=object)
+        self.tight = np.empty((0, generators), dtype=bool)
+
+    def cut(self, index: int, generator: np.ndarray) -> None:
+        """Add the inequality f·generator ≥ 0."""
+        along = self.lines @ generator
+        crossing = np.flatnonzero(along)
+        if crossing.size:
+            self._cut_line(index, generator, int(crossing[0]))
+        else:
+            self._cut_rays(index, self.rays @ generator)
+        if len(self.rays) > _RAY_LIMIT:
+            raise _too_large()
+
+    def _cut_line(self, index: int, generator: np.ndarray, place: int) -> None:
+        """One line becomes a ray; all others move along it into the generator's plane."""
+        pivot = self.lines[place]
+        if pivot @ generator < 0:
+            pivot = -pivot
+        self.rays = np.vstack([_moved(self.rays, pivot, generator), pivot])
+        self.lines = _moved(np.delete(self.lines, place, axis=0), pivot, generator)
+        self.tight = np.vstack([self.tight, np.arange(self.tight.shape[1]) < index])
+        self.tight[:-1, index] = True
+
+    def _cut_rays(self, index: int, value: np.ndarray) -> None:
+        """Rays on the wrong side go; where an edge joins one of them to one on the right side, a ray is new."""
+        self.tight[:, index] = value == 0
+        ups, downs = np.flatnonzero(value > 0), np.flatnonzero(value < 0)
+        if not downs.size:
+            return
+        new, new_tight = [], []
+        for up, down in self._neighbours(ups, downs, index):
+            ray = value[up] * self.rays[down] - value[down] * self.rays[up]
+            new.append(_reduced(tuple(ray)))
+            new_tight.append(self.tight[up] & self.tight[down])
+            new_tight[-1][index] = True
+        kept = value >= 0
+        rows = np.array(new, dtype=object).reshape(-1, self.size)
+        self.rays = np.vstack([self.rays[kept], rows])
+        self.tight = np.vstack([self.tight[kept], np.array(new_tight, dtype=bool).reshape(-1, self.tight.shape[1])])
+
+    def _neighbours(self, ups: np.ndarray, downs: np.ndarray, index: int) -> list[tuple[int, int]]:
+        """Pairs of rays joined by an edge: no third ray is zero on all generators on which both are."""
+        tight = self.tight[:, :index]
+        small = tight.astype(np.float32)
+        shared_count = small[ups] @ small[downs].T
+        # An edge lies in as many planes as the pointed part has dimensions, less two.
+        enough = np.argwhere(shared_count >= self.size - len(self.lines) - 2)
+        found = []
+        for i, k in enough:
+            up, down = int(ups[i]), int(downs[k])
             shared = tight[up] & tight[down]
-            if any(shared <= tight[other] for other in rays if other is not up and other is not down):
-                continue  # not neighbours: their sum is no extreme ray
-            kept.append(
-                _reduced(tuple(value[up] * d - value[down] * u for u, d in zip(up, down, strict=True)))
-            )
-    if len(kept) > _RAY_LIMIT:
-        raise TooLargeError("the dominance assumptions name too many pairs to be judged together; split them")
-    return kept
+            if np.count_nonzero(small @ shared.astype(np.float32) >= shared_count[i, k]) == 2:
+                found.append((up, down))
+        return found
 
 
-def _eliminated(vector: Vector, pivot: Vector, generator: Vector, step: int) -> Vector:
-    """The vector moved along the pivot until it lies in the generator's plane."""
-    along = _dot(vector, generator)
-    return _reduced(tuple(step * v - along * p for v, p in zip(vector, pivot, strict=True)))
-
-
-def _dot(a: Sequence[int], b: Sequence[int]) -> int:
-    return sum(x * y for x, y in zip(a, b, strict=True))
+def _moved(rows: np.ndarray, pivot: np.ndarray, generator: np.ndarray) -> np.ndarray:
+    """Each row moved along the pivot until it lies in the generator's plane."""
+    step = pivot @ generator
+    moved = [_reduced(tuple(step * row - (row @ generator) * pivot)) for row in rows]
+    return np.array(moved, dtype=object).reshape(-1, len(pivot))
 
 
 def _reduced(vector: Vector) -> Vector:
     common = gcd(*vector)
     return tuple(x // common for x in vector) if common > 1 else vector
+
+
+def _too_large() -> TooLargeError:
+    return TooLargeError("the dominance assumptions name too many pairs to be judged together; split them")

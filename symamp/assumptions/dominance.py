@@ -6,89 +6,111 @@ a non-zero sum of such vectors with non-negative factors. Terms that fall to non
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterable, Mapping, Sequence
 from fractions import Fraction
 from math import lcm
-from typing import NamedTuple
 
 import numpy as np
 from flint import fmpz_mpoly
 
-from symamp.assumptions.cone import Cone, Vector, cone_of
+from symamp.assumptions.cone import Cone, Sources, Vector, cone_of, without_columns
 from symamp.assumptions.merge import contradiction
 from symamp.assumptions.record import Pair
+from symamp.exact.polys import held
 
 _SAFE = 1 << 40
-_BLOCK = 4_000_000  # comparisons of terms held at once
 
 
-class Fall(NamedTuple):
-    """A dropped term and the one it fell to: exponents of the coefficient's generators and numeric factors."""
+class Terms:
+    """The terms of a polynomial as arrays, made once for all the cones that it is put to."""
 
-    term: tuple[int, ...]
-    factor: int
-    against: tuple[int, ...]
-    against_factor: int
+    def __init__(self, polynomial: fmpz_mpoly) -> None:
+        self.polynomial = polynomial
+        self.monomials = polynomial.monoms()
+        self.factors = polynomial.coeffs()
+        width = polynomial.context().nvars()
+        self.exponents = np.array(self.monomials, dtype=object).reshape(-1, width).astype(np.int64)
+        self.place = {name: i for i, name in enumerate(polynomial.context().names())}
+        self.held = held(polynomial)
+
+    def __len__(self) -> int:
+        return len(self.monomials)
+
+    def only(self, rows: Iterable[int]) -> fmpz_mpoly:
+        """The polynomial of these terms alone."""
+        return self.polynomial.context().from_dict({self.monomials[i]: self.factors[i] for i in rows})
 
 
-@dataclass(frozen=True)
 class Dominance:
-    """Pooled vectors, ready to be put to coefficients."""
+    """Pooled vectors, ready to be put to coefficients. `vectors` are exponents of `symbols`."""
 
-    symbols: tuple[str, ...]
-    cone: Cone
+    def __init__(self, symbols: tuple[str, ...], vectors: Sources) -> None:
+        self.symbols = symbols
+        self._vectors = vectors
+        self._cones: dict[tuple[str, ...], tuple[tuple[str, ...], Cone | None]] = {}
 
-    def judge(self, polynomial: fmpz_mpoly) -> tuple[fmpz_mpoly, list[Fall]]:
-        """The terms that stay, and each dropped one with a term that stays and that it fell to."""
-        if len(polynomial) < 2:
-            return polynomial, []
-        terms = [(tuple(map(int, e)), int(c)) for e, c in polynomial.terms()]
-        exponents = np.array([e for e, _ in terms])
-        place = {name: i for i, name in enumerate(polynomial.context().names())}
-        # A symbol that the coefficient's ring lacks has exponent 0 in every term, and only passes a vector on.
-        columns = [(i, place[name]) for i, name in enumerate(self.symbols) if name in place]
-        own, there = [i for i, _ in columns], [k for _, k in columns]
-        planes = _values(exponents[:, there], self.cone.planes, own)
-        faces = _values(exponents[:, there], self.cone.faces, own)
-        same = np.hstack([np.delete(exponents, there, axis=1), planes])
-        falls: dict[int, int] = {}
-        for group in _groups(same):
-            falls.update(_fallen(group, faces[group]))
-        if not falls:
-            return polynomial, []
-        kept = {e: c for i, (e, c) in enumerate(terms) if i not in falls}
-        records = [Fall(*terms[i], *terms[j]) for i, j in falls.items()]
-        return polynomial.context().from_dict(kept), records
+    def judge(self, terms: Terms) -> np.ndarray:
+        """For each term the index of a term that stays and that it falls to, or its own where it stays."""
+        own = np.arange(len(terms))
+        if len(terms) < 2:
+            return own
+        symbols, cone = self._cone_among(terms)
+        if cone is None:
+            return own
+        columns = [terms.place[name] for name in symbols]
+        named, rest = terms.exponents[:, columns], np.delete(terms.exponents, columns, axis=1)
+        falls_to = _falls(_labels(np.hstack([rest, _values(named, cone.planes)])), _values(named, cone.faces))
+        while True:  # on to a term that stays: falling is transitive, and never runs in a ring
+            further = falls_to[falls_to]
+            if np.array_equal(further, falls_to):
+                return falls_to
+            falls_to = further
+
+    def _cone_among(self, terms: Terms) -> tuple[tuple[str, ...], Cone | None]:
+        """The cone among the symbols that a coefficient holds: one that it lacks only passes a vector on."""
+        there = tuple(name for name in self.symbols if name in terms.held)
+        if there not in self._cones:
+            absent = [i for i, name in enumerate(self.symbols) if name not in terms.held]
+            kept = [i for i, name in enumerate(self.symbols) if name in terms.held]
+            vectors = [tuple(v[i] for i in kept) for v in without_columns(self._vectors, absent)]
+            moving = [name for i, name in enumerate(there) if any(v[i] for v in vectors)]
+            places = [there.index(name) for name in moving]
+            generators = sorted({tuple(v[i] for i in places) for v in vectors})
+            self._cones[there] = (tuple(moving), cone_of(generators) if generators else None)
+        return self._cones[there]
 
 
-def _values(exponents: np.ndarray, forms: Sequence[Vector], own: Sequence[int]) -> np.ndarray:
+def _values(exponents: np.ndarray, forms: Sequence[Vector]) -> np.ndarray:
     """Each linear form on each term: (terms, forms)."""
-    matrix = np.array([[form[i] for i in own] for form in forms], dtype=object).reshape(len(forms), len(own))
+    matrix = np.array(forms, dtype=object).reshape(len(forms), exponents.shape[1])
     # Machine integers, unless a cone of many steps has grown coefficients that they could not add up.
     small = not matrix.size or max(map(abs, matrix.flat)) < _SAFE
     return np.asarray(exponents @ matrix.T.astype(np.int64 if small else object))
 
 
-def _groups(rows: np.ndarray) -> list[np.ndarray]:
-    """Indices of equal rows, for each set of two or more."""
-    _, inverse, counts = np.unique(rows, axis=0, return_inverse=True, return_counts=True)
-    order = np.argsort(inverse.ravel(), kind="stable")
-    ends = np.cumsum(counts)
-    return [order[end - count : end] for end, count in zip(ends, counts, strict=True) if count > 1]
+def _labels(rows: np.ndarray) -> np.ndarray:
+    """A number for each row, the same for equal rows."""
+    return np.unique(rows, axis=0, return_inverse=True)[1].ravel()
 
 
-def _fallen(group: np.ndarray, values: np.ndarray) -> dict[int, int]:
-    """Of terms that differ by the cone's span alone: {term that falls: a term that stays and that it falls to}."""
-    size, faces = values.shape
-    step = max(1, _BLOCK // (size * max(faces, 1)))
-    above = np.empty((size, size), dtype=bool)
-    for start in range(0, size, step):
-        above[start : start + step] = (values[start : start + step, None, :] >= values[None, :, :]).all(axis=2)
-    np.fill_diagonal(above, False)
-    stays = ~above.any(axis=1)
-    first = (above & stays).argmax(axis=1)
-    return {int(group[i]): int(group[first[i]]) for i in np.flatnonzero(~stays)}
+def _falls(labels: np.ndarray, faces: np.ndarray) -> np.ndarray:
+    """For each term one of the same label below it in all faces, or itself.
+
+    Terms of a label stand in a row; each is compared with the one k places on, for all of them at once.
+    """
+    order = np.argsort(labels, kind="stable")
+    labels, faces = labels[order], faces[order]
+    falls_to = np.arange(len(order))
+    for k in range(1, int(np.bincount(labels).max())):
+        first = np.flatnonzero(labels[:-k] == labels[k:])
+        above, below = faces[first], faces[first + k]
+        down = first[(above >= below).all(axis=1)]
+        falls_to[down] = down + k
+        up = first[(below >= above).all(axis=1)]
+        falls_to[up + k] = np.where(falls_to[up + k] == up + k, up, falls_to[up + k])
+    back = np.empty_like(order)
+    back[order] = order[falls_to]
+    return back
 
 
 def idle(pairs: Sequence[Pair]) -> tuple[str, ...]:
@@ -105,20 +127,19 @@ def pool(pairs: Sequence[Pair]) -> Dominance | None:
     if not live:
         return None
     symbols = tuple(sorted({name for _, difference in live for name in difference}))
-    sources: dict[Vector, str] = {}
+    vectors: dict[Vector, frozenset[str]] = {}
     for pair, difference in live:
-        sources.setdefault(_integers(difference, symbols), pair.assumption)
-    vectors = sorted(sources)
-    cone = cone_of(vectors)
-    if cone.undoing:
-        undoing = {vectors[i] for i in cone.undoing}
-        found = (p.assumption for p, d in live if _integers(d, symbols) in undoing)
+        vectors.setdefault(_integers(difference, symbols), frozenset([pair.assumption]))
+    rings = without_columns(vectors, range(len(symbols)))
+    if rings:
+        (names,) = rings.values()
+        listed = [pair.assumption for pair, _ in live if pair.assumption in names]
         raise contradiction(
-            found,
+            listed,
             "together they take a ratio and its inverse to be small",
             "keep the one that holds at your bias point, or limit each to its responses with for = [...]",
         )
-    return Dominance(symbols, cone)
+    return Dominance(symbols, vectors)
 
 
 def _integers(difference: Mapping[str, Fraction], symbols: Sequence[str]) -> Vector:

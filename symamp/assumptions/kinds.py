@@ -84,7 +84,7 @@ KINDS: dict[str, AssumptionKind] = {
             ("miller",),
             3,
             "a bridging part becomes one part to ground at each end, by the gain at s = 0",
-            "frequency against that at which the gain across the part starts to fall",
+            "a pole's frequency against that at which the gain across the part starts to fall",
             1,
             "J. M. Miller, Scientific Papers of the Bureau of Standards 15, 1920",
         ),

@@ -154,7 +154,7 @@ def _renaming(stage: Stage, groups: Sequence[tuple[str, ...]]) -> dict[str, str]
 
 
 def _renamed_pair(pair: Pair, rename: Mapping[str, str]) -> Pair:
-    if not rename:
+    if rename.keys().isdisjoint(pair.difference):
         return pair
     return Pair(_moved(pair.small, rename), _moved(pair.against, rename), pair.assumption)
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Mapping
+from collections.abc import Hashable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from symamp.assumptions.bridge import Half, dc_words, gain_across, split_stage
@@ -235,13 +235,20 @@ def _needed(rules: tuple[tuple[str, Rule], ...], form: Nested) -> tuple[tuple[st
     return tuple((name, rule) for name, rule in rules if name in held)
 
 
-def _moving(form: Nested, symbols: list[str]) -> list[str]:
+def _moving(form: Nested, symbols: Sequence[str]) -> list[str]:
     """Those of the symbols with which the response moves, by random values modulo the prime."""
-    found = []
-    base = [value for _, value in leading_residues(form.graph, random_values(form, 3), _S, form.limits)]
-    for symbol in symbols:
-        values = random_values(form, 3, [symbol])
-        n, d = (value for _, value in leading_residues(form.graph, values, _S, form.limits))
-        if (n * base[1] - base[0] * d) % PRIME:
-            found.append(symbol)
-    return found
+    base = _image(form, ())
+
+    def moves(together: Sequence[str]) -> bool:
+        n, d = _image(form, together)
+        return bool((n * base[1] - base[0] * d) % PRIME)
+
+    if not moves(symbols):
+        return []
+    return [symbol for symbol in symbols if moves([symbol])]
+
+
+def _image(form: Nested, moved: Sequence[str]) -> tuple[int, int]:
+    """Numerator and denominator at one s, to leading order in t."""
+    (_, n), (_, d) = leading_residues(form.graph, random_values(form, 3, moved), _S, form.limits)
+    return n, d

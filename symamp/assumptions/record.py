@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from fractions import Fraction
+from functools import cached_property
 
 from symamp.formula import Node
 
@@ -29,13 +30,18 @@ class Pair:
     against: Powers
     assumption: str
 
-    @property
+    @cached_property
     def difference(self) -> dict[str, Fraction]:
         """exponents(small) − exponents(against), zeros left out."""
         total = {name: Fraction(power) for name, power in self.small.items()}
         for name, power in self.against.items():
             total[name] = total.get(name, Fraction(0)) - power
         return {name: power for name, power in total.items() if power}
+
+    @cached_property
+    def key(self) -> frozenset[tuple[str, Fraction]]:
+        """The vector."""
+        return frozenset(self.difference.items())
 
 
 @dataclass(frozen=True)

@@ -30,20 +30,11 @@ class LimitResult:
 
 def renamed(polynomial: fmpz_mpoly, names: Mapping[str, str]) -> fmpz_mpoly:
     """The polynomial with symbols made one with others of its ring."""
-    all_names = polynomial.context().names()
-    place = {name: i for i, name in enumerate(all_names)}
-    moves = [(place[a], place[b]) for a, b in names.items() if a in place]
-    if not moves:
+    context = polynomial.context()
+    generator = dict(zip(context.names(), context.gens(), strict=True))
+    if not any(name in generator for name in names):
         return polynomial
-    terms: dict[tuple[int, ...], int] = {}
-    for exponents, coefficient in polynomial.terms():
-        new = [int(e) for e in exponents]
-        for source, target in moves:
-            new[target] += new[source]
-            new[source] = 0
-        key = tuple(new)
-        terms[key] = terms.get(key, 0) + int(coefficient)
-    return polynomial.context().from_dict({e: c for e, c in terms.items() if c})
+    return polynomial.compose(*(generator[names.get(name, name)] for name in generator), ctx=context)
 
 
 def replaced(ratio: PolyRatio, name: str, by: PolyRatio) -> PolyRatio:
@@ -108,6 +99,10 @@ def leading(polynomial: fmpz_mpoly, orders: Mapping[str, int]) -> tuple[int, fmp
     weights = [(i, orders[name]) for i, name in enumerate(names) if name in orders]
     if not weights or polynomial.is_zero():
         return 0, polynomial
+    if all(order > 0 for _, order in weights):
+        rest = polynomial.subs({names[i]: 0 for i, _ in weights})
+        if not rest.is_zero():
+            return 0, rest
     grouped: dict[int, dict[tuple[int, ...], int]] = {}
     for exponents, coefficient in polynomial.terms():
         power = sum(sign * int(exponents[i]) for i, sign in weights)

@@ -7,6 +7,7 @@ import random
 from symamp.circuit.checks import check_asked, check_network
 from symamp.circuit.kinds import CAPACITANCE, INDUCTANCE
 from symamp.circuit.stage import Asked, Stage
+from symamp.circuit.stagefile import locate
 from symamp.errors import NetworkError, StageError
 from symamp.exact.cofactors import Ratio, entry_symbols, ratio_of
 from symamp.exact.forms import EXPAND_LIMIT, Expanded, Nested, residue, vanishes, write_out
@@ -42,28 +43,28 @@ def nested_of(stage: Stage, ratio: Ratio) -> Nested:
 
 
 def _refuse_vanishing(stage: Stage, asked: Asked, system: System, ratio: Ratio) -> None:
-    key = f"response.{asked.name}"
+    place = locate(stage, ("response", asked.name))
     zero, infinite = vanishes(ratio.graph)
     free = undetermined(system)
     if free:
         raise NetworkError(
             f"response {asked.name!r} is identically infinite: nothing sets {' or '.join(free[:4])}",
             "give it a path to ground: a conductance (gds, go), a resistor or a source",
-            key=key,
+            **place,
         )
     if infinite:
         what = "what it is divided by" if asked.over else "the current of the source that is looked from"
         raise StageError(
             f"response {asked.name!r} is identically infinite: {what} is zero whatever the values",
             "ask for another node, or join it to the drive",
-            key=key,
+            **place,
         )
     if zero:
         drive = ", ".join(asked.drive) or "the test current"
         raise StageError(
             f"response {asked.name!r} is identically zero: nothing carries {drive} to its output",
             "ask for a node that the drive reaches, or mend the connection",
-            key=key,
+            **place,
         )
 
 

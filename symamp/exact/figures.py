@@ -42,6 +42,7 @@ class Figures:
         points = max(num.shape[1], den.shape[1], np.size(scale))
         num, den = (np.broadcast_to(c, (c.shape[0], points)) for c in (num, den))
         self.num, self.den = crossings.without_common_s(num, den)
+        self.given_rows: tuple[Reals, Reals] | None = None
         self.unit = unit
         self.scale = np.broadcast_to(np.asarray(scale, dtype=float), (points,))
 
@@ -70,6 +71,15 @@ class Figures:
         """What a reader should know beside the value at that point."""
         return remarks_beside(self.at_point(point), quantity)
 
+    def set_coefficients(self, num: Reals, den: Reals) -> None:
+        """Take these for a_k and b_k, where the magnitudes are those of other coefficients."""
+        self.given_rows = (num, den)
+
+    @property
+    def rows(self) -> tuple[Reals, Reals]:
+        """The coefficients that a_k and b_k are read from."""
+        return self.given_rows or (self.num, self.den)
+
     def at_point(self, point: int) -> Figures:
         """The same response at one bias point."""
         here = slice(point, point + 1)
@@ -77,6 +87,8 @@ class Figures:
         for name in ("zeros", "poles"):
             if name in self.__dict__:  # found or given already
                 one.__dict__[name] = self.__dict__[name][:, here]
+        if self.given_rows is not None:
+            one.set_coefficients(*(row[:, here] for row in self.given_rows))
         return one
 
     def _whole(self, quantity: Quantity) -> Values:
@@ -125,8 +137,8 @@ class Figures:
             found = self.poles if name == "p" else self.zeros
             missing = np.full(self.points, complex(np.nan, np.nan))
             return found[index - 1] if index <= found.shape[0] else missing
-        rows = self.num if name == "a" else self.den
-        low, _ = crossings.ends(self.den)
+        rows = self.rows[0 if name == "a" else 1]
+        low, _ = crossings.ends(self.rows[1])
         row = rows[index] if index < rows.shape[0] else np.zeros(self.points)
         value = _finite(row / self.den[low, np.arange(self.points)])
         return value if (self.scale == 1).all() else value * self.scale ** (low - index)

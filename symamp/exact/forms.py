@@ -14,6 +14,7 @@ from flint import fmpq, fmpq_poly, fmpz_mpoly, fmpz_mpoly_ctx
 
 from symamp.circuit.stage import Symbol
 from symamp.exact.cofactors import Ratio, entry_symbols
+from symamp.exact.ends import ends_cancel
 from symamp.exact.graded import exact_in_limit, scaled_entries, walk_in_powers
 from symamp.exact.hidden import without_hidden
 from symamp.exact.minors import MinorGraph
@@ -116,6 +117,11 @@ class Nested:
     def skeleton(self) -> Skeleton:
         """Degrees, powers of s that vanish, and what numerator and denominator share, whatever the values."""
         return skeleton_of(self)
+
+    @cached_property
+    def ends_cancel(self) -> bool:
+        """Whether the lowest or highest power of s in numerator or denominator vanishes by cancelling."""
+        return ends_cancel(self.graph, self.skeleton)
 
     @cached_property
     def symbols(self) -> frozenset[str]:

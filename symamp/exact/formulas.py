@@ -10,7 +10,14 @@ from flint import Ordering, fmpz_mpoly, fmpz_mpoly_ctx
 
 from symamp.exact.asked_quantity import Quantity
 from symamp.exact.forms import Expanded
-from symamp.exact.polys import by_power, coefficients_of_s, from_coefficients, into_ring, lowest_terms, ring_of
+from symamp.exact.polys import (
+    by_power,
+    coefficients_of_s,
+    from_coefficients,
+    into_ring,
+    lowest_terms,
+    ring_of,
+)
 from symamp.exact.shape import QuadraticRoot, Shape, shape_of
 from symamp.exact.tape import term_dict
 

@@ -12,7 +12,9 @@ from symamp.exact.roots import roots
 from symamp.exact.skeleton import Skeleton
 
 
-def without_hidden(numerator: np.ndarray, denominator: np.ndarray, shape: Skeleton) -> tuple[np.ndarray, np.ndarray]:
+def without_hidden(
+    numerator: np.ndarray, denominator: np.ndarray, shape: Skeleton
+) -> tuple[np.ndarray, np.ndarray]:
     """Both without what they share, shapes (n + 1, P) and (m + 1, P): s^low, then a factor of degree `common`."""
     above, below = (
         c[shape.low : max(degree, shape.low) + 1]
@@ -30,6 +32,9 @@ def _shared_roots(zeros: np.ndarray, poles: np.ndarray, count: int) -> np.ndarra
     with np.errstate(all="ignore"):
         distance = np.abs(zeros[:, None] - poles[None]) / (np.abs(zeros[:, None]) + np.abs(poles[None]))
     distance = np.where(np.isnan(distance), np.inf, distance)
+    # Both at 0, or both gone to infinity (nan), as a point's values may have it: a pair as near as can be.
+    both = [test(zeros)[:, None] & test(poles)[None] for test in (np.isnan, lambda root: root == 0)]
+    distance = np.where(both[0] | both[1], 0.0, distance)
     every = np.arange(zeros.shape[1])
     found = []
     for _ in range(count):
@@ -42,12 +47,17 @@ def _shared_roots(zeros: np.ndarray, poles: np.ndarray, count: int) -> np.ndarra
 
 
 def _product(shared: np.ndarray) -> np.ndarray:
-    """Coefficients of Π (1 − s/r), ascending: (count + 1, P); roots come in conjugate pairs, so they are real."""
+    """Coefficients of Π (s − r)/max(|r|, 1), ascending: (count + 1, P); real, for roots come in conjugate pairs.
+
+    Where the values of a point take a root to 0 its factor is s, and where they take it to infinity (nan) 1.
+    """
     total = np.ones((1, shared.shape[1]), dtype=complex)
     for root in shared:
+        gone = ~np.isfinite(root)
+        size = np.where(gone, 1.0, np.maximum(np.abs(root), 1.0))
         longer = np.zeros((total.shape[0] + 1, total.shape[1]), dtype=complex)
-        longer[:-1] += total
-        longer[1:] -= total / root
+        longer[:-1] -= np.where(gone, -1.0, root) / size * total
+        longer[1:] += np.where(gone, 0.0, 1 / size) * total
         total = longer
     return np.asarray(total.real)
 

@@ -15,6 +15,7 @@ from symamp.circuit.stage import Asked, Stage
 from symamp.errors import StageError
 from symamp.exact.asked_quantity import parse_quantity, unit_of
 from symamp.exact.crossings import ends, without_common_s
+from symamp.exact.ends import with_sure_ends
 from symamp.exact.figures import Figures
 from symamp.exact.forms import Coefficients, Expanded, Nested, Values
 from symamp.exact.formulas import Formula, formula_of
@@ -142,10 +143,14 @@ class Response:
         return complex(result) if shape == () else result
 
     def _at(self, s: np.ndarray, values: Values) -> np.ndarray:
-        if isinstance(self.form, Nested) and self.form.plain and not self.apart:
-            return np.broadcast_to(self.form.at(s, values), s.shape)
         varied = any(isinstance(v, np.ndarray) and v.ndim for v in values.values())
-        given = self.coefficients(values, s.size if varied else 1)
+        points = s.size if varied else 1
+        if isinstance(self.form, Nested) and self.form.plain and not self.apart:
+            found = np.broadcast_to(self.form.at(s, values), s.shape)
+            if not self.form.ends_cancel:
+                return found
+            return with_sure_ends(found, self.form.coefficients(values, points), s)
+        given = self.coefficients(values, points)
         sigma = s / given.omega
         top = _horner(given.numerator, sigma)
         return np.asarray(top / _horner(given.denominator, sigma))
@@ -171,6 +176,7 @@ class Response:
             raw = self.form.coefficients(values, points)
             zeros, poles = (_ratios(c) * raw.omega for c in without_common_s(raw.numerator, raw.denominator))
             found.set_roots(zeros, poles)
+            found.set_coefficients(*without_common_s(raw.numerator, raw.denominator))
         return found
 
     def zero_figures(self, values: Values, points: int) -> Figures | None:
@@ -187,9 +193,7 @@ class Response:
             return self.figures(self.bias_values, 1)
         numerator, denominator = self.exact_coefficients
         omega = self.form.coefficients(self.bias_values, 1).omega if isinstance(self.form, Nested) else 1.0
-        found = Figures(*_floats(numerator, denominator, omega), self.unit, omega)
-        found.set_roots(_exact_roots(numerator), _exact_roots(denominator))
-        return found
+        return _ExactlyRooted(numerator, denominator, self.unit, omega)
 
     @cached_property
     def exact_coefficients(self) -> tuple[fmpq_poly, fmpq_poly]:
@@ -235,6 +239,22 @@ class Response:
             ]
             parts.append(" + ".join(written) or "0")
         return f"$\\displaystyle \\frac{{{parts[0]}}}{{{parts[1]}}}$"
+
+
+class _ExactlyRooted(Figures):
+    """Figures at one bias point whose roots are found, when they are asked for, from rational coefficients."""
+
+    def __init__(self, numerator: fmpq_poly, denominator: fmpq_poly, unit: str, omega: float) -> None:
+        super().__init__(*_floats(numerator, denominator, omega), unit, omega)
+        self._exactly = (numerator, denominator)
+
+    @cached_property
+    def zeros(self) -> np.ndarray:
+        return _exact_roots(self._exactly[0])
+
+    @cached_property
+    def poles(self) -> np.ndarray:
+        return _exact_roots(self._exactly[1])
 
 
 def _horner(coefficients: np.ndarray, sigma: np.ndarray) -> np.ndarray:

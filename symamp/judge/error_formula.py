@@ -8,11 +8,11 @@ import numpy as np
 from flint import fmpz_mpoly
 
 from symamp.exact.asked_quantity import Quantity, is_root
-from symamp.exact.formulas import rational_of
+from symamp.exact.formulas import formula_of, rational_of
 from symamp.exact.polys import held, into_ring, lowest_terms, ring_of
 from symamp.exact.response import Response
 from symamp.exact.shape import Shape, shape_of
-from symamp.exact.tape import term_dict
+from symamp.exact.tape import Monomial, term_dict
 from symamp.judge.pairing import partners
 
 _TERM_LIMIT = 4000  # terms above which the difference is not multiplied out
@@ -20,16 +20,22 @@ _TERM_LIMIT = 4000  # terms above which the difference is not multiplied out
 
 @dataclass(frozen=True)
 class ErrorFormula:
-    """The error (a − e)/e in lowest terms, and its leading term: the largest at the bias point over the largest."""
+    """The error (a − e)/e in lowest terms, and its leading term: the largest at the bias point over the largest.
+
+    `leading_value` is that term's value there; well above the error where other terms nearly cancel it.
+    """
 
     shape: Shape
     leading: Shape | None
+    leading_value: float | None = None
 
 
 def error_formula(exact: Response, approximate: Response, quantity: Quantity) -> ErrorFormula | None:
     """The error's formula, or None where the quantity is not rational in the symbols."""
     if quantity.face is not None:
         return None
+    if quantity.name == "bandwidth" and formula_of(exact, quantity) and formula_of(approximate, quantity):
+        quantity = Quantity("p", index=1)  # of one pole each the bandwidth is |p1|/2π, and as much off
     e = rational_of(exact, quantity)
     a = _partner(exact, approximate, quantity)
     if e is None or a is None or e[0].is_zero() or a[1].is_zero():
@@ -43,8 +49,12 @@ def error_formula(exact: Response, approximate: Response, quantity: Quantity) ->
         return ErrorFormula(shape_of(above), None)
     above, below = lowest_terms(above, below)
     weights = exact.bias_values or None
-    leading = shape_of(*lowest_terms(_largest(above, exact), _largest(below, exact)), weights=weights)
-    return ErrorFormula(shape_of(above, below, weights=weights), leading)
+    largest = lowest_terms(_largest(above, exact), _largest(below, exact))
+    sizes = [_value(polynomial, exact) for polynomial in largest]
+    value = None if exact.missing or not sizes[1] else sizes[0] / sizes[1]
+    return ErrorFormula(
+        shape_of(above, below, weights=weights), shape_of(*largest, weights=weights), value
+    )
 
 
 def _partner(
@@ -68,16 +78,23 @@ def _partner(
 def _largest(polynomial: fmpz_mpoly, exact: Response) -> fmpz_mpoly:
     """The term that is largest in magnitude at the bias point."""
 
-    def size(item: tuple[tuple[tuple[str, int], ...], int]) -> float:
-        product = abs(float(item[1]))
-        for name, exponent in item[0]:
-            product *= abs(exact.bias_values.get(name, 1.0)) ** exponent
-        return product
-
-    monomial, coefficient = max(term_dict(polynomial).items(), key=size)
+    terms = term_dict(polynomial).items()
+    monomial, coefficient = max(terms, key=lambda item: abs(_product(item[0], item[1], exact)))
     context = polynomial.context()
     place = {name: i for i, name in enumerate(context.names())}
     exponents = [0] * context.nvars()
     for name, exponent in monomial:
         exponents[place[name]] = exponent
     return context.from_dict({tuple(exponents): coefficient})
+
+
+def _value(polynomial: fmpz_mpoly, exact: Response) -> float:
+    return sum(_product(monomial, coefficient, exact) for monomial, coefficient in term_dict(polynomial).items())
+
+
+def _product(monomial: Monomial, coefficient: int, exact: Response) -> float:
+    """A term's value at the bias point, a symbol without one counted as 1."""
+    product = float(coefficient)
+    for name, exponent in monomial:
+        product *= exact.bias_values.get(name, 1.0) ** exponent
+    return product

@@ -172,6 +172,8 @@ def _asked(stage: Stage, names: Sequence[str]) -> dict[str, tuple[Quantity, ...]
 def default_quantities(exact: Response) -> tuple[Quantity, ...]:
     """dc, the poles and zeros, bandwidth, and unity-gain frequency where the response has one."""
     names = ["dc"]
+    if exact.quantity("dc").value == 0:  # a response without a dc is known by its band
+        names += ["peak", "low_corner", "high_corner"]
     names += [f"p{k}" for k in range(1, len(exact.poles()) + 1)]
     names += [f"z{k}" for k in range(1, len(exact.zeros()) + 1)]
     names += [
@@ -221,6 +223,8 @@ def _account(
     lost, new = _left_over(table, quantity)
     approximate = full.response
     value_e, value_a = _number(values[0, 0]), _number(values[-1, 0])
+    if quantity.face == "deg" and value_e is not None and value_a is not None:
+        value_a = value_e + float(np.real(errors[-1, 0]))  # the turn that lies nearest the exact angle
     why = _why(table, quantity, values, lost)
     formula = None if approximate is None else error_formula(exact, approximate, quantity)
     return Account(
@@ -294,7 +298,14 @@ def _left_over(table: ErrorTable, quantity: Quantity) -> tuple[tuple[LostRoot, .
 
 
 def _named(kind: str, roots: Sequence[complex], among: Sequence[complex]) -> tuple[LostRoot, ...]:
-    return tuple(LostRoot(f"{kind}{list(among).index(root) + 1}", abs(root) / (2 * np.pi)) for root in roots)
+    """Each with its index, those of a multiple root one after the other."""
+    left = list(enumerate(among, start=1))
+    named = []
+    for root in roots:
+        index, _ = found = next(pair for pair in left if pair[1] == root)
+        left.remove(found)
+        named.append(LostRoot(f"{kind}{index}", abs(root) / (2 * np.pi)))
+    return tuple(named)
 
 
 def _shares(

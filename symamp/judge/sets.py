@@ -15,7 +15,7 @@ import numpy as np
 
 SHARES_LIMIT = 12  # assumptions up to which shares are worked out, by all 2**n sets
 
-_ROUNDING = 1e-13  # a weighted sum of errors below this is the rounding of its parts
+_ROUNDING = 1e-13  # a weighted sum below this, beside 1 or its largest part, is the rounding of its parts
 _SMALL_PRODUCT = 200_000  # multiplications of a product that one thread does alone
 _LEAST_COLUMNS = 64
 
@@ -89,7 +89,8 @@ class Plan:
         if np.iscomplexobj(known) and not known.imag.any():
             known = np.ascontiguousarray(known.real)
         found = self._weighted(known)
-        found[np.abs(found) < _ROUNDING] = 0.0
+        scale = np.maximum(1.0, np.abs(known).max(axis=0)) if len(known) else 1.0
+        found[np.abs(found) < _ROUNDING * scale] = 0.0
         if missing is not None:
             found[self._lacking(missing)] = np.nan
         return found

@@ -58,6 +58,9 @@ class _Whole:
         if _has_roots(parts[0]):
             zeros, poles = ([getattr(part, name) for part in parts] for name in ("zeros", "poles"))
             found.set_roots(np.concatenate(zeros, axis=1), np.concatenate(poles, axis=1))
+        if parts[0].given_rows is not None:
+            rows = ([part.rows[k] for part in parts] for k in (0, 1))
+            found.set_coefficients(*(np.concatenate(row, axis=1) for row in rows))
         return found
 
     def value(self, quantity: Quantity) -> np.ndarray:
@@ -71,7 +74,7 @@ def stacked(figures: Sequence[Figures]) -> list[Figures | StackedFigures]:
     found: list[Figures | StackedFigures] = list(figures)
     alike: dict[Any, list[int]] = {}
     for k, each in enumerate(figures):
-        shape = (each.num.shape, each.den.shape, each.unit, _has_roots(each))
+        shape = (each.num.shape, each.den.shape, each.unit, _has_roots(each), each.given_rows is not None)
         alike.setdefault(shape, []).append(k)
     for numbers in alike.values():
         points = figures[numbers[0]].points

@@ -13,7 +13,7 @@ from symamp.exact.time_constants import TimeConstant
 from symamp.show.columns import LEFT, POINT, table_lines
 from symamp.show.formulas import formula_lines, one_line, polynomial_lines
 from symamp.show.page import Page
-from symamp.show.words import MINUS, asked_words, root_words, value_words
+from symamp.show.words import MINUS, asked_words, percent_words, root_words, value_words
 
 _AROUND_PEAK = ("peak_frequency", "low_corner", "high_corner")
 _QUANTITIES = (
@@ -44,7 +44,7 @@ def approximation_page(
     page: Page, approximation: Approximation, exact: Response, frequencies: Sequence[float]
 ) -> None:
     """The same response under assumptions, and what was dropped."""
-    names = ", ".join(f"“{name}”" for name in approximation.assumptions)
+    names = ", ".join(f"{name!r}" for name in approximation.assumptions)
     if not approximation.assumptions:
         page.heading(f"{exact.name}: no assumption made is for this response")
         return
@@ -92,6 +92,8 @@ def _body(page: Page, response: Response, frequencies: Sequence[float]) -> None:
 
 
 def _quantities(page: Page, response: Response) -> None:
+    if response.missing:
+        return
     rows, notes = [], []
     # Of a response that is largest at DC the corners say no more than the bandwidth.
     flat = response.quantity("peak_frequency").value in (0, None)
@@ -128,7 +130,7 @@ def _short(found: QuantityValue, most: int = 60) -> str:
 
 def _roots(page: Page, response: Response) -> None:
     if response.missing:
-        page.prose(f"{', '.join(response.missing)} has no bias value, so there are no numbers", indent=2)
+        _roots_without_numbers(page, response)
         return
     rows = []
     for letter, word, roots in (("p", "pole", response.poles()), ("z", "zero", response.zeros())):
@@ -141,11 +143,23 @@ def _roots(page: Page, response: Response) -> None:
         page.block(table_lines(headers, rows, [LEFT, LEFT, POINT, LEFT, LEFT], width=page.width))
 
 
+def _roots_without_numbers(page: Page, response: Response) -> None:
+    """Poles and zeros as formulas, where they can be told apart without values."""
+    form = response.form
+    if isinstance(form, Expanded):
+        for letter, row in (("p", form.denominator), ("z", form.numerator)):
+            for k in range(1, len(row)):
+                shape = response.quantity(f"{letter}{k}").shape
+                if shape is not None:
+                    page.block(formula_lines(shape, page.width - 4, label=f"{letter}{k}"), indent=2)
+    page.prose(f"{', '.join(response.missing)} has no bias value, so there are no numbers", indent=2)
+
+
 def _constants(page: Page, constants: Sequence[TimeConstant]) -> None:
     rows = []
     for constant in constants:
         formula = "" if constant.formula is None else one_line(constant.formula)
-        share = "none" if constant.share is None else f"{100 * constant.share:.1f} %".replace("-", MINUS)
+        share = "none" if constant.share is None else percent_words(constant.share)
         rows.append(
             [
                 constant.part,
@@ -171,12 +185,16 @@ def _dropped(page: Page, approximation: Approximation) -> None:
         return
     rows = []
     for item in approximation.dropped:
-        ratio = "none" if item.ratio is None else f"{100 * item.ratio:.3g} %".replace("-", MINUS)
+        ratio = "none" if item.ratio is None else percent_words(item.ratio)
         rows.append([item.coefficient, _dots(item.term), _dots(item.against), ratio])
     page.line()
-    page.block(
-        table_lines(["dropped from", "term", "fell to", "ratio at bias"], rows, [LEFT, LEFT, LEFT, POINT])
-    )
+    headers, kinds = ["dropped from", "term", "fell to", "ratio at bias"], [LEFT, LEFT, LEFT, POINT]
+    lines = table_lines(headers, rows, kinds)
+    if max(map(len, lines)) > page.width:  # with the ratio in front, what is long may stand below
+        order = (0, 3, 1, 2)
+        headers, kinds, *rows = ([row[i] for i in order] for row in (headers, kinds, *rows))
+        lines = table_lines(headers, rows, kinds, width=page.width)
+    page.block(lines)
 
 
 def _dots(text: str) -> str:

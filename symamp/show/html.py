@@ -6,6 +6,7 @@ from html import escape
 
 from symamp.judge.ledger import Account, Ledger
 from symamp.judge.sets import FIGURES
+from symamp.judge.span_errors import SpanFigure
 from symamp.show.words import error_words, value_words
 
 
@@ -17,23 +18,27 @@ def ledger_html(ledger: Ledger) -> str:
 
 
 def _account(account: Account) -> str:
-    def error(value: complex | float | None) -> str:
-        return escape(error_words(value, account.unit, absolute=account.absolute))
+    def error(value: complex | float | None, modulus: bool = False) -> str:
+        return escape(error_words(value, account.unit, absolute=account.absolute, modulus=modulus))
+
+    def ends(figure: SpanFigure) -> str:
+        return f"{error(figure.least, figure.modulus)} … {error(figure.greatest, figure.modulus)}"
 
     def cells(values: list[str], tag: str = "td") -> str:
         return "<tr>" + "".join(f"<{tag}>{value}</{tag}>" for value in values) + "</tr>"
 
     over = account.span is not None
-    rows = cells(["assumption", *FIGURES, *(["share over the span"] if over else [])], "th")
+    over_header = "share over the span" + (", modulus" if account.modulus else "")
+    rows = cells(["assumption", *FIGURES, *([over_header] if over else [])], "th")
     for share in account.assumptions:
         values = [escape(share.name), *(error(share.figures[figure]) for figure in FIGURES)]
         if over:
             found = share.span.get("share")
-            values.append("none" if found is None else f"{error(found.least)} … {error(found.greatest)}")
+            values.append("none" if found is None else ends(found))
         rows += cells(values)
     total = ["<b>all</b>", "", "", "", f"<b>{error(account.error)}</b>"]
     if account.span is not None:
-        total.append(f"{error(account.span.least)} … {error(account.span.greatest)}")
+        total.append(ends(account.span))
     rows += cells(total)
     exact, approximate = (
         escape(value_words(value, account.unit)) for value in (account.exact, account.approximate)

@@ -187,7 +187,11 @@ def approximation_json(
 
 def _dropped_json(item: Dropped) -> dict[str, Any]:
     found = {"coefficient": item.coefficient, "term": item.term, "against": item.against, "ratio": item.ratio}
-    return found if item.ratio is not None else {**found, "why": "a symbol of the two has no bias value, or is 0"}
+    return (
+        found
+        if item.ratio is not None
+        else {**found, "why": "a symbol of the two has no bias value, or is 0"}
+    )
 
 
 def ledger_json(ledger: Ledger) -> dict[str, Any]:
@@ -258,7 +262,9 @@ def _share_json(share: Share, ledger: Ledger) -> dict[str, Any]:
         figure: span_json(share.span[figure], ledger.method) if figure in share.span else None
         for figure in FIGURES
     }
-    lacking = {figure: share.why.get(figure) or _why_no_span(ledger) for figure in FIGURES if over[figure] is None}
+    lacking = {
+        figure: share.why.get(figure) or _why_no_span(ledger) for figure in FIGURES if over[figure] is None
+    }
     result["span"] = {**over, "why": lacking} if lacking else over
     return result
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 
-from symamp.judge.ledger import Account, Ledger, LostRoot, Share
+from symamp.judge.ledger import Account, Ledger, LostRoot
 from symamp.judge.sets import FIGURES, SHARES_LIMIT
 from symamp.judge.span_errors import SpanFigure
 from symamp.show.columns import LEFT, POINT, table_groups
@@ -50,19 +50,42 @@ def _account(page: Page, account: Account, ledger: Ledger) -> None:
     page.prose(f"{values}, error {error}" + (f": {account.why}" if account.why else ""), "bold", indent=2)
     if account.error_absolute is not None:
         page.line(f"  absolute error {value_words(account.error_absolute, account.unit)}")
-    if account.error_formula is not None and account.error_formula.leading is not None:
-        text = one_line(account.error_formula.shape)
-        leading = one_line(account.error_formula.leading)
-        if len(text) <= page.width - 14:
-            page.line(f"  error = {text}")
-        if leading != text:
-            page.prose(f"its leading term {leading}", indent=2)
+    _error_formula(page, account)
     _roots(page, "lost", account.lost)
     _roots(page, "new", account.new)
-    page.line()
-    _table(page, account, ledger)
+    if not _empty(account):
+        page.line()
+        _table(page, account, ledger)
+    _whys(page, account)
     for remark in account.remarks:
         page.prose(f"remark: {remark}", indent=2)
+
+
+def _error_formula(page: Page, account: Account) -> None:
+    """The error as a formula, and its leading term: with its value where the other terms cancel it."""
+    formula = account.error_formula
+    if formula is None or formula.leading is None:
+        return
+    text, leading = one_line(formula.shape), one_line(formula.leading)
+    if len(text) <= page.width - 10:
+        page.line(f"  error = {text}")
+    else:
+        page.block(formula_lines(formula.shape, page.width - 4, label="error"), indent=2)
+    if leading == text:
+        return
+    value = formula.leading_value
+    if value is not None and account.error is not None and abs(value) > 2 * abs(account.error):
+        words = error_words(value, account.unit, absolute=False)
+        page.prose(f"its largest term {leading}, {words}, is nearly cancelled by others", indent=2)
+    else:
+        page.prose(f"its leading term {leading}", indent=2)
+
+
+def _empty(account: Account) -> bool:
+    """Whether there is no figure at all to be shown."""
+    figures = [f for share in account.assumptions for f in share.figures.values()]
+    spans = [account.span, *(f for share in account.assumptions for f in share.span.values())]
+    return not any(x is not None for x in (account.error, *figures, *spans))
 
 
 def _untouched(account: Account) -> bool:
@@ -119,10 +142,13 @@ def _table(page: Page, account: Account, ledger: Ledger) -> None:
         for lines in table[:-1]:
             page.block(lines)
         page.block(table[-1], style="bold")
-    # Each figure has a why of its own; the shortest names the smallest set, which is what matters.
+
+
+def _whys(page: Page, account: Account) -> None:
+    """Why figures are missing: each has a why of its own; the shortest names the smallest set, which matters."""
     whys = sorted({why for share in account.assumptions for why in share.why.values()}, key=len)
-    for why in whys[:1]:
-        page.prose(why, indent=2)
+    if whys and account.exact:  # where the exact value is 0 or none, that has been said
+        page.prose(whys[0], indent=2)
 
 
 def _groups(page: Page, account: Account, ledger: Ledger, name: int, apart: bool) -> list[list[list[str]]]:

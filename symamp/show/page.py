@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import textwrap
 from collections.abc import Iterable
 from dataclasses import dataclass, field
@@ -10,6 +11,7 @@ from rich.console import Console
 from rich.text import Text
 
 WIDEST = 120
+_CONTROL = re.compile(r"[\x00-\x1f\x7f-\x9f]")
 
 
 @dataclass
@@ -20,8 +22,8 @@ class Page:
     lines: list[tuple[str, str]] = field(default_factory=list)
 
     def line(self, text: str = "", style: str = "") -> None:
-        """One line."""
-        self.lines.append((text, style))
+        """One line; control characters in it, which a terminal would obey, become spaces."""
+        self.lines.append((_CONTROL.sub(" ", text), style))
 
     def block(self, lines: Iterable[str], indent: int = 0, style: str = "") -> None:
         """Several lines, indented."""
@@ -60,10 +62,28 @@ class Page:
 
     def show(self, console: Console) -> None:
         """Print, each line as it is: nothing is wrapped any more, or read as markup."""
-        for text, style in self.lines:
-            console.print(Text(text, style=style), soft_wrap=True, highlight=False)
+        encoding = console.encoding
+        try:
+            for text, style in self.lines:
+                console.print(Text(readable(text, encoding), style=style), soft_wrap=True, highlight=False)
+        except SystemExit:  # what rich makes of a reader that has gone
+            raise BrokenPipeError from None
+
+
+_PLAIN = str.maketrans(
+    {"−": "-", "·": "*", "─": "-", "µ": "u", "²": "^2", "³": "^3", "√": "sqrt", "π": "pi", "ζ": "zeta", "…": "..."}
+)
+
+
+def readable(text: str, encoding: str) -> str:
+    """The text as the encoding can have it: signs that it lacks become those that are typed for them."""
+    try:
+        text.encode(encoding)
+    except (UnicodeEncodeError, LookupError):
+        return text.translate(_PLAIN).encode("ascii", "replace").decode("ascii")
+    return text
 
 
 def console_width(console: Console) -> int:
-    """The width to lay a page out for; 100 columns where there is no terminal."""
-    return min(console.width, WIDEST) if console.is_terminal else 100
+    """The width to lay a page out for: the terminal's, WIDEST at most; WIDEST where there is no terminal."""
+    return min(console.width, WIDEST) if console.is_terminal else WIDEST

@@ -5,7 +5,8 @@ from __future__ import annotations
 import json
 import sys
 import time
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -16,7 +17,7 @@ from symamp.assumptions.apply import Approximation, Approximator
 from symamp.assumptions.read import Assumption, chosen, read_assumptions
 from symamp.circuit.schema import stage_schema
 from symamp.circuit.stage import Stage
-from symamp.circuit.stagefile import read_stage
+from symamp.circuit.stagefile import locate, read_stage
 from symamp.errors import InputError, StageError
 from symamp.exact.derive import derive as derive_response
 from symamp.exact.opinion import Opinion, second_opinion
@@ -58,7 +59,9 @@ def derive(
     assumptions = read_assumptions(stage)
     made = chosen(assumptions, assume) if assume else None
     rename = resistance_names(stage) if resistances else {}
-    found = {name: _derived(stage, name, made, rename, with_opinion) for name in _wanted(stage, responses)}
+    wanted = _wanted(stage, responses)
+    with _placed(stage):
+        found = {name: _derived(stage, name, made, rename, with_opinion) for name in wanted}
     if as_json:
         _print_json(_derive_json(stage, found, hertz))
     else:
@@ -116,7 +119,7 @@ def _derive_json(stage: Stage, found: Mapping[str, _Derived], hertz: Sequence[fl
 def ledger(file: str, quantities: Sequence[str], points: int, seed: int, as_json: bool) -> int:
     """`symamp ledger`."""
     stage = read_stage(file)
-    with _Bar() as bar:
+    with _placed(stage), _Bar() as bar:
         made = make_ledger(stage, quantities=quantities, points=points, seed=seed, progress=bar.advance)
     if as_json:
         _print_json(ledger_json(made))
@@ -142,11 +145,26 @@ def _wanted(stage: Stage, responses: Sequence[str]) -> list[str]:
     return list(dict.fromkeys(responses)) or list(stage.asked)
 
 
+@contextmanager
+def _placed(stage: Stage) -> Iterator[None]:
+    """Errors that name a key of the stage file alone get its file and line."""
+    try:
+        yield
+    except InputError as error:
+        if error.line is not None or error.key is None or error.key.startswith("--"):
+            raise
+        place = locate(stage, tuple(error.key.split(".")))
+        raise error.at(file=place["file"], line=place["line"]) from None
+
+
 def _frequency(text: str) -> float:
     try:
-        return float(read_frequency(text))
+        hertz = float(read_frequency(text))
     except InputError as error:
         raise error.at(key="--at") from None
+    if hertz < 0:
+        raise InputError(f"a frequency cannot be negative, and {text!r} is", "such as 10 MHz", key="--at")
+    return hertz
 
 
 def _notes(page: Page, stage: Stage) -> None:
@@ -157,7 +175,8 @@ def _notes(page: Page, stage: Stage) -> None:
 
 def _print_json(found: dict[str, Any]) -> None:
     # Whole before any of it is printed, so that a mistake leaves nothing on standard output.
-    sys.stdout.write(json.dumps(found, indent=1, ensure_ascii=False, allow_nan=False) + "\n")
+    narrow = (sys.stdout.encoding or "").lower().replace("-", "") != "utf8"
+    sys.stdout.write(json.dumps(found, indent=1, ensure_ascii=narrow, allow_nan=False) + "\n")
 
 
 class _Bar:

@@ -10,6 +10,7 @@ from symamp.circuit.stage import GROUND, Asked
 from symamp.values import show_value
 
 MINUS = "−"
+_NOTHING = 1e-8  # an error, in % or in its own unit, that nobody would call one
 
 
 def value_words(value: complex | float | None, unit: str, digits: int = 4) -> str:
@@ -48,11 +49,19 @@ def error_words(value: complex | float | None, unit: str, *, absolute: bool, mod
         return "none"
     number = abs(value) if isinstance(value, complex) and value.imag else _real(value)
     scaled = number if absolute else 100 * number
+    if abs(scaled) < _NOTHING:
+        scaled = 0.0
     tail = f" {unit}" if absolute else " %"
     if scaled == 0:
         return "0" + tail
     sign = "" if modulus or (isinstance(value, complex) and value.imag) else "+" if scaled > 0 else MINUS
     return f"{sign}{_three(abs(scaled))}{tail}"
+
+
+def percent_words(ratio: float) -> str:
+    """A ratio in percent: "6.15 %"."""
+    sign = MINUS if ratio < 0 else ""
+    return f"{sign}{_three(abs(100 * ratio))} %" if abs(ratio) > _NOTHING / 100 else "0 %"
 
 
 def _real(value: complex | float) -> float:

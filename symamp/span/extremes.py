@@ -39,7 +39,7 @@ class Extremes:
 
     def take(self, figures: np.ndarray, places: np.ndarray) -> None:
         """Take in figures (rows, P) at places (d, P)."""
-        nan = np.isnan(figures)
+        nan = ~np.isfinite(figures)
         self.missing += nan.sum(axis=1)
         if np.iscomplexobj(figures):
             self._complex |= (np.where(nan, 0.0, figures).imag != 0).any(axis=1)

@@ -9,7 +9,7 @@ from typing import Any
 
 import numpy as np
 
-from symamp.circuit.stage import Span, Stage
+from symamp.circuit.stage import Side, Span, Stage
 from symamp.span.sobol import Sobol
 
 BLOCK = 8192
@@ -50,11 +50,13 @@ class Box:
     def values(self, u: np.ndarray) -> Values:
         """Symbol values at points u of shape (sides, P): arrays for symbols that vary, scalars for the others."""
         values: Values = dict(self._base)
-        for side, component in zip(self.span.sides, u, strict=True):
+        for place, (side, component) in enumerate(zip(self.span.sides, u, strict=True)):
             low, high = float(side.low), float(side.high)
             value = low * (high / low) ** component if low > 0 else low + (high - low) * component
             # The ends are the ends, to the last digit.
             value = np.where(component <= 0, low, np.where(component >= 1, high, value))
+            # And so is the bias value, which a logarithm and back would move in its last digit.
+            value = np.where(component == self.bias_point[place], self._bias_value(side), value)
             values[side.symbol] = value**side.exponent if side.exponent != 1 else value
         for side in self.span.sides:
             for name, power in side.times.items():
@@ -80,11 +82,15 @@ class Box:
         """u of the bias point, (sides, 1); a component may lie outside [0, 1]."""
         return np.array([[self._component(side)] for side in self.span.sides]).reshape(self.dimensions, 1)
 
-    def _component(self, side: Any) -> float:
+    def _bias_value(self, side: Side) -> float:
+        """What is varied, at the bias point."""
         value = self._base[side.symbol]
         for name, power in side.times.items():
             value /= self._base[name] ** power
-        value = value ** (1 / side.exponent)
+        return value if side.exponent == 1 else float(value ** (1 / side.exponent))
+
+    def _component(self, side: Side) -> float:
+        value = self._bias_value(side)
         low, high = float(side.low), float(side.high)
         if high == low:
             return 0.0

@@ -3,10 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from fractions import Fraction
 from typing import Any
-
-import numpy as np
 
 from symamp.assumptions.apply import Approximation, Approximator
 from symamp.assumptions.read import read_assumptions
@@ -16,7 +13,9 @@ from symamp.exact.cofactors import ratio_of
 from symamp.exact.derive import nested_of
 from symamp.exact.forms import write_out
 from symamp.exact.response import Response
+from symamp.exact.shape import polynomial_text
 from symamp.exact.system import build_system
+from symamp.formula import evaluate, parse
 
 
 def common_source() -> StageBuilder:
@@ -105,13 +104,10 @@ def two_stage() -> StageBuilder:
     b.capacitor("C1", "a", "gnd", "100 fF")
     b.mosfet("M6", gate="a", drain="out", source="gnd", gm="5 mS", gds="60 uS")
     b.capacitor("CC", "a", "r", "2 pF")
-    b.resistor("RZ", "r", "out", "200 ohm")
+    b.resistor("RZ", "r", "out", "300 ohm")
     b.capacitor("CL", "out", "gnd", "5 pF")
     b.response("gain", source="VIN", to="out")
     return b
-
-
-ALL = (common_source, cascode, follower, degenerated, differential_pair, two_stage)
 
 
 def exact(stage: Stage, name: str = "gain", *, nested: bool = False) -> Response:
@@ -130,34 +126,13 @@ def under(b: StageBuilder, name: str = "gain", **assumption: Any) -> Approximati
     return Approximator(exact(stage, name)).under(read_assumptions(stage))
 
 
-def with_values(b: StageBuilder, **values: float) -> Stage:
-    """The stage with some bias values replaced, exactly."""
-    from dataclasses import replace
-
-    stage = b.stage()
-    assert all(name in stage.symbols for name in values)
-    return replace(stage, bias={**stage.bias, **{name: Fraction(value) for name, value in values.items()}})
-
-
 def formula_value(text: str, values: Mapping[str, float]) -> float:
     """The value of a formula in the grammar of stage files."""
-    from symamp.formula import evaluate, parse
-
     return evaluate(parse(text), values.__getitem__)
-
-
-def rational(response: Response, s: complex) -> complex:
-    """numerator(s)/denominator(s) at the bias point."""
-    given = response.coefficients(response.bias_values, 1)
-    sigma = s / given.omega
-    above, below = (np.polyval(row[::-1, 0], sigma) for row in (given.numerator, given.denominator))
-    return complex(above / below)
 
 
 def texts(response: Response, which: str) -> list[str]:
     """The coefficients of numerator or denominator as text."""
-    from symamp.exact.shape import polynomial_text
-
     return [polynomial_text(c) for c in getattr(response.form, which)]
 
 

@@ -49,6 +49,12 @@ CASES: dict[str, tuple[Any, str, list[dict[str, Any]]]] = {
     ),
     "set": (stages.two_stage, "gain", [{"set_": {"RZ": "1/gm6"}}]),
     "set to a number": (stages.two_stage, "gain", [{"set_": {"RZ": "0 ohm"}}]),
+    "set to a number that cancels a zero": (stages.two_stage, "gain", [{"set_": {"RZ": "200 ohm"}}]),
+    "a cancelled zero and poles far apart": (
+        stages.two_stage,
+        "gain",
+        [{"set_": {"RZ": "200 ohm"}}, {"poles_far_apart": True}],
+    ),
     "set in a chain": (stages.two_stage, "gain", [{"set_": {"RZ": "1/gm6", "gm6": "4*gm1"}}]),
     "set of a neglected symbol": (stages.two_stage, "gain", [{"set_": {"gds6": "2*gds1"}}, {"neglect": ["gds1"]}]),
     "set to a sum of which one goes": (

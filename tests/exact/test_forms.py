@@ -251,3 +251,72 @@ def test_coefficients_neither_vanish_nor_burst() -> None:
     given_rows = form.coefficients({name: float(v) for name, v in stage.bias.items()}, 1)
     assert np.all(np.isfinite(given_rows.denominator))
     assert np.all(given_rows.denominator[:, 0] != 0)
+
+
+def floating(kind: str) -> Stage:
+    """A current source in a net of resistors or capacitors that hangs on ground by one part of another kind.
+
+    At one end of the frequencies no current flows to ground, so that a coefficient of the response vanishes
+    though products of the graph have its power of s.
+    """
+    build = StageBuilder("floating net")
+    build.current_source("I1", "a", "d")
+    for k, pair in enumerate(("ab", "bc", "cd", "ac", "bd"), start=1):
+        if kind == "resistor":
+            build.resistor(f"X{k}", *pair, value=(970.0, 330.0, 1400.0, 6700.0, 210.0)[k - 1])
+        else:
+            build.capacitor(f"X{k}", *pair, value=(97e-15, 33e-15, 140e-15, 670e-15, 21e-15)[k - 1])
+    build.resistor("RL", "a", "gnd", 10e3)
+    if kind == "resistor":
+        build.capacitor("CD", "d", "gnd", 1e-12)
+    else:
+        build.resistor("RD", "d", "gnd", 1e3)
+    build.response("gain", source="I1", to="a")
+    return build.stage()
+
+
+@pytest.mark.parametrize("kind", ["resistor", "capacitor"])
+def test_a_coefficient_that_cancels_leaves_no_noise_at_the_ends_of_frequency(kind: str) -> None:
+    stage = floating(kind)
+    exact = derive(stage, stage.asked["gain"])
+    nested = replace(exact, form=nested_of(stage, ratio(stage)))
+    assert nested.form.ends_cancel  # type: ignore[union-attr]
+    hz = np.logspace(-9, 24, 67)
+    np.testing.assert_allclose(nested.at(hz), exact.at(hz), rtol=1e-12)
+    many = {"RL": np.full(hz.size, 10e3)}
+    np.testing.assert_allclose(nested.at(hz, many), exact.at(hz, many), rtol=1e-12)
+
+
+def test_powers_that_the_structure_lacks_do_not_count_as_cancelled() -> None:
+    stage = cascode()
+    assert not nested_of(stage, ratio(stage)).ends_cancel
+    build = StageBuilder("coupled")
+    build.voltage_source("VIN", "in", "gnd")
+    build.capacitor("CC", "in", "out", "1 uF")
+    build.resistor("RL", "out", "gnd", "1 kohm")
+    build.response("gain", source="VIN", to="out")
+    coupled = build.stage()
+    assert not nested_of(coupled, ratio(coupled)).ends_cancel
+
+
+@pytest.mark.parametrize("turns", [1.0, 2.0])
+@pytest.mark.parametrize("across", ["resistor", "capacitor"])
+def test_a_hidden_mode_may_sit_at_zero_or_at_infinity(across: str, turns: float) -> None:
+    """A part that bridges a transformer of ratio 1 carries nothing: the hidden mode's root leaves for an end."""
+    build = StageBuilder("hidden mode")
+    build.voltage_source("VIN", "in", "gnd")
+    build.resistor("R1", "in", "out", "10 kohm")
+    build.capacitor("C1", "in", "out", "1 pF")
+    build.resistor("RL", "out", "gnd", "3 kohm")
+    build.capacitor("CL", "out", "gnd", "2 pF")
+    build.transformer("T1", primary=("x", "gnd"), secondary=("y", "gnd"), value=turns)
+    build.resistor("RB", *(("x", "y") if across == "resistor" else ("x", "gnd")), "1 kohm")
+    build.capacitor("CB", *(("x", "y") if across == "capacitor" else ("x", "gnd")), "4 pF")
+    build.response("gain", source="VIN", to="out")
+    stage = build.stage()
+    exact = derive(stage, stage.asked["gain"])
+    nested = nested_of(stage, ratio(stage))
+    assert nested.skeleton.common == 1
+    given_rows = nested.coefficients(exact.bias_values, 1)
+    for hz in (0.0, 1e6, 1e8, 1e10):
+        assert at(given_rows, np.array(2j * np.pi * hz)) == pytest.approx(exact.at(hz), rel=1e-10)

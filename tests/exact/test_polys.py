@@ -15,11 +15,12 @@ from symamp.exact.polys import (
     by_power,
     coefficients_of_s,
     from_coefficients,
+    held,
+    into_ring,
     inverted,
     least_exponents,
     lowest_terms,
     ring_of,
-    shifted,
 )
 
 NAMES = ("x", "y", "z", "s")
@@ -111,14 +112,33 @@ def test_inverted_symbols_stand_for_their_inverse(
     assert value(numerator, inverse) / value(denominator, inverse) == value(top, at) / value(bottom, at)
 
 
-@given(nonzero, st.tuples(*(st.integers(0, 2) for _ in NAMES)))
-def test_a_shift_multiplies_by_its_monomial(polynomial: fmpz_mpoly, shift: tuple[int, ...]) -> None:
-    monomial = RING.from_dict({shift: 1})
-    assert shifted(polynomial, shift) == polynomial * monomial
-    assert shifted(polynomial * monomial, [-e for e in shift]) == polynomial
-    least = least_exponents([polynomial * monomial])
-    assert all(a >= b for a, b in zip(least, shift, strict=True))
-    assert min(least_exponents([shifted(polynomial, [-e for e in least_exponents([polynomial])])])) == 0
+@given(st.lists(polynomials, max_size=3), st.tuples(*(st.integers(0, 2) for _ in NAMES)))
+def test_least_exponents_are_those_of_the_common_monomial(
+    some: list[fmpz_mpoly], shift: tuple[int, ...]
+) -> None:
+    monomials = [tuple(map(int, e)) for polynomial in some for e in polynomial.monoms()]
+    by_hand = [min(e[k] for e in monomials) for k in range(len(NAMES))] if monomials else []
+    assert least_exponents(some) == by_hand
+    by_monomial = [polynomial * RING.from_dict({shift: 1}) for polynomial in some]
+    assert least_exponents(by_monomial) == [a + b for a, b in zip(by_hand, shift, strict=False)]
+
+
+@given(polynomials)
+def test_another_ring_holds_the_same_polynomial(polynomial: fmpz_mpoly) -> None:
+    larger = fmpz_mpoly_ctx.get(("w", "z", "x", "y", "s"), Ordering.lex)
+    moved = into_ring(polynomial, larger)
+    assert moved.context() is larger
+    assert held(moved) == held(polynomial)
+    assert into_ring(moved, RING) == polynomial
+    assert into_ring(polynomial, RING) is polynomial
+
+
+def test_a_ring_that_lacks_a_generator_is_refused() -> None:
+    smaller = fmpz_mpoly_ctx.get(("x", "s"), Ordering.lex)
+    with pytest.raises(KeyError, match="y"):
+        into_ring(RING.gen(0) + RING.gen(1), smaller)
+    assert into_ring(RING.gen(0) + RING.gen(3), smaller) == smaller.gen(0) + smaller.gen(1)
+    assert held(RING.gen(0), RING.gen(1) * RING.gen(3), RING.constant(0)) == {"x", "y"}
 
 
 def test_the_ring_has_symbols_in_the_order_of_formulas_and_s_last() -> None:

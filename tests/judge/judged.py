@@ -164,8 +164,6 @@ def extremes(values: Sequence[Any]) -> tuple[float, float] | None:
     return min(real), max(real)
 
 
-
-
 def floats(bias: Mapping[str, Any]) -> dict[str, float]:
     """Values as floats."""
     return {name: float(value) for name, value in bias.items()}

@@ -5,8 +5,8 @@ from __future__ import annotations
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-
 from judged import CASCODE, COMMON_SOURCE, NO_BODY, SMALL_GDS, stage_of
+
 from symamp.assumptions.apply import Approximator
 from symamp.assumptions.read import read_assumptions
 from symamp.circuit.stage import Stage
@@ -95,6 +95,11 @@ def test_of_a_pole_the_formula_is_against_its_partner() -> None:
     exact, approximate = both(stage)
     assert error_formula(exact, approximate, parse_quantity("p1")) is None  # lost
     assert error_formula(exact, approximate, parse_quantity("p2")) is None  # a square root, not rational
+
+
+def test_the_bandwidth_of_one_pole_has_the_error_of_its_pole() -> None:
+    stage = stage_of(CASCODE, SMALL_GDS, NO_BODY)
+    assert found(stage, "bandwidth").shape.text() == found(stage, "p1").shape.text()
 
 
 @pytest.mark.parametrize("quantity", ["bandwidth", "unity_gain_frequency", "dc.db", "p1.hz", "phase_margin"])

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-
 from judged import CASCODE, COMMON_SOURCE, NO_BODY, SMALL_GDS, stage_of
+
 from symamp.circuit.stage import Stage
 from symamp.exact import derive as derive_module
 from symamp.exact.asked_quantity import parse_quantity
@@ -16,13 +16,24 @@ TWO_DEVICES = COMMON_SOURCE.replace(
     "[resistor]", 'M2 = { gate = "out", drain = "out", source = "gnd" }\n\n[resistor]'
 ).replace("[bias]", '[bias]\nM2 = { gm = "4 mS", gds = "0.3 mS", cgs = "0.3 pF" }')
 
+
+def assumption(name: str, what: str) -> str:
+    return f'\n[[assumption]]\nname = "{name}"\n{what}\n'
+
+
+ALIKE = assumption("alike", 'equal = ["M1", "M2"]')
+ONE_POLE = assumption("one pole", "dominant_pole = true")
 SETS = [
-    (CASCODE, '\n[[assumption]]\nname = "alike"\nequal = ["M1", "M2"]\n', NO_BODY),
-    (COMMON_SOURCE, '\n[[assumption]]\nname = "no gds"\nneglect = ["gds"]\n', '\n[[assumption]]\nname = "no load"\nopen = ["RL"]\n'),
-    (TWO_DEVICES, '\n[[assumption]]\nname = "alike"\nequal = ["M1", "M2"]\n', '\n[[assumption]]\nname = "one"\ndominant_pole = true\n'),
-    (COMMON_SOURCE, '\n[[assumption]]\nname = "one"\ndominant_pole = true\n', '\n[[assumption]]\nname = "no source resistance"\nshort = ["RS"]\n'),
-    (COMMON_SOURCE, '\n[[assumption]]\nname = "apart"\npoles_far_apart = true\n', '\n[[assumption]]\nname = "only cgs"\ndominant_capacitor = "cgs1"\n'),
-]  # fmt: skip
+    (CASCODE, ALIKE, NO_BODY),
+    (COMMON_SOURCE, assumption("no gds", 'neglect = ["gds"]'), assumption("no load", 'open = ["RL"]')),
+    (TWO_DEVICES, ALIKE, ONE_POLE),
+    (COMMON_SOURCE, ONE_POLE, assumption("no source resistance", 'short = ["RS"]')),
+    (
+        COMMON_SOURCE,
+        assumption("apart", "poles_far_apart = true"),
+        assumption("cgs", 'dominant_capacitor = "cgs1"'),
+    ),
+]
 SPAN = '\n[span]\ngm1 = ["2 mS", "8 mS"]\ngds1 = "40 %"\n'
 
 
@@ -34,13 +45,17 @@ def nested_ledger(stage: Stage, monkeypatch: pytest.MonkeyPatch) -> Ledger:
 
 
 @pytest.mark.parametrize("texts", SETS)
-def test_a_nested_ledger_is_the_written_out_one(texts: tuple[str, ...], monkeypatch: pytest.MonkeyPatch) -> None:
+def test_a_nested_ledger_is_the_written_out_one(
+    texts: tuple[str, ...], monkeypatch: pytest.MonkeyPatch
+) -> None:
     stage = stage_of(texts[0], SPAN, *texts[1:])
     expanded, nested = make_ledger(stage, points=16), nested_ledger(stage, monkeypatch)
     assert [a.name for a in nested.accounts] == [a.name for a in expanded.accounts]
     for one, two in zip(expanded.accounts, nested.accounts, strict=True):
         assert two.exact == pytest.approx(one.exact, rel=1e-9)
-        assert two.error == (None if one.error is None else pytest.approx(one.error, rel=1e-7, abs=1e-9)), one.name
+        assert two.error == (None if one.error is None else pytest.approx(one.error, rel=1e-7, abs=1e-9)), (
+            one.name
+        )
         assert [root.name for root in two.lost] == [root.name for root in one.lost]
         for share, other in zip(one.assumptions, two.assumptions, strict=True):
             for name, value in share.figures.items():
@@ -49,7 +64,9 @@ def test_a_nested_ledger_is_the_written_out_one(texts: tuple[str, ...], monkeypa
                 assert (name in other.span) == (name in share.span)
                 if name in share.span:
                     assert other.span[name].least == pytest.approx(share.span[name].least, rel=1e-6, abs=1e-8)
-                    assert other.span[name].greatest == pytest.approx(share.span[name].greatest, rel=1e-6, abs=1e-8)
+                    assert other.span[name].greatest == pytest.approx(
+                        share.span[name].greatest, rel=1e-6, abs=1e-8
+                    )
 
 
 def test_dominance_in_a_nested_response_is_refused_in_words(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -73,7 +90,8 @@ def test_a_difference_of_rounding_is_no_error() -> None:
 
 
 @pytest.mark.parametrize(
-    ("approximate", "exact", "error"), [(179.0, -179.0, -2.0), (-179.0, 179.0, 2.0), (90, 0, 90), (180, -180, 0)]
+    ("approximate", "exact", "error"),
+    [(179.0, -179.0, -2.0), (-179.0, 179.0, 2.0), (90, 0, 90), (180, -180, 0)],
 )
 def test_degrees_go_the_short_way_round(approximate: float, exact: float, error: float) -> None:
     found = error_of(parse_quantity("at(1 Hz).deg"), np.array([approximate]), np.array([exact]))

@@ -7,10 +7,10 @@ from math import pi
 from pathlib import Path
 
 import pytest
+from judged import CASCODE, COMMON_SOURCE, NO_BODY, SMALL_GDS, stage_of
 
-from judged import CASCODE, COMMON_SOURCE, NO_BODY, NO_R2, RESONATOR, SMALL_GDS, stage_of
 from symamp.errors import InputError, StageError
-from symamp.judge.ledger import Account, Ledger, LostRoot, make_ledger
+from symamp.judge.ledger import Account, Ledger, make_ledger
 
 GM1, GDS1, GM2, GDS2, GMB2, CL = 4.1e-3, 0.21e-3, 3.9e-3, 0.24e-3, 0.62e-3, 3.3e-12
 
@@ -74,7 +74,9 @@ def test_bandwidth_of_a_one_pole_stage_has_the_error_of_its_pole() -> None:
 @pytest.mark.parametrize("quantity", ["gain.dc", "gain.p1", "gain.unity_gain_frequency", "mid.z1"])
 def test_the_order_of_listing_changes_added_alone(quantity: str) -> None:
     texts = (SMALL_GDS, NO_BODY, LONG_LOAD)
-    accounts = [ledger(TWO_CAPACITORS, *order, quantities=(quantity,))[quantity] for order in permutations(texts)]
+    accounts = [
+        ledger(TWO_CAPACITORS, *order, quantities=(quantity,))[quantity] for order in permutations(texts)
+    ]
     first = accounts[0]
     for account in accounts[1:]:
         assert account.error == pytest.approx(first.error, rel=1e-9, abs=1e-12)
@@ -90,7 +92,9 @@ def test_the_order_of_listing_changes_added_alone(quantity: str) -> None:
 def test_an_assumption_on_what_the_response_lacks_changes_nothing() -> None:
     other = '\n[[assumption]]\nname = "elsewhere"\nneglect = ["csb2"]\n'
     beside = '[resistor]\nRF = ["far", "gnd"]\n\n[voltage_source]\nVF = ["far", "gnd"]'
-    far = TWO_CAPACITORS.replace("[voltage_source]", beside).replace('CL = "3.3 pF"', 'CL = "3.3 pF"\nRF = "1 kohm"')
+    far = TWO_CAPACITORS.replace("[voltage_source]", beside).replace(
+        'CL = "3.3 pF"', 'CL = "3.3 pF"\nRF = "1 kohm"'
+    )
     away = '\n[[assumption]]\nname = "far away"\nopen = ["RF"]\n'
     plain = ledger(far, SMALL_GDS, other)
     more = ledger(far, SMALL_GDS, other, away)
@@ -141,14 +145,20 @@ def test_an_assumption_that_leaves_nothing_is_said_in_words_and_never_as_a_numbe
 
 
 def test_an_exact_value_of_zero_has_an_absolute_error() -> None:
-    coupled = COMMON_SOURCE.replace("[voltage_source]", 'CB = ["a", "g"]\n\n[voltage_source]').replace(
-        'RS = ["in", "g"]', 'RS = ["in", "a"]\nRB = ["g", "gnd"]'
-    ).replace('CL = "0.7 pF"', 'CL = "0.7 pF"\nCB = "1 nF"\nRB = "1 Mohm"')
+    coupled = (
+        COMMON_SOURCE.replace("[voltage_source]", 'CB = ["a", "g"]\n\n[voltage_source]')
+        .replace('RS = ["in", "g"]', 'RS = ["in", "a"]\nRB = ["g", "gnd"]')
+        .replace('CL = "0.7 pF"', 'CL = "0.7 pF"\nCB = "1 nF"\nRB = "1 Mohm"')
+    )
     short = '\n[[assumption]]\nname = "CB is a short"\nshort = ["CB"]\n'
     account = ledger(coupled, short, quantities=("gain.dc",))["gain.dc"]
     assert account.exact == 0
     assert account.error is None
-    assert account.error_absolute == account.approximate == pytest.approx(-5e-3 / (0.2e-3 + 1 / 4e3) * 1e6 / 1.02e6)
+    assert (
+        account.error_absolute
+        == account.approximate
+        == pytest.approx(-5e-3 / (0.2e-3 + 1 / 4e3) * 1e6 / 1.02e6)
+    )
     assert account.why == "the exact value is 0, so there is no relative error"
     assert set(account.assumptions[0].why.values()) == {
         "the exact value is 0, so there is no relative error under 'CB is a short'"
@@ -157,11 +167,24 @@ def test_an_exact_value_of_zero_has_an_absolute_error() -> None:
 
 def test_thirteen_assumptions_have_no_shares_and_say_so() -> None:
     # Assumptions that compare products of the cascode's symbols; most of them find nothing to drop.
-    pairs = [("gds1", "gm1"), ("gds1", "gm2"), ("gds2", "gm1"), ("gds2", "gm2"), ("gmb2", "gm1"), ("gmb2", "gm2")]
-    pairs += [("gds1", "gm1*gm2*ro1"), ("gds2", "gm1*gm2*ro2"), ("gds2", "gm1*gm1*ro2"), ("gmb2", "gm1*gm1*ro2")]
+    pairs = [
+        ("gds1", "gm1"),
+        ("gds1", "gm2"),
+        ("gds2", "gm1"),
+        ("gds2", "gm2"),
+        ("gmb2", "gm1"),
+        ("gmb2", "gm2"),
+    ]
+    pairs += [
+        ("gds1", "gm1*gm2*ro1"),
+        ("gds2", "gm1*gm2*ro2"),
+        ("gds2", "gm1*gm1*ro2"),
+        ("gmb2", "gm1*gm1*ro2"),
+    ]
     pairs += [("gds1", "gm1*gm1*ro1"), ("gmb2", "gm2*gm1*ro2"), ("gds2", "gm2*gm2*ro2")]
     texts = [
-        f'\n[[assumption]]\nname = "{k}"\nsmall = ["{x}"]\nagainst = ["{y}"]\n' for k, (x, y) in enumerate(pairs)
+        f'\n[[assumption]]\nname = "{k}"\nsmall = ["{x}"]\nagainst = ["{y}"]\n'
+        for k, (x, y) in enumerate(pairs)
     ]
     found = ledger(CASCODE, *texts, quantities=("gain.dc",))
     account = found["gain.dc"]
@@ -182,7 +205,12 @@ def test_thirteen_assumptions_have_no_shares_and_say_so() -> None:
 
 @pytest.mark.parametrize(
     ("quantity", "unit"),
-    [("gain.dc.db", "dB"), ("gain.phase_margin", "deg"), ("mid.at(1 MHz).deg", "deg"), ("gain.at(1 MHz).db", "dB")],
+    [
+        ("gain.dc.db", "dB"),
+        ("gain.phase_margin", "deg"),
+        ("mid.at(1 MHz).deg", "deg"),
+        ("gain.at(1 MHz).db", "dB"),
+    ],
 )
 def test_decibels_and_degrees_are_off_by_a_difference(quantity: str, unit: str) -> None:
     account = ledger(CASCODE, SMALL_GDS, NO_BODY, quantities=(quantity,))[quantity]
@@ -207,80 +235,6 @@ def test_hertz_and_magnitude_of_a_pole_have_its_error() -> None:
     errors = [account.error for account in found.accounts]
     assert errors[1] == pytest.approx(errors[0])
     assert errors[2] == pytest.approx(errors[0])
-
-
-# Poles and zeros
-
-
-def test_an_approximate_root_is_the_partner_of_the_nearest_whatever_its_index() -> None:
-    # Without CL all that is left is the pole at node x, which is p2: p1 is lost.
-    unloaded = '\n[[assumption]]\nname = "no load"\nneglect = ["CL"]\n'
-    resistive = TWO_CAPACITORS.replace(
-        "[capacitor]", '[resistor]\nRL = ["out", "gnd"]\n\n[capacitor]'
-    ).replace('CL = "3.3 pF"', 'CL = "3.3 pF"\nRL = "2 kohm"')
-    found = ledger(resistive, unloaded, quantities=("gain.p1", "gain.p2"))
-    first, second = found["gain.p1"], found["gain.p2"]
-    assert first.error is None
-    assert first.lost == second.lost
-    ((name, hz),) = [(root.name, root.hz) for root in first.lost]
-    assert (name, hz) == ("p1", pytest.approx(abs(first.exact or 0) / (2 * pi)))
-    assert first.new == ()
-    at_x = (GM2 + GMB2 + GDS2) / (1 + GDS2 * 2e3) + GDS1
-    assert second.approximate == pytest.approx(-at_x / 60e-15)
-    assert second.formula_approximate is not None
-    assert second.error_formula is None or "RL" in second.error_formula.shape.text()
-
-
-def test_a_root_that_goes_is_named_lost() -> None:
-    gone = '\n[[assumption]]\nname = "no feedthrough"\nneglect = ["cgd"]\n'
-    found = ledger(COMMON_SOURCE, gone, quantities=("gain.z1", "gain.p1"))
-    zero = found["gain.z1"]
-    assert zero.exact == pytest.approx(5e-3 / 0.1e-12)
-    assert zero.lost == (LostRoot("z1", pytest.approx(5e-3 / 0.1e-12 / (2 * pi))),)
-    assert zero.why == "z1, at 7.958 GHz, is lost: it has no partner"
-    assert found["gain.p1"].lost == ()
-
-
-def test_a_root_that_appears_is_named_new() -> None:
-    # One bridging capacitor gives one pole; split in two it gives one at the gate and one at the output.
-    bridge = COMMON_SOURCE.replace('cgs = "0.4 pF", ', "").replace('[capacitor]\nCL = ["out", "gnd"]\n\n', "")
-    bridge = bridge.replace('CL = "0.7 pF"\n', "")
-    split = '\n[[assumption]]\nname = "cgd by Miller"\nmiller = { part = "cgd1", from = "g", to = "out" }\n'
-    account = ledger(bridge, split, quantities=("gain.p1",))["gain.p1"]
-    gain = -5e-3 / (0.2e-3 + 1 / 4e3)
-    at_output = (0.2e-3 + 1 / 4e3) / (0.1e-12 * (1 - 1 / gain))
-    assert account.approximate == pytest.approx(-1 / (20e3 * 0.1e-12 * (1 - gain)))
-    assert account.new == (LostRoot("p2", pytest.approx(at_output / (2 * pi))),)
-    assert account.lost == ()
-
-
-def test_figures_of_complex_poles_are_of_the_modulus_over_the_span() -> None:
-    span = '\n[span]\nR1 = ["100 ohm", "400 ohm"]\n'
-    account = ledger(RESONATOR, span, NO_R2, quantities=("gain.p1",))["gain.p1"]
-    assert account.modulus
-    assert isinstance(account.error, float)  # real at the bias point, where the poles are
-    assert account.span is not None
-    assert account.span.modulus
-    assert 0 <= account.span.least <= abs(account.error) <= account.span.greatest
-    assert all(s.span[f].modulus for s in account.assumptions for f in s.span)
-
-
-def test_a_span_without_complex_poles_keeps_signs() -> None:
-    span = '\n[span]\nR1 = ["300 ohm", "400 ohm"]\n'
-    account = ledger(RESONATOR, span, NO_R2, quantities=("gain.p2",))["gain.p2"]
-    assert not account.modulus
-    assert account.span is not None
-    assert account.span.least < account.span.greatest < 0
-
-
-def test_the_error_of_a_pole_that_is_complex_at_the_bias_point_is_complex() -> None:
-    near = RESONATOR.replace('R1 = "300 ohm"', 'R1 = "150 ohm"')
-    account = ledger(near, NO_R2, quantities=("gain.p1",))["gain.p1"]
-    assert account.modulus
-    real, imag = -180 / 20e-6, (1e14 - (180 / 20e-6) ** 2) ** 0.5
-    exact, approximate = complex(real, imag), complex(-150 / 20e-6, (1e14 - (150 / 20e-6) ** 2) ** 0.5)
-    assert account.exact == pytest.approx(exact)
-    assert account.error == pytest.approx((approximate - exact) / exact)
 
 
 # Spans
@@ -332,7 +286,12 @@ def test_a_stage_without_assumptions_has_no_ledger() -> None:
 
 @pytest.mark.parametrize(
     ("name", "words"),
-    [("gane.dc", "responses are gain, mid"), ("gain", "gain.dc"), ("gain.bandwith", "bandwidth"), (".dc", "responses")],
+    [
+        ("gane.dc", "responses are gain, mid"),
+        ("gain", "gain.dc"),
+        ("gain.bandwith", "bandwidth"),
+        (".dc", "responses"),
+    ],
 )
 def test_an_unknown_quantity_is_refused_with_what_is_known(name: str, words: str) -> None:
     with pytest.raises(InputError) as caught:

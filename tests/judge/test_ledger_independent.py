@@ -14,9 +14,9 @@ from typing import Any
 
 import pytest
 import sympy
+from judged import COMMON_SOURCE, slow_figures, slow_partner, stage_of
 from mpmath import mp, mpf, polyroots
 
-from judged import COMMON_SOURCE, slow_figures, slow_partner, stage_of
 from symamp.judge.ledger import make_ledger
 
 ASSUMPTIONS = """
@@ -44,7 +44,9 @@ S = sympy.Symbol("s")
 
 # Kirchhoff at the gate and at the output, for one volt at the input; multiplied through by RS and RL.
 ABOVE = -RL * (GM - S * CGD)
-BELOW = (1 + S * RS * (CGS + CGD)) * (1 + RL * GDS + S * RL * (CLOAD + CGD)) + S * CGD * RS * RL * (GM - S * CGD)
+BELOW = (1 + S * RS * (CGS + CGD)) * (1 + RL * GDS + S * RL * (CLOAD + CGD)) + S * CGD * RS * RL * (
+    GM - S * CGD
+)
 
 # Dominance: a term falls to another that differs from it by these exponents of SYMBOLS, or a sum of several.
 STEPS = {1: (0, 0, 1, -1, 0, 0, 0), 2: (1, 0, 0, 0, 0, 1, 0)}
@@ -85,7 +87,8 @@ def numbers(row: list[Terms], bias: dict[str, Fraction]) -> list[Any]:
 
     def total(terms: Terms) -> Fraction:
         return sum(
-            (int(c) * prod(v**e for v, e in zip(values, term, strict=True)) for term, c in terms.items()), Fraction(0)
+            (int(c) * prod(v**e for v, e in zip(values, term, strict=True)) for term, c in terms.items()),
+            Fraction(0),
         )
 
     return [mpf(v.numerator) / mpf(v.denominator) for v in map(total, row)]
@@ -104,7 +107,8 @@ def expand(found: list[Any], leading: Any) -> list[Any]:
     row = [leading]
     for root in found:
         row = [
-            (row[k - 1] if k else mpf(0)) - (root * row[k] if k < len(row) else mpf(0)) for k in range(len(row) + 1)
+            (row[k - 1] if k else mpf(0)) - (root * row[k] if k < len(row) else mpf(0))
+            for k in range(len(row) + 1)
         ]
     return row
 
@@ -138,7 +142,9 @@ QUANTITIES: dict[str, Callable[[list[Any], list[Any], list[Any], list[Any]], Any
     "p1": lambda above, below, zeros, poles: poles,
     "p2": lambda above, below, zeros, poles: poles,
     "z1": lambda above, below, zeros, poles: zeros,
-    "bandwidth": lambda above, below, zeros, poles: first_fall(above, below, abs(above[0] / below[0]) / mp.sqrt(2)),
+    "bandwidth": lambda above, below, zeros, poles: first_fall(
+        above, below, abs(above[0] / below[0]) / mp.sqrt(2)
+    ),
     "unity_gain_frequency": lambda above, below, zeros, poles: first_fall(above, below, mpf(1)),
 }
 
@@ -164,7 +170,9 @@ def error(name: str, made: frozenset[int], bias: tuple[tuple[str, Fraction], ...
 
 @pytest.mark.parametrize("drawn", range(3))
 def test_every_figure_at_fifty_digits(drawn: int) -> None:
-    changes = [{}, {"20 kohm": "300 ohm", '"0.7 pF"': '"3.3 pF"'}, {"5 mS": "1.1 mS", "4 kohm": "60 kohm"}][drawn]
+    changes = [{}, {"20 kohm": "300 ohm", '"0.7 pF"': '"3.3 pF"'}, {"5 mS": "1.1 mS", "4 kohm": "60 kohm"}][
+        drawn
+    ]
     text = COMMON_SOURCE
     for old, new in changes.items():
         assert old in text
@@ -180,7 +188,9 @@ def test_every_figure_at_fifty_digits(drawn: int) -> None:
             per = 2 * mp.pi if name in ("bandwidth", "unity_gain_frequency") else 1
             assert complex(account.exact or 0) == pytest.approx(complex(truth / per), rel=1e-11)
             wanted = slow_figures(4, cache(lambda made, name=name: error(name, made, bias)))
-            assert complex(account.error or 0) == pytest.approx(complex(wanted[-1, "all"]), rel=1e-9, abs=1e-12)
+            assert complex(account.error or 0) == pytest.approx(
+                complex(wanted[-1, "all"]), rel=1e-9, abs=1e-12
+            )
             for k, share in enumerate(account.assumptions):
                 for figure in ("alone", "added", "last", "share"):
                     found = share.figures[figure]

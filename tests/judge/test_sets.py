@@ -86,7 +86,9 @@ def test_with_thirteen_assumptions_the_other_figures_are_right() -> None:
 
     def error(mask: int) -> float:
         inside = [k for k in range(n) if mask >> k & 1]
-        return float(sum(weight[k] for k in inside) + sum(pairs[i, j] for i in inside for j in inside if i < j))
+        return float(
+            sum(weight[k] for k in inside) + sum(pairs[i, j] for i in inside for j in inside if i < j)
+        )
 
     plan = Plan(n)
     found = plan.figures(np.array([[error(mask)] for mask in plan.masks]))[:, 0]

@@ -12,7 +12,6 @@ from typing import Any
 import numpy as np
 import pytest
 import sympy
-
 from judged import (
     CASCODE,
     COMMON_SOURCE,
@@ -25,6 +24,7 @@ from judged import (
     slow_partner,
     stage_of,
 )
+
 from symamp.assumptions.apply import Approximator
 from symamp.assumptions.read import read_assumptions
 from symamp.circuit.stage import Stage
@@ -70,7 +70,9 @@ class Slow:
         responses = {s: engine.under([self.made[k] for k in sorted(s)]).response for s in self.sets}
         self.ratios = {s: None if r is None else ratio_of(r) for s, r in responses.items()}
         # With a dominant pole z1 comes from a numerator of its own.
-        self.own = {s: ratio_of(replace(r, form=r.first_zero)) for s, r in responses.items() if r and r.first_zero}
+        self.own = {
+            s: ratio_of(replace(r, form=r.first_zero)) for s, r in responses.items() if r and r.first_zero
+        }
 
     def figures(self, quantity: str, point: Point) -> dict[tuple[int, str], Any]:
         exact = self.ratios[frozenset()]
@@ -162,7 +164,9 @@ def points_of(stage: Stage, sampled: int, seed: int) -> Values:
     return found
 
 
-def compare(stage: Stage, quantities: list[str], monkeypatch: pytest.MonkeyPatch, sampled: int = 24) -> list[Account]:
+def compare(
+    stage: Stage, quantities: list[str], monkeypatch: pytest.MonkeyPatch, sampled: int = 24
+) -> list[Account]:
     """Without its search, every figure over the span is that of the slow way."""
     monkeypatch.setattr(module, "compass_search", lambda *_: 0)
     made = make_ledger(stage, quantities=[f"gain.{q}" for q in quantities], points=sampled, seed=5)
@@ -170,7 +174,9 @@ def compare(stage: Stage, quantities: list[str], monkeypatch: pytest.MonkeyPatch
     assert made.points == len(points)
     for account, quantity in zip(made.accounts, quantities, strict=True):
         columns = [slow.figures(quantity, point) for point in points]
-        any_complex = any(isinstance(v, complex) and abs(v.imag) > 1e-9 * abs(v) for c in columns for v in c.values())
+        any_complex = any(
+            isinstance(v, complex) and abs(v.imag) > 1e-9 * abs(v) for c in columns for v in c.values()
+        )
         wanted = {key: [plain(c[key], any_complex) for c in columns] for key in columns[0]}
         same_span(account.span, wanted[-1, "all"], quantity)
         for k, share in enumerate(account.assumptions):

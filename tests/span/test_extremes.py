@@ -71,7 +71,9 @@ def test_each_figure_is_judged_by_itself() -> None:
 
 
 def test_missing_points_are_counted_and_passed_over() -> None:
-    extremes = taken([np.array([[np.nan, 2.0], [np.nan, np.nan]]), np.array([[np.nan, -1.0], [np.nan, np.nan]])])
+    extremes = taken(
+        [np.array([[np.nan, 2.0], [np.nan, np.nan]]), np.array([[np.nan, -1.0], [np.nan, np.nan]])]
+    )
     found = extremes.result(0)
     assert found is not None
     assert (found.least, found.greatest) == (-1.0, 2.0)
