@@ -7,15 +7,11 @@ frequencies: there the coefficients, from which it has been struck, know better.
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
-
 import numpy as np
 
+from symamp.exact.graded import Coefficients
 from symamp.exact.minors import MinorGraph
 from symamp.exact.skeleton import Skeleton
-
-if TYPE_CHECKING:
-    from symamp.exact.forms import Coefficients
 
 _CANCELLING = 4.0  # sum of magnitudes over magnitude of the sum, below which a sum of powers loses no digits
 Range = tuple[int, int]

@@ -17,7 +17,6 @@ from numpy.typing import NDArray
 from symamp.exact import crossings
 from symamp.exact.asked_quantity import Quantity, is_root
 from symamp.exact.crossings import Centred, Reals
-from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.roots import roots
 from symamp.exact.simultaneous import Complexes
 
@@ -62,14 +61,6 @@ class Figures:
         """The quantity, its face taken, shape (P,): complex for poles, zeros and `at`; nan for no value."""
         with np.errstate(all="ignore"):
             return face(self._whole(quantity), quantity.face, quantity)
-
-    def why(self, quantity: Quantity, point: int = 0) -> str:
-        """Why the quantity has no value at that point, in words."""
-        return why_missing(self.at_point(point), quantity)
-
-    def remarks(self, quantity: Quantity, point: int = 0) -> list[str]:
-        """What a reader should know beside the value at that point."""
-        return remarks_beside(self.at_point(point), quantity)
 
     def set_coefficients(self, num: Reals, den: Reals) -> None:
         """Take these for a_k and b_k, where the magnitudes are those of other coefficients."""

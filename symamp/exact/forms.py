@@ -15,7 +15,7 @@ from flint import fmpq, fmpq_poly, fmpz_mpoly, fmpz_mpoly_ctx
 from symamp.circuit.stage import Symbol
 from symamp.exact.cofactors import Ratio, entry_symbols
 from symamp.exact.ends import ends_cancel
-from symamp.exact.graded import exact_in_limit, scaled_entries, walk_in_powers
+from symamp.exact.graded import Coefficients, exact_in_limit, scaled_entries, walk_in_powers
 from symamp.exact.hidden import without_hidden
 from symamp.exact.minors import MinorGraph
 from symamp.exact.polys import S, coefficients_of_s, inverted, lowest_terms, ring_of
@@ -26,15 +26,6 @@ Values = Mapping[str, np.ndarray | float]
 EXPAND_LIMIT = 40_000  # product terms up to which a response is written out
 _NESTED_BLOCK = 1024
 _PRIME = (1 << 61) - 1
-
-
-@dataclass(frozen=True)
-class Coefficients:
-    """Coefficients of σ = s/omega, ascending, at P points: `numerator` (n+1, P) and `denominator` (m+1, P)."""
-
-    numerator: np.ndarray
-    denominator: np.ndarray
-    omega: float = 1.0
 
 
 @dataclass(frozen=True)

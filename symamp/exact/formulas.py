@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from math import pi
-from typing import TYPE_CHECKING, Any
+from typing import Any, Protocol
 
 import numpy as np
 from flint import Ordering, fmpz_mpoly, fmpz_mpoly_ctx
 
+from symamp.circuit.stage import Stage
 from symamp.exact.asked_quantity import Quantity
-from symamp.exact.forms import Expanded
+from symamp.exact.forms import Expanded, Nested
 from symamp.exact.polys import (
     by_power,
     coefficients_of_s,
@@ -21,15 +22,35 @@ from symamp.exact.polys import (
 from symamp.exact.shape import QuadraticRoot, Shape, shape_of
 from symamp.exact.tape import term_dict
 
-if TYPE_CHECKING:
-    from symamp.exact.response import Response
-
 Formula = Shape | QuadraticRoot
 PolyRatio = tuple[fmpz_mpoly, fmpz_mpoly]
+
+
+class Formed(Protocol):
+    """What formulas ask of a response."""
+
+    @property
+    def stage(self) -> Stage: ...
+    @property
+    def form(self) -> Expanded | Nested: ...
+    @property
+    def apart(self) -> bool: ...
+    @property
+    def single_pole(self) -> bool: ...
+    @property
+    def first_zero(self) -> Expanded | Nested | None: ...
+    @property
+    def missing(self) -> tuple[str, ...]: ...
+    @property
+    def bias_values(self) -> dict[str, float]: ...
+    @property
+    def negative_ok(self) -> frozenset[str]: ...
+
+
 _FACTOR_LIMIT = 2000  # terms above which a polynomial in s is not factored in search of its roots
 
 
-def formula_of(response: Response, quantity: Quantity) -> Formula | None:
+def formula_of(response: Formed, quantity: Quantity) -> Formula | None:
     """The formula of a quantity (its face left aside only where there is none), or None."""
     if quantity.face is not None:
         return None
@@ -43,7 +64,7 @@ def formula_of(response: Response, quantity: Quantity) -> Formula | None:
     return None
 
 
-def _one_pole_band(response: Response, quantity: Quantity) -> Formula | None:
+def _one_pole_band(response: Formed, quantity: Quantity) -> Formula | None:
     """b0/(2π·b1), or |a0|/(2π·b1), of a response with one pole and no zero whose coefficients have one sign each."""
     form = _levels(response)
     if form is None or len(form.denominator) != 2 or len(form.numerator) != 1:
@@ -66,7 +87,7 @@ def _sign(polynomial: fmpz_mpoly) -> int:
     return signs.pop() if len(signs) == 1 else 0
 
 
-def rational_of(response: Response, quantity: Quantity) -> PolyRatio | None:
+def rational_of(response: Formed, quantity: Quantity) -> PolyRatio | None:
     """numerator/denominator in lowest terms of a quantity that is rational in the symbols, or None."""
     form = _levels(response)
     if form is None:
@@ -82,7 +103,7 @@ def rational_of(response: Response, quantity: Quantity) -> PolyRatio | None:
     return None if ratio is None else lowest_terms(*ratio)
 
 
-def _levels(response: Response) -> Expanded | None:
+def _levels(response: Formed) -> Expanded | None:
     """The written-out form from which all but the roots come."""
     form = response.form
     if not isinstance(form, Expanded):
@@ -105,7 +126,7 @@ def _coefficient_ratio(form: Expanded, quantity: Quantity) -> PolyRatio | None:
     return (row[index], unit) if index < len(row) else (zero, one)
 
 
-def _root_coefficients(response: Response, quantity: Quantity) -> tuple[fmpz_mpoly, ...]:
+def _root_coefficients(response: Formed, quantity: Quantity) -> tuple[fmpz_mpoly, ...]:
     form = response.form
     if quantity.name == "z" and response.first_zero is not None:
         form = response.first_zero
@@ -113,7 +134,7 @@ def _root_coefficients(response: Response, quantity: Quantity) -> tuple[fmpz_mpo
     return form.denominator if quantity.name == "p" else form.numerator
 
 
-def _rational_root(response: Response, quantity: Quantity) -> PolyRatio | None:
+def _rational_root(response: Formed, quantity: Quantity) -> PolyRatio | None:
     index = quantity.index or 1
     coefficients = _root_coefficients(response, quantity)
     if len(coefficients) <= index:
@@ -127,7 +148,7 @@ def _rational_root(response: Response, quantity: Quantity) -> PolyRatio | None:
     return -factor[0][0], factor[0][1]
 
 
-def _apart_index(response: Response, coefficients: tuple[fmpz_mpoly, ...], index: int) -> int | None:
+def _apart_index(response: Formed, coefficients: tuple[fmpz_mpoly, ...], index: int) -> int | None:
     """Which ratio of neighbours is the index-th by magnitude at the bias point (in order where there is none)."""
     if response.missing:
         return index
@@ -140,7 +161,7 @@ def _apart_index(response: Response, coefficients: tuple[fmpz_mpoly, ...], index
     return sizes[index - 1][1] if index <= len(sizes) else None
 
 
-def _quadratic_root(response: Response, quantity: Quantity) -> QuadraticRoot | None:
+def _quadratic_root(response: Formed, quantity: Quantity) -> QuadraticRoot | None:
     index = quantity.index or 1
     coefficients = _root_coefficients(response, quantity)
     if len(coefficients) <= index or response.apart:
@@ -177,7 +198,7 @@ def _quadratic_values(a: float, b: float, c: float) -> tuple[complex, complex]:
 
 
 def _factor_of_root(
-    response: Response, coefficients: tuple[fmpz_mpoly, ...], index: int
+    response: Formed, coefficients: tuple[fmpz_mpoly, ...], index: int
 ) -> tuple[tuple[fmpz_mpoly, ...], int] | None:
     """The irreducible factor in s that has the index-th root, and which of its roots that is (from 0)."""
     factors = factors_in_s(coefficients)
@@ -211,7 +232,7 @@ def factors_in_s(coefficients: tuple[fmpz_mpoly, ...]) -> list[tuple[fmpz_mpoly,
     return found
 
 
-def _value(polynomial: fmpz_mpoly, response: Response) -> Any:
+def _value(polynomial: fmpz_mpoly, response: Formed) -> Any:
     total = 0.0
     for monomial, coefficient in term_dict(polynomial).items():
         product = float(coefficient)

@@ -6,6 +6,7 @@ Values are arrays of shape (powers of σ, powers of t, points); only two levels 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
 
@@ -17,6 +18,15 @@ from symamp.exact.minors import MinorGraph
 PRIME = (1 << 61) - 1
 # An entry as {(power of σ, power of t): number or array over points}.
 Powers = dict[tuple[int, int], Any]
+
+
+@dataclass(frozen=True)
+class Coefficients:
+    """Coefficients of σ = s/omega, ascending, at P points: `numerator` (n+1, P) and `denominator` (m+1, P)."""
+
+    numerator: np.ndarray
+    denominator: np.ndarray
+    omega: float = 1.0
 
 
 def row_shifts(graph: MinorGraph, limits: Mapping[str, int]) -> dict[int, int]:

@@ -3,21 +3,19 @@
 from __future__ import annotations
 
 import math
-from typing import TYPE_CHECKING
 
 import numpy as np
 
 from symamp.exact.asked_quantity import Quantity
+from symamp.exact.figures import Figures
 from symamp.values import show_value
-
-if TYPE_CHECKING:
-    from symamp.exact.figures import Figures
 
 _THREE_DB = 10 ** (3 / 20)
 
 
-def why_missing(here: Figures, quantity: Quantity) -> str:
-    """Why the quantity of this response, at one bias point, has no value; "" where it has one."""
+def why_missing(figures: Figures, quantity: Quantity, point: int = 0) -> str:
+    """Why the quantity has no value at that bias point, in words; "" where it has one."""
+    here = figures.at_point(point)
     if not np.isnan(here.value(quantity)[0]):
         return ""
     if not (np.isfinite(here.num).all() and np.isfinite(here.den).all()):
@@ -32,8 +30,9 @@ def why_missing(here: Figures, quantity: Quantity) -> str:
         return _WORDS[quantity.name](here, quantity)
 
 
-def remarks_beside(here: Figures, quantity: Quantity) -> list[str]:
-    """Remarks beside the quantity of this response at one bias point."""
+def remarks_beside(figures: Figures, quantity: Quantity, point: int = 0) -> list[str]:
+    """What a reader should know beside the quantity at that bias point."""
+    here = figures.at_point(point)
     with np.errstate(all="ignore"):
         if quantity.name in ("bandwidth", "gain_bandwidth"):
             return _peaking(here)

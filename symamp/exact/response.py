@@ -19,6 +19,7 @@ from symamp.exact.ends import with_sure_ends
 from symamp.exact.figures import Figures
 from symamp.exact.forms import Coefficients, Expanded, Nested, Values
 from symamp.exact.formulas import Formula, formula_of
+from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.shape import polynomial_latex, polynomial_sympy
 
 
@@ -222,9 +223,9 @@ class Response:
             figures = self.zero_figures(self.bias_values, 1) or figures
         value = figures.value(asked)[0]
         if np.isnan(value):
-            return QuantityValue(asked.text, None, unit, figures.why(asked), shape, (), self.negative_ok)
+            return QuantityValue(asked.text, None, unit, why_missing(figures, asked), shape, (), self.negative_ok)
         plain = complex(value) if np.iscomplexobj(value) else float(value)
-        remarks = tuple(figures.remarks(asked))
+        remarks = tuple(remarks_beside(figures, asked))
         return QuantityValue(asked.text, plain, unit, None, shape, remarks, self.negative_ok)
 
     def _repr_latex_(self) -> str | None:

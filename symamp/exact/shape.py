@@ -15,27 +15,13 @@ from typing import Any
 from flint import fmpz_mpoly_ctx
 
 from symamp.exact import writing
-
-# (integer coefficient, ((symbol, exponent), …)), symbols in the order in which they are written
-Term = tuple[int, tuple[tuple[str, int], ...]]
+from symamp.exact.terms import Factor, Term
 
 _FlintTerm = tuple[tuple[int, ...], int]  # (exponents in the order of the context, coefficient)
 
 VARIABLE = "s"  # the complex frequency; written last, as in b0 + b1*s
 _CANCELLED = 1e-12  # a sum smaller than this beside its largest term is rounding, and has no sign
 FACTOR_LIMIT = 400  # terms; a longer polynomial has its common monomial taken out, and is not factored
-
-
-@dataclass(frozen=True)
-class Factor:
-    """A symbol, or a sum of terms, raised to a positive power."""
-
-    base: str | tuple[Term, ...]
-    power: int = 1
-
-    @property
-    def is_sum(self) -> bool:
-        return not isinstance(self.base, str)
 
 
 @dataclass(frozen=True)

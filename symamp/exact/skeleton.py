@@ -9,17 +9,29 @@ from __future__ import annotations
 import random
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import Any, Protocol
 
 from flint import Ordering, nmod, nmod_mpoly, nmod_mpoly_ctx, nmod_poly
 
 from symamp.exact.cofactors import entry_symbols
 from symamp.exact.graded import PRIME, row_shifts
-
-if TYPE_CHECKING:
-    from symamp.exact.forms import Nested
+from symamp.exact.minors import MinorGraph
 
 Powers = tuple[int, ...]
+
+
+class GraphForm(Protocol):
+    """What is asked of a nested form."""
+
+    @property
+    def graph(self) -> MinorGraph: ...
+    @property
+    def symbols(self) -> frozenset[str]: ...
+    @property
+    def limits(self) -> Mapping[str, int]: ...
+    @property
+    def valuation(self) -> tuple[int, int]: ...
+    def full_values(self, values: Mapping[str, Any]) -> dict[str, Any]: ...
 
 
 @dataclass(frozen=True)
@@ -36,7 +48,7 @@ class Skeleton:
     powers: tuple[Powers, Powers]
 
 
-def skeleton_of(form: Nested) -> Skeleton:
+def skeleton_of(form: GraphForm) -> Skeleton:
     """The skeleton of a nested form, without regard to the powers that it keeps."""
     above, below = images_with(form, random_values(form, 11))
     degrees = above.degree(), below.degree()
@@ -51,7 +63,7 @@ def _powers(polynomial: nmod_poly) -> Powers:
     return tuple(k for k in range(polynomial.degree() + 1) if int(polynomial[k]))
 
 
-def random_values(form: Nested, seed: int, moved: Iterable[str] = ()) -> dict[str, int]:
+def random_values(form: GraphForm, seed: int, moved: Iterable[str] = ()) -> dict[str, int]:
     """A random value modulo the prime for every symbol; computed ones follow by their rules.
 
     Symbols in `moved` get another value than they have without.
@@ -63,7 +75,7 @@ def random_values(form: Nested, seed: int, moved: Iterable[str] = ()) -> dict[st
     return {name: int(value) for name, value in form.full_values(values).items()}
 
 
-def images_with(form: Nested, values: Mapping[str, int]) -> tuple[nmod_poly, nmod_poly]:
+def images_with(form: GraphForm, values: Mapping[str, int]) -> tuple[nmod_poly, nmod_poly]:
     """Numerator and denominator in s at values modulo the prime, each at its power of t, common factors and all."""
     graph = form.graph
     shifts = row_shifts(graph, form.limits)

@@ -6,12 +6,10 @@ Imported only where a SymPy expression is asked for, because SymPy takes half a 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import TYPE_CHECKING
 
 import sympy
 
-if TYPE_CHECKING:
-    from symamp.exact.shape import Factor, QuadraticRoot, Shape, Term
+from symamp.exact.terms import Factor, Product, Root, Term
 
 
 def symbol_sympy(name: str, negative_ok: frozenset[str] = frozenset()) -> sympy.Symbol:
@@ -23,7 +21,7 @@ def symbol_sympy(name: str, negative_ok: frozenset[str] = frozenset()) -> sympy.
     return sympy.Symbol(name, real=True) if name in negative_ok else sympy.Symbol(name, positive=True)
 
 
-def shape_sympy(shape: Shape, negative_ok: frozenset[str]) -> sympy.Expr:
+def shape_sympy(shape: Product, negative_ok: frozenset[str]) -> sympy.Expr:
     """coefficient · numerator / denominator, the factors as they are."""
     above = [_factor(factor, 1, negative_ok) for factor in shape.numerator]
     below = [_factor(factor, -1, negative_ok) for factor in shape.denominator]
@@ -31,7 +29,7 @@ def shape_sympy(shape: Shape, negative_ok: frozenset[str]) -> sympy.Expr:
     return sympy.Mul(ratio, *above, *below)
 
 
-def root_sympy(root: QuadraticRoot, negative_ok: frozenset[str]) -> sympy.Expr:
+def root_sympy(root: Root, negative_ok: frozenset[str]) -> sympy.Expr:
     """(−b ± sqrt(b² − 4·a·c))/(2·a)."""
     a, b, c = (shape_sympy(each, negative_ok) for each in (root.a, root.b, root.c))
     return (-b + root.branch * sympy.sqrt(b**2 - 4 * a * c)) / (2 * a)

@@ -8,12 +8,9 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
 
 from symamp.exact.latex_names import latex_name
-
-if TYPE_CHECKING:
-    from symamp.exact.shape import Factor, QuadraticRoot, Shape, Term
+from symamp.exact.terms import Factor, Product, Root, Term
 
 
 @dataclass(frozen=True)
@@ -101,7 +98,7 @@ def factor_written(factor: Factor, notation: Notation) -> str:
     return _powered(f"({sum_written(factor.base, notation)})", factor.power, notation)
 
 
-def parts_written(shape: Shape, notation: Notation) -> tuple[Written, Written | None]:
+def parts_written(shape: Product, notation: Notation) -> tuple[Written, Written | None]:
     """What stands above and below the bar, without the sign; no second part where it is 1."""
     above = product_written(abs(shape.coefficient.numerator), shape.numerator, notation)
     if shape.coefficient.denominator == 1 and not shape.denominator:
@@ -109,7 +106,7 @@ def parts_written(shape: Shape, notation: Notation) -> tuple[Written, Written | 
     return above, product_written(shape.coefficient.denominator, shape.denominator, notation)
 
 
-def shape_written(shape: Shape, notation: Notation) -> str:
+def shape_written(shape: Product, notation: Notation) -> str:
     """The shape on one line."""
     piece = _unsigned(shape, notation)
     if shape.coefficient < 0:
@@ -117,7 +114,7 @@ def shape_written(shape: Shape, notation: Notation) -> str:
     return piece.text
 
 
-def root_parts(root: QuadraticRoot, notation: Notation) -> tuple[Written, Written | None]:
+def root_parts(root: Root, notation: Notation) -> tuple[Written, Written | None]:
     """What stands above and below the bar of a quadratic root; no second part where it is 1."""
     square, rest = root.under_root
     inside = _shapes_sum([square, rest], notation)
@@ -135,18 +132,18 @@ def root_parts(root: QuadraticRoot, notation: Notation) -> tuple[Written, Writte
     return above, None if below.text == "1" else below
 
 
-def root_written(root: QuadraticRoot, notation: Notation) -> str:
+def root_written(root: Root, notation: Notation) -> str:
     """The quadratic root on one line."""
     above, below = root_parts(root, notation)
     return above.text if below is None else notation.fraction(above, below)
 
 
-def _unsigned(shape: Shape, notation: Notation) -> Written:
+def _unsigned(shape: Product, notation: Notation) -> Written:
     above, below = parts_written(shape, notation)
     return above if below is None else Written(notation.fraction(above, below), PRODUCT)
 
 
-def _shapes_sum(shapes: Sequence[Shape], notation: Notation) -> str:
+def _shapes_sum(shapes: Sequence[Product], notation: Notation) -> str:
     """The sum of shapes, zeros left out; empty if nothing is left."""
     text = ""
     for shape in shapes:

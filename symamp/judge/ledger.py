@@ -15,6 +15,7 @@ from symamp.errors import InputError, StageError
 from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root, parse_quantity, unit_of
 from symamp.exact.derive import derive
 from symamp.exact.formulas import Formula, formula_of
+from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.response import Response
 from symamp.judge.error_formula import ErrorFormula, error_formula
 from symamp.judge.errors_at import ErrorTable
@@ -246,7 +247,7 @@ def _account(
         new=new,
         assumptions=_shares(whys, figures, errors[:, 0], span),
         span=span[0] if span else None,
-        remarks=tuple(exact.bias_figures.remarks(quantity)) if value_e is not None else (),
+        remarks=tuple(remarks_beside(exact.bias_figures, quantity)) if value_e is not None else (),
     )
 
 
@@ -270,7 +271,7 @@ def _why(table: ErrorTable, quantity: Quantity, values: np.ndarray, lost: Sequen
     """Why there is no error at the bias point, or ""."""
     exact, full = table.exact, table.approximations[table.plan.masks[-1]]
     if np.isnan(values[0, 0]):
-        return exact.bias_figures.why(quantity)
+        return why_missing(exact.bias_figures, quantity)
     if full.response is None:
         return full.why
     if np.isnan(values[-1, 0]):
@@ -279,7 +280,7 @@ def _why(table: ErrorTable, quantity: Quantity, values: np.ndarray, lost: Sequen
             hz = next((root.hz for root in lost if root.name == mine), None)
             where = "" if hz is None else f", at {show_value(hz, 'Hz')},"
             return f"{mine}{where} is lost: it has no partner"
-        return full.response.bias_figures.why(quantity)
+        return why_missing(full.response.bias_figures, quantity)
     if values[0, 0] == 0:
         return "the exact value is 0, so there is no relative error"
     return ""
@@ -347,7 +348,7 @@ class _Whys:
     def of(self, mask: int | None) -> str:
         """Why there is no error under the smallest set that a figure needs; the set is named."""
         if np.isnan(self.values[0]) or mask is None:
-            why = self.table.exact.bias_figures.why(self.quantity)
+            why = why_missing(self.table.exact.bias_figures, self.quantity)
             return f"the exact {self.quantity.text} has no value" + (f": {why}" if why else "")
         listed = " and ".join(repr(name) for name in names_of(mask, self.names))
         if not np.isnan(self.values[self.table.plan.masks.index(mask)]):
@@ -360,7 +361,7 @@ class _Whys:
         approximation = self.table.approximations[mask]
         if approximation.response is None:
             return approximation.why
-        return approximation.response.bias_figures.why(self.quantity)
+        return why_missing(approximation.response.bias_figures, self.quantity)
 
 
 def _number(value: Any) -> float | complex | None:
