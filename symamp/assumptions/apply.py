@@ -14,7 +14,7 @@ from symamp.assumptions.record import Assumption, Miller, Pair
 from symamp.assumptions.rewrite import symbol_value
 from symamp.assumptions.roots import step_on_roots
 from symamp.assumptions.written import WrittenEngine
-from symamp.errors import StageError
+from symamp.errors import StageError, TooLargeError
 from symamp.exact.forms import Expanded, Nested
 from symamp.exact.response import Response
 
@@ -81,7 +81,10 @@ class Approximator:
         if dominance is not None:
             if isinstance(form, Nested):
                 return Approximation((), None, self._not_written(), remarks=_once(remarks))
-            dominated = self._dominate(form, cone_key, dominance)
+            try:
+                dominated = self._dominate(form, cone_key, dominance)
+            except TooLargeError as error:
+                return Approximation((), None, str(error), remarks=_once(remarks))
             form = dominated.form
         response, why, more = self._on_roots(ask, form)
         return Approximation((), response, why, dominated, _once([*remarks, *more]))

@@ -16,7 +16,8 @@ from symamp.errors import TooLargeError
 
 Vector = tuple[int, ...]
 Sources = Mapping[Vector, frozenset[str]]
-_RAY_LIMIT = 20_000
+_RAY_LIMIT = 3_000
+_BLOCK = 1 << 21
 _VECTOR_LIMIT = 20_000
 
 
@@ -46,12 +47,43 @@ def without_columns(vectors: Sources, columns: Iterable[int]) -> dict[Vector, fr
 
 
 def cone_of(generators: Sequence[Vector]) -> Cone:
-    """The cone of integer vectors, none of them zero. Raises TooLargeError."""
-    dual = _Dual(len(generators[0]), len(generators))
-    for index, generator in enumerate(generators):
-        dual.cut(index, np.array(generator, dtype=object))
-    faces, planes = (tuple(sorted(tuple(int(x) for x in row) for row in rows)) for rows in (dual.rays, dual.lines))
-    return Cone(faces, planes)
+    """The cone of integer vectors, none of them zero. Raises TooLargeError.
+
+    Vectors that share no coordinate with others, even by way of third ones, are turned by themselves.
+    """
+    size = len(generators[0])
+    faces: list[Vector] = []
+    planes: list[Vector] = []
+    apart = _components(generators)
+    for columns, own in apart:
+        dual = _Dual(len(columns), len(own))
+        for index, generator in enumerate(own):
+            dual.cut(index, np.array([generator[k] for k in columns], dtype=object))
+        faces += [_spread(row, columns, size) for row in dual.rays]
+        planes += [_spread(row, columns, size) for row in dual.lines]
+    used = {k for columns, _ in apart for k in columns}
+    planes += [tuple(int(i == k) for i in range(size)) for k in range(size) if k not in used]
+    return Cone(tuple(sorted(faces)), tuple(sorted(planes)))
+
+
+def _components(generators: Sequence[Vector]) -> list[tuple[list[int], list[Vector]]]:
+    """Groups of vectors that are joined by coordinates, each with its coordinates."""
+    groups: list[tuple[set[int], list[Vector]]] = []
+    for generator in generators:
+        columns, own = {k for k, x in enumerate(generator) if x}, [generator]
+        apart = []
+        for group in groups:
+            if columns & group[0]:
+                columns, own = columns | group[0], group[1] + own
+            else:
+                apart.append(group)
+        groups = [*apart, (columns, own)]
+    return [(sorted(columns), own) for columns, own in groups]
+
+
+def _spread(row: np.ndarray, columns: Sequence[int], size: int) -> Vector:
+    place = dict(zip(columns, (int(x) for x in row), strict=True))
+    return tuple(place.get(k, 0) for k in range(size))
 
 
 def _work(vectors: Iterable[Vector], column: int) -> int:
@@ -132,12 +164,14 @@ class _Dual:
         shared_count = small[ups] @ small[downs].T
         # An edge lies in as many planes as the pointed part has dimensions, less two.
         enough = np.argwhere(shared_count >= self.size - len(self.lines) - 2)
-        found = []
-        for i, k in enough:
-            up, down = int(ups[i]), int(downs[k])
-            shared = tight[up] & tight[down]
-            if np.count_nonzero(small @ shared.astype(np.float32) >= shared_count[i, k]) == 2:
-                found.append((up, down))
+        found: list[tuple[int, int]] = []
+        step = max(1, _BLOCK // max(1, len(small)))
+        for start in range(0, len(enough), step):
+            rows, columns = enough[start : start + step].T
+            shared = small[ups[rows]] * small[downs[columns]]
+            on_all = (small @ shared.T >= shared_count[rows, columns]).sum(axis=0)
+            pairs = zip(ups[rows[on_all == 2]], downs[columns[on_all == 2]], strict=True)
+            found.extend((int(up), int(down)) for up, down in pairs)
         return found
 
 

@@ -51,7 +51,7 @@ class TermTable:
                 yield f"{where} s^{power}", terms
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Dominated:
     """A form after step 4. `falls` hold, for each coefficient in turn, where each of its terms falls to."""
 

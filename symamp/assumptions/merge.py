@@ -63,7 +63,7 @@ def pooled(stage: Stage, assumptions: Iterable[Assumption]) -> Pooled:
         any(a.dominant_pole for a in listed),
         any(a.poles_far_apart for a in listed),
         next((a.band for a in listed if a.band is not None), None),
-        tuple(dict.fromkeys(r for a in listed for r in a.remarks)),
+        tuple(dict.fromkeys([*(r for a in listed for r in a.remarks), *_formula_words(replace, orders)])),
     )
 
 
@@ -84,6 +84,10 @@ def trimmed(ask: Pooled, stage: Stage, held: Iterable[str]) -> Pooled:
         replace,
         {name: order for name, order in sorted(ask.orders.items()) if name in present},
     )
+
+
+def _formula_words(replace: Mapping[str, Node], orders: Mapping[str, int]) -> list[str]:
+    return [f"{name} has a formula, and goes where that goes" for name in sorted(replace) if name in orders]
 
 
 _CLASH: dict[str, Callable[[str], str]] = {

@@ -25,7 +25,8 @@ from symamp.assumptions.rewrite import (
 from symamp.circuit.kinds import CAPACITANCE, CONDUCTANCE
 from symamp.circuit.stage import Asked, Stage
 from symamp.exact.cofactors import Ratio, ratio_of
-from symamp.exact.forms import Expanded, Nested, expanded_of, vanishes, write_out
+from symamp.exact.forms import Expanded, Nested, expanded_of, write_out
+from symamp.exact.modular import vanishes
 from symamp.exact.polys import by_power, from_coefficients, into_ring, least_exponents, lowest_terms, ring_of
 from symamp.exact.response import Response
 from symamp.exact.system import build_system, without_symbols

@@ -10,11 +10,10 @@ from symamp.circuit.stage import Asked, Stage
 from symamp.circuit.stagefile import locate
 from symamp.errors import NetworkError, StageError
 from symamp.exact.cofactors import Ratio, entry_symbols, ratio_of
-from symamp.exact.forms import EXPAND_LIMIT, Expanded, Nested, residue, vanishes, write_out
+from symamp.exact.forms import EXPAND_LIMIT, Expanded, Nested, write_out
+from symamp.exact.modular import PRIME, residue, vanishes
 from symamp.exact.response import Response
 from symamp.exact.system import System, build_system
-
-_PRIME = (1 << 61) - 1
 
 
 def derive(stage: Stage, asked: Asked) -> Response:
@@ -74,8 +73,8 @@ def undetermined(system: System) -> list[str]:
     Values are random modulo a prime, so the answer is that of almost all values of the symbols.
     """
     draw = random.Random(7)
-    values = {name: draw.randrange(2, _PRIME) for name in system.symbols}
-    s = draw.randrange(2, _PRIME)
+    values = {name: draw.randrange(2, PRIME) for name in system.symbols}
+    s = draw.randrange(2, PRIME)
     rows = [{c: residue(entry, values, s) for c, entry in row.items()} for row in system.rows]
     pivots: dict[int, dict[int, int]] = {}
     for row in rows:
@@ -83,12 +82,12 @@ def undetermined(system: System) -> list[str]:
         while current:
             lead = min(current)
             if lead not in pivots:
-                inverse = pow(current[lead], -1, _PRIME)
-                pivots[lead] = {c: v * inverse % _PRIME for c, v in current.items()}
+                inverse = pow(current[lead], -1, PRIME)
+                pivots[lead] = {c: v * inverse % PRIME for c, v in current.items()}
                 break
             factor = current[lead]
             for c, v in pivots[lead].items():
-                reduced = (current.get(c, 0) - factor * v) % _PRIME
+                reduced = (current.get(c, 0) - factor * v) % PRIME
                 if reduced:
                     current[c] = reduced
                 else:
@@ -96,8 +95,8 @@ def undetermined(system: System) -> list[str]:
     free = [c for c in range(system.size) if c not in pivots]
     if not free:
         return []
-    solution = {c: draw.randrange(1, _PRIME) for c in free}
+    solution = {c: draw.randrange(1, PRIME) for c in free}
     for lead in sorted(pivots, reverse=True):
-        solution[lead] = -sum(v * solution[c] for c, v in pivots[lead].items() if c != lead) % _PRIME
+        solution[lead] = -sum(v * solution[c] for c, v in pivots[lead].items() if c != lead) % PRIME
     names = system.column_names()
     return [names[c] for c in range(system.size) if solution[c]]

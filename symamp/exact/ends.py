@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from symamp.exact.graded import Coefficients
+from symamp.exact.graded import Coefficients, horner
 from symamp.exact.minors import MinorGraph
 from symamp.exact.skeleton import Skeleton
 
@@ -45,17 +45,10 @@ def with_sure_ends(found: np.ndarray, given: Coefficients, s: np.ndarray) -> np.
     """`found`, shape (P,), replaced by the ratio of polynomials wherever their powers do not cancel at s."""
     sigma = s / given.omega
     with np.errstate(all="ignore"):
-        sums = [_horner(side, sigma) for side in (given.numerator, given.denominator)]
-        sizes = [_horner(np.abs(side), np.abs(sigma)) for side in (given.numerator, given.denominator)]
+        sums = [horner(side, sigma) for side in (given.numerator, given.denominator)]
+        sizes = [horner(np.abs(side), np.abs(sigma)) for side in (given.numerator, given.denominator)]
         ratio = sums[0] / sums[1]
         sure = np.isfinite(ratio)
         for total, size in zip(sums, sizes, strict=True):
             sure &= np.abs(size) <= _CANCELLING * np.abs(total)
     return np.where(sure, ratio, found)
-
-
-def _horner(coefficients: np.ndarray, sigma: np.ndarray) -> np.ndarray:
-    total = np.zeros(sigma.shape, dtype=complex)
-    for row in coefficients[::-1]:
-        total = total * sigma + row
-    return total

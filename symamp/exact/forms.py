@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import random
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from fractions import Fraction
@@ -25,7 +24,6 @@ from symamp.exact.tape import Tape, term_dict
 Values = Mapping[str, np.ndarray | float]
 EXPAND_LIMIT = 40_000  # product terms up to which a response is written out
 _NESTED_BLOCK = 1024
-_PRIME = (1 << 61) - 1
 
 
 @dataclass(frozen=True)
@@ -261,49 +259,3 @@ def raw_polynomials(
     numerator, denominator = ratio.graph.walk(entries, context.constant(1), context.constant(0))
     numerator, denominator = inverted(numerator, denominator, inverse)
     return numerator * ratio.scale.numerator, denominator * ratio.scale.denominator
-
-
-def vanishes(graph: MinorGraph) -> tuple[bool, bool]:
-    """Whether numerator and denominator are identically zero, by random values modulo a prime.
-
-    A non-zero polynomial of degree d vanishes at a random point with probability d/2^61 at most
-    (Schwartz 1980, Zippel 1979).
-    """
-    draw = random.Random(61)
-    values = {name: draw.randrange(2, _PRIME) for name in entry_symbols(graph)}
-    s = draw.randrange(2, _PRIME)
-    entries = [residue(entry, values, s) for entry in graph.entries]
-    numerator, denominator = graph.walk([_Mod(e) for e in entries], _Mod(1), _Mod(0))
-    return numerator.value == 0, denominator.value == 0
-
-
-def residue(entry: Any, values: Mapping[str, int], s: int) -> int:
-    """An entry's value modulo the prime."""
-    total = 0
-    for coefficient, symbol, power, s_power in entry:
-        value = coefficient * (s if s_power else 1)
-        if symbol is not None:
-            value *= values[symbol] if power > 0 else pow(values[symbol], -1, _PRIME)
-        total += value
-    return total % _PRIME
-
-
-class _Mod:
-    """An integer modulo the prime, with as much arithmetic as the graph asks for."""
-
-    __slots__ = ("value",)
-
-    def __init__(self, value: int) -> None:
-        self.value = value % _PRIME
-
-    def __add__(self, other: _Mod) -> _Mod:
-        return _Mod(self.value + other.value)
-
-    def __sub__(self, other: _Mod) -> _Mod:
-        return _Mod(self.value - other.value)
-
-    def __neg__(self) -> _Mod:
-        return _Mod(-self.value)
-
-    def __mul__(self, other: _Mod | int) -> _Mod:
-        return _Mod(self.value * (other if isinstance(other, int) else other.value))

@@ -14,8 +14,8 @@ import numpy as np
 from flint import Ordering, fmpq, fmpq_mpoly_ctx, fmpq_poly, nmod_poly
 
 from symamp.exact.minors import MinorGraph
+from symamp.exact.modular import PRIME
 
-PRIME = (1 << 61) - 1
 # An entry as {(power of σ, power of t): number or array over points}.
 Powers = dict[tuple[int, int], Any]
 
@@ -27,6 +27,14 @@ class Coefficients:
     numerator: np.ndarray
     denominator: np.ndarray
     omega: float = 1.0
+
+
+def horner(coefficients: np.ndarray, sigma: np.ndarray) -> np.ndarray:
+    """Polynomials with coefficients (k, P) or (k, 1), ascending, at complex sigma (P,)."""
+    total = np.zeros(sigma.shape, dtype=complex)
+    for row in coefficients[::-1]:
+        total = total * sigma + row
+    return total
 
 
 def row_shifts(graph: MinorGraph, limits: Mapping[str, int]) -> dict[int, int]:

@@ -10,9 +10,9 @@ from flint import Ordering, fmpz_mpoly, fmpz_mpoly_ctx, nmod_poly
 
 from symamp.circuit import kinds
 from symamp.circuit.stage import Symbol
+from symamp.exact.modular import PRIME
 
 S = "s"
-_PRIME = (1 << 61) - 1
 _GCD_AT_ONCE = 5000  # terms up to which a greatest common divisor is sought without asking whether there may be one
 
 # What an analog designer writes first: transconductances, then conductances, resistances, reactances.
@@ -183,7 +183,7 @@ def _may_share(p: fmpz_mpoly, q: fmpz_mpoly) -> bool:
         return False
     draw = random.Random(20)
     context = p.context()
-    values = [draw.randrange(2, _PRIME) for _ in range(context.nvars())]
+    values = [draw.randrange(2, PRIME) for _ in range(context.nvars())]
     top_p, top_q = p.degrees(), q.degrees()
     rows_p, rows_q = _residues(p, values), _residues(q, values)
     for i in range(context.nvars()):
@@ -200,22 +200,22 @@ def _may_share(p: fmpz_mpoly, q: fmpz_mpoly) -> bool:
 def _residues(polynomial: fmpz_mpoly, values: list[int]) -> list[tuple[tuple[int, ...], int]]:
     rows = []
     for exponents, coefficient in polynomial.terms():
-        residue = int(coefficient) % _PRIME
+        residue = int(coefficient) % PRIME
         for value, exponent in zip(values, exponents, strict=True):
             for _ in range(int(exponent)):
-                residue = residue * value % _PRIME
+                residue = residue * value % PRIME
         rows.append((tuple(int(e) for e in exponents), residue))
     return rows
 
 
 def _image(rows: list[tuple[tuple[int, ...], int]], index: int, value: int) -> nmod_poly:
     """The image in generator `index` from residues in which it stood at `value`."""
-    inverse = pow(value, -1, _PRIME)
+    inverse = pow(value, -1, PRIME)
     powers = [1]
     coefficients: dict[int, int] = {}
     for exponents, residue in rows:
         while len(powers) <= exponents[index]:
-            powers.append(powers[-1] * inverse % _PRIME)
+            powers.append(powers[-1] * inverse % PRIME)
         e = exponents[index]
-        coefficients[e] = (coefficients.get(e, 0) + residue * powers[e]) % _PRIME
-    return nmod_poly([coefficients.get(e, 0) for e in range(max(coefficients, default=0) + 1)], _PRIME)
+        coefficients[e] = (coefficients.get(e, 0) + residue * powers[e]) % PRIME
+    return nmod_poly([coefficients.get(e, 0) for e in range(max(coefficients, default=0) + 1)], PRIME)

@@ -19,6 +19,7 @@ from symamp.exact.ends import with_sure_ends
 from symamp.exact.figures import Figures
 from symamp.exact.forms import Coefficients, Expanded, Nested, Values
 from symamp.exact.formulas import Formula, formula_of
+from symamp.exact.graded import horner
 from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.shape import polynomial_latex, polynomial_sympy
 
@@ -153,8 +154,8 @@ class Response:
             return with_sure_ends(found, self.form.coefficients(values, points), s)
         given = self.coefficients(values, points)
         sigma = s / given.omega
-        top = _horner(given.numerator, sigma)
-        return np.asarray(top / _horner(given.denominator, sigma))
+        top = horner(given.numerator, sigma)
+        return np.asarray(top / horner(given.denominator, sigma))
 
     def coefficients(self, values: Values, points: int) -> Coefficients:
         """Coefficients of s/omega at `points` bias points.
@@ -256,13 +257,6 @@ class _ExactlyRooted(Figures):
     @cached_property
     def poles(self) -> np.ndarray:
         return _exact_roots(self._exactly[1])
-
-
-def _horner(coefficients: np.ndarray, sigma: np.ndarray) -> np.ndarray:
-    total = np.zeros(sigma.shape, dtype=complex)
-    for row in coefficients[::-1]:
-        total = total * sigma + row
-    return total
 
 
 def _ratios(coefficients: np.ndarray) -> np.ndarray:

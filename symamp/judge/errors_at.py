@@ -14,7 +14,7 @@ from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_roo
 from symamp.exact.figures import Figures, face
 from symamp.exact.forms import Coefficients, Expanded
 from symamp.exact.response import Response
-from symamp.exact.tape import Tape
+from symamp.exact.tape import Tape, term_dict
 from symamp.judge.pairing import partners
 from symamp.judge.sets import Plan
 from symamp.judge.stacking import StackedFigures, stacked
@@ -36,11 +36,7 @@ class Bank:
 
     def place(self, polynomial: Any) -> int:
         """The number of a polynomial in the bank; equal ones have one number."""
-        names = polynomial.context().names()
-        key = frozenset(
-            (tuple((names[i], int(e)) for i, e in enumerate(exponents) if e), int(c))
-            for exponents, c in polynomial.terms()
-        )
+        key = _poly_key(polynomial)
         if key not in self._place:
             self._place[key] = len(self._polynomials)
             self._polynomials.append(polynomial)
@@ -180,11 +176,7 @@ def _form_key(form: Any) -> Any:
 
 
 def _poly_key(polynomial: Any) -> Any:
-    names = polynomial.context().names()
-    return frozenset(
-        (tuple((names[i], int(e)) for i, e in enumerate(exponents) if e), int(c))
-        for exponents, c in polynomial.terms()
-    )
+    return frozenset(term_dict(polynomial).items())
 
 
 def _value(

@@ -12,22 +12,12 @@ from symamp.exact.response import QuantityValue, Response
 from symamp.exact.time_constants import TimeConstant
 from symamp.show.columns import LEFT, POINT, table_lines
 from symamp.show.formulas import formula_lines, one_line, polynomial_lines
+from symamp.show.json_parts import QUANTITIES
 from symamp.show.page import Page
 from symamp.show.words import MINUS, asked_words, percent_words, root_words, value_words
 
 _AROUND_PEAK = ("peak_frequency", "low_corner", "high_corner")
-_QUANTITIES = (
-    "dc",
-    "hf",
-    "bandwidth",
-    "peak_frequency",
-    "low_corner",
-    "high_corner",
-    "unity_gain_frequency",
-    "gain_bandwidth",
-    "phase_margin",
-    "gain_margin",
-)
+_QUANTITIES = tuple(name for name in QUANTITIES if name != "peak")
 
 
 def response_page(

@@ -22,9 +22,9 @@ from symamp.exact.forms import (
     Expanded,
     Nested,
     raw_polynomials,
-    vanishes,
     write_out,
 )
+from symamp.exact.modular import vanishes
 from symamp.exact.polys import coefficients_of_s, lowest_terms
 from symamp.exact.system import build_system
 
