@@ -155,7 +155,9 @@ class _Dual:
         kept = value >= 0
         rows = np.array(new, dtype=object).reshape(-1, self.size)
         self.rays = np.vstack([self.rays[kept], rows])
-        self.tight = np.vstack([self.tight[kept], np.array(new_tight, dtype=bool).reshape(-1, self.tight.shape[1])])
+        self.tight = np.vstack(
+            [self.tight[kept], np.array(new_tight, dtype=bool).reshape(-1, self.tight.shape[1])]
+        )
 
     def _neighbours(self, ups: np.ndarray, downs: np.ndarray, index: int) -> list[tuple[int, int]]:
         """Pairs of rays joined by an edge: no third ray is zero on all generators on which both are."""

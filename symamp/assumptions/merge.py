@@ -10,7 +10,7 @@ from functools import cached_property
 from symamp.assumptions.record import Assumption, Miller, Pair
 from symamp.circuit.stage import Stage
 from symamp.errors import StageError
-from symamp.formula import Node, names
+from symamp.formula import Name, Node, names
 
 
 @dataclass(frozen=True)
@@ -46,9 +46,12 @@ def pooled(stage: Stage, assumptions: Iterable[Assumption]) -> Pooled:
     orders: dict[str, int] = {}
     told = Told()
     for assumption in listed:
-        for name, node in assumption.replace.items():
-            told.once("set", rename.get(name, name), node, assumption.name)
-            replace[rename.get(name, name)] = node
+        for symbol, node in assumption.replace.items():
+            name = rename.get(symbol, symbol)
+            if isinstance(node, Name) and rename.get(node.text, node.text) == name:
+                continue  # what equal parts say already
+            told.once("set", name, node, assumption.name)
+            replace[name] = node
         for name, order in assumption.orders.items():
             told.once("limit", rename.get(name, name), order, assumption.name)
             orders[rename.get(name, name)] = order
@@ -107,8 +110,10 @@ def contradiction(found: Iterable[str], why: str, remedy: str) -> Contradiction:
     """The error that names the assumptions; one name alone contradicts itself."""
     listed = tuple(dict.fromkeys(found))
     quoted = " and ".join(repr(name) for name in listed)
-    subject = f"the assumptions {quoted} contradict one another" if len(listed) > 1 else (
-        f"the assumption {quoted} contradicts itself"
+    subject = (
+        f"the assumptions {quoted} contradict one another"
+        if len(listed) > 1
+        else (f"the assumption {quoted} contradicts itself")
     )
     error = Contradiction(f"{subject}: {why}", remedy, key="assumption")
     error.assumptions = listed

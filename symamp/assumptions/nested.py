@@ -133,7 +133,9 @@ class NestedEngine:
         if struck not in self._written:
             ratio = struck_ratio(self._exact.stage, self._exact.asked, struck)
             form = form_of(self._exact.stage, ratio)
-            engine = WrittenEngine(replace(self._exact, form=form), struck) if isinstance(form, Expanded) else None
+            engine = (
+                WrittenEngine(replace(self._exact, form=form), struck) if isinstance(form, Expanded) else None
+            )
             self._written[struck] = engine
         return self._written[struck]
 

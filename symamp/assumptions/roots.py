@@ -89,7 +89,11 @@ def _banded(response: Response, hertz: float) -> Outcome:
     """Of numerator and denominator the power of s that is largest at the frequency, at the bias point."""
     if response.missing:
         has = "has" if len(response.missing) == 1 else "have"
-        return None, f"a band is judged at the bias point, and {', '.join(response.missing)} {has} no value", []
+        return (
+            None,
+            f"a band is judged at the bias point, and {', '.join(response.missing)} {has} no value",
+            [],
+        )
     given = response.form.coefficients(response.bias_values, 1)
     omega = 2 * pi * hertz / given.omega
     tops = []

@@ -68,7 +68,9 @@ class TableReader:
         value = self.raw.get(key, [])
         items = [value] if isinstance(value, str) else value
         if not isinstance(items, list) or not all(isinstance(item, str) for item in items):
-            raise StageError(f"{key} is {quoted(value)}", f'write a list of names, such as {key} = ["gds"]', key=key)
+            raise StageError(
+                f"{key} is {quoted(value)}", f'write a list of names, such as {key} = ["gds"]', key=key
+            )
         if key in self.raw and not items:
             raise StageError(f"{key} is empty", f'name at least one, such as {key} = ["gds"]', key=key)
         return items
@@ -114,7 +116,9 @@ class TableReader:
             problem = f"{' and '.join(labels)} are not of one kind"
             raise StageError(problem, "make parts of one kind equal", key="equal")
         if len(set(labels)) < 2:
-            raise StageError("equal names one part alone", 'name two, such as equal = ["M1", "M2"]', key="equal")
+            raise StageError(
+                "equal names one part alone", 'name two, such as equal = ["M1", "M2"]', key="equal"
+            )
         order = list(self.stage.parts)
         return (tuple(sorted(set(labels), key=order.index)),)
 
@@ -278,7 +282,9 @@ def _neglected(stage: Stage, symbol: Symbol) -> int:
     if not device and symbol.nature in (RESISTANCE, INDUCTANCE):
         what = "a resistor" if symbol.nature == RESISTANCE else "an inductor"
         remedy = f'write short = ["{symbol.name}"] or open = ["{symbol.name}"]'
-        raise StageError(f"{symbol.name} is {what}: neglected as a short or as an open?", remedy, key="neglect")
+        raise StageError(
+            f"{symbol.name} is {what}: neglected as a short or as an open?", remedy, key="neglect"
+        )
     return 1
 
 

@@ -78,7 +78,9 @@ class WrittenEngine:
     def _settle(self, outcome: LimitResult) -> Settled:
         if outcome.ratio is None:
             return Settled(None, outcome.why)
-        remarks = ((DC_LOST,) if outcome.lost_origin else ()) + ((ZERO,) if outcome.ratio[0].is_zero() else ())
+        remarks = ((DC_LOST,) if outcome.lost_origin else ()) + (
+            (ZERO,) if outcome.ratio[0].is_zero() else ()
+        )
         return Settled(expanded_of(*tidy(self._exact.stage, outcome.ratio)), "", remarks)
 
 
@@ -170,7 +172,9 @@ class Bridged:
         return value[0] * factor[1], value[1] * factor[0]
 
 
-def _in_one_ring(stage: Stage, ratio: PolyRatio, name: str, by: PolyRatio) -> tuple[PolyRatio, str, PolyRatio]:
+def _in_one_ring(
+    stage: Stage, ratio: PolyRatio, name: str, by: PolyRatio
+) -> tuple[PolyRatio, str, PolyRatio]:
     """What `replaced` takes, in one ring."""
     context = ring_of(stage.symbols, [*symbols_in(*ratio, *by), name])
 

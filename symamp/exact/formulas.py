@@ -93,8 +93,6 @@ def rational_of(response: Formed, quantity: Quantity) -> PolyRatio | None:
     if form is None:
         return None
     if quantity.name in ("dc", "hf", "a", "b"):
-        if quantity.name in ("a", "b") and response.apart and not response.single_pole:
-            return None  # the coefficients are those of the roots' product
         ratio = _coefficient_ratio(form, quantity)
     elif quantity.name in ("p", "z"):
         ratio = _rational_root(response, quantity)

@@ -178,7 +178,8 @@ class Response:
             raw = self.form.coefficients(values, points)
             zeros, poles = (_ratios(c) * raw.omega for c in without_common_s(raw.numerator, raw.denominator))
             found.set_roots(zeros, poles)
-            found.set_coefficients(*without_common_s(raw.numerator, raw.denominator))
+            if not self.single_pole:  # a_k and b_k stay those from whose ratios the roots are taken
+                found.set_coefficients(*without_common_s(raw.numerator, raw.denominator))
         return found
 
     def zero_figures(self, values: Values, points: int) -> Figures | None:

@@ -38,7 +38,9 @@ def cascode() -> StageBuilder:
     b = StageBuilder("Cascode")
     b.voltage_source("VIN", "in", "gnd")
     b.mosfet("M1", gate="in", drain="x", source="gnd", gm="4.1 mS", gds="0.21 mS", cdb="20 fF")
-    b.mosfet("M2", gate="gnd", drain="out", source="x", gm="3.9 mS", gds="0.24 mS", gmb="0.62 mS", cgs="40 fF")
+    b.mosfet(
+        "M2", gate="gnd", drain="out", source="x", gm="3.9 mS", gds="0.24 mS", gmb="0.62 mS", cgs="40 fF"
+    )
     b.capacitor("CL", "out", "gnd", "3.3 pF")
     b.response("gain", source="VIN", to="out")
     b.response("mid", source="VIN", to="x")
@@ -53,7 +55,15 @@ def follower() -> StageBuilder:
     b.voltage_source("VIN", "in", "gnd")
     b.resistor("RG", "in", "g", "5 kohm")
     b.mosfet(
-        "M1", gate="g", drain="gnd", source="out", gm="5 mS", gds="0.1 mS", gmb="0.9 mS", cgs="100 fF", cgd="20 fF"
+        "M1",
+        gate="g",
+        drain="gnd",
+        source="out",
+        gm="5 mS",
+        gds="0.1 mS",
+        gmb="0.9 mS",
+        cgs="100 fF",
+        cgd="20 fF",
     )
     b.resistor("RS", "out", "gnd", "2 kohm")
     b.capacitor("CL", "out", "gnd", "1 pF")
@@ -69,7 +79,17 @@ def degenerated() -> StageBuilder:
     b.resistor("RG", "in", "s1", "600 ohm")
     b.capacitor("CIN", "s1", "b", "10 uF")
     b.resistor("RB", "b", "gnd", "47 kohm")
-    b.bjt("Q1", base="b", collector="c", emitter="e", gm="40 mS", beta="150", ro="60 kohm", cpi="12 pF", cmu="1.5 pF")
+    b.bjt(
+        "Q1",
+        base="b",
+        collector="c",
+        emitter="e",
+        gm="40 mS",
+        beta="150",
+        ro="60 kohm",
+        cpi="12 pF",
+        cmu="1.5 pF",
+    )
     b.resistor("RE", "e", "gnd", "470 ohm")
     b.capacitor("CE", "e", "gnd", "100 uF")
     b.resistor("RC", "c", "gnd", "3.3 kohm")

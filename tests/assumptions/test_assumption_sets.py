@@ -318,3 +318,11 @@ def test_overlapping_lists_merge_and_the_first_part_of_the_file_leads():
         "gds4": "gds2",
         "cgs4": "cgs3",  # M2 has no cgs: M3's stays, and M4's is one with it
     }
+
+
+def test_a_formula_that_equal_parts_say_already_is_no_ring():
+    b = stages.cascode()
+    b.assume("one", equal=["M1", "M2"])
+    b.assume("two", set_={"gm2": "gm1"})
+    stage = b.stage()
+    assert pooled(stage, read_assumptions(stage)).replace == {}

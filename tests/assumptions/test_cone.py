@@ -23,7 +23,9 @@ vectors = st.integers(2, 4).flatmap(
 
 
 def inside(cone: Cone, vector: tuple[int, ...]) -> bool:
-    return all(np.dot(f, vector) >= 0 for f in cone.faces) and all(np.dot(p, vector) == 0 for p in cone.planes)
+    return all(np.dot(f, vector) >= 0 for f in cone.faces) and all(
+        np.dot(p, vector) == 0 for p in cone.planes
+    )
 
 
 def reachable(generators: list[tuple[int, ...]], vector: tuple[int, ...]) -> bool:
@@ -91,7 +93,9 @@ def test_small_against_large_has_few_faces():
     """Every gds against every gm of eight transistors: 64 vectors, 16 faces (f ≥ 0 on gds, ≤ 0 on gm)."""
     size = 16
     generators = [
-        tuple((i == small) - (i == large) for i in range(size)) for small in range(8) for large in range(8, 16)
+        tuple((i == small) - (i == large) for i in range(size))
+        for small in range(8)
+        for large in range(8, 16)
     ]
     cone = cone_of(generators)
     assert (len(cone.faces), len(cone.planes)) == (16, 1)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from fractions import Fraction
+from time import perf_counter
 
 import assumed_stages as stages
 import numpy as np
@@ -12,6 +13,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.optimize import linprog
 
+from symamp.assumptions import cone
 from symamp.assumptions.apply import Approximator
 from symamp.assumptions.dominance import Terms, pool
 from symamp.assumptions.merge import Contradiction
@@ -281,3 +283,41 @@ def test_large_coefficients_are_judged_quickly():
     assert {polynomial_text(table.only([i])) for i, to in enumerate(falls_to) if to == i} == {
         "*".join(f"gm{k}" for k in range(1, 9))
     }
+
+
+def test_too_many_tiers_are_words(monkeypatch):
+    monkeypatch.setattr(cone, "_RAY_LIMIT", 1)
+    b = stages.cascode()
+    b.assume("it", small="gds", against="gm")
+    stage = b.stage()
+    made = Approximator(stages.exact(stage)).under(read_assumptions(stage))
+    assert made.response is None
+    assert "too many pairs" in made.why
+
+
+def test_all_sets_of_twelve_assumptions_take_seconds():
+    b = stages.cascode()
+    for name, asked in {
+        "1": {"small": "gds", "against": "gm"},
+        "2": {"small": "gmb", "against": "gm"},
+        "3": {"neglect": "gmb"},
+        "4": {"equal": ["M1", "M2"]},
+        "5": {"neglect": "cdb"},
+        "6": {"small": "cgs", "against": "CL"},
+        "7": {"small": "1", "against": "gm1*ro2"},
+        "8": {"set_": {"gm2": "gm1"}},
+        "9": {"neglect": "gds1"},
+        "10": {"open_": "CL"},
+        "11": {"poles_far_apart": True},
+        "12": {"dominant_pole": True},
+    }.items():
+        b.assume(name, **asked)
+    stage = b.stage()
+    made = read_assumptions(stage)
+    engine = Approximator(stages.exact(stage))
+    start = perf_counter()
+    found = [engine.under([a for k, a in enumerate(made) if mask >> k & 1]) for mask in range(1 << 12)]
+    assert perf_counter() - start < 10
+    assert all(f.response is not None or f.why for f in found)
+    # Sets that come to the same share one response, and so its figures.
+    assert len({id(f.response) for f in found}) < 2000

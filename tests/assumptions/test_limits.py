@@ -179,6 +179,16 @@ def test_a_limit_and_a_formula_for_one_symbol():
     assert made.response.form.symbols.isdisjoint({"gds1", "gds6"})
 
 
+def test_a_limit_of_what_has_a_formula_says_so():
+    b = stages.two_stage()
+    b.assume("a", set_={"RZ": "1/gm6"})
+    plain = put(b)
+    b.assume("b", short="RZ")
+    made = put(b)
+    assert made.remarks == ("RZ has a formula, and goes where that goes",)
+    assert stages.same(made.response, plain.response)
+
+
 def test_limits_follow_parts_that_are_one():
     b = stages.cascode()
     b.assume("same", equal=["M1", "M2"])

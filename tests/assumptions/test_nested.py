@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Any
 
 import assumed_stages as stages
@@ -14,7 +15,7 @@ from symamp.circuit.builder import StageBuilder
 from symamp.circuit.stage import Stage
 from symamp.exact import derive
 from symamp.exact.asked_quantity import parse_quantity
-from symamp.exact.forms import Expanded
+from symamp.exact.forms import Expanded, Nested
 from symamp.exact.response import Response
 
 CC_A = {"part": "CC", "from": "a", "to": "r"}
@@ -41,7 +42,11 @@ CASES: dict[str, tuple[Any, str, list[dict[str, Any]]]] = {
     "dominant capacitor of two stages": (stages.two_stage, "gain", [{"dominant_capacitor": "CC"}]),
     "equal": (stages.differential_pair, "gain", [{"equal": ["M1", "M2"]}]),
     "equal twice": (stages.differential_pair, "gain", [{"equal": ["M1", "M2"]}, {"equal": ["M3", "M4"]}]),
-    "equal and neglect": (stages.differential_pair, "common", [{"equal": ["M1", "M2"]}, {"neglect": ["gds5"]}]),
+    "equal and neglect": (
+        stages.differential_pair,
+        "common",
+        [{"equal": ["M1", "M2"]}, {"neglect": ["gds5"]}],
+    ),
     "equal makes it zero": (
         stages.differential_pair,
         "common",
@@ -56,7 +61,11 @@ CASES: dict[str, tuple[Any, str, list[dict[str, Any]]]] = {
         [{"set_": {"RZ": "200 ohm"}}, {"poles_far_apart": True}],
     ),
     "set in a chain": (stages.two_stage, "gain", [{"set_": {"RZ": "1/gm6", "gm6": "4*gm1"}}]),
-    "set of a neglected symbol": (stages.two_stage, "gain", [{"set_": {"gds6": "2*gds1"}}, {"neglect": ["gds1"]}]),
+    "set of a neglected symbol": (
+        stages.two_stage,
+        "gain",
+        [{"set_": {"gds6": "2*gds1"}}, {"neglect": ["gds1"]}],
+    ),
     "set to a sum of which one goes": (
         stages.two_stage,
         "gain",
@@ -82,7 +91,11 @@ CASES: dict[str, tuple[Any, str, list[dict[str, Any]]]] = {
         "gain",
         [{"miller": {"part": "gds1", "from": "out", "to": "gnd", "ends": "from"}}],
     ),
-    "miller across a resistor": (stages.two_stage, "gain", [{"miller": {"part": "RZ", "from": "r", "to": "out"}}]),
+    "miller across a resistor": (
+        stages.two_stage,
+        "gain",
+        [{"miller": {"part": "RZ", "from": "r", "to": "out"}}],
+    ),
     "miller and neglect": (
         stages.common_source,
         "gain",
@@ -115,7 +128,11 @@ CASES: dict[str, tuple[Any, str, list[dict[str, Any]]]] = {
     ),
     "dominant pole": (stages.common_source, "gain", [{"dominant_pole": True}]),
     "dominant pole of two stages": (stages.two_stage, "gain", [{"dominant_pole": True}]),
-    "dominant pole after neglect": (stages.cascode, "gain", [{"dominant_pole": True}, {"neglect": ["gmb", "cdb"]}]),
+    "dominant pole after neglect": (
+        stages.cascode,
+        "gain",
+        [{"dominant_pole": True}, {"neglect": ["gmb", "cdb"]}],
+    ),
     "dominant pole after equal": (
         stages.differential_pair,
         "gain",
@@ -207,3 +224,90 @@ def compare_arrays(written: Any, graph: Any) -> None:
         assert np.count_nonzero(~np.isnan(one)) == np.count_nonzero(~np.isnan(other)), name
         rows = min(len(one), len(other))
         np.testing.assert_allclose(other[:rows], one[:rows], rtol=1e-6, atol=1e-300, err_msg=name)
+
+
+def full_pair() -> StageBuilder:
+    """A fully differential pair: with both halves the same, what its tail does is not seen."""
+    b = StageBuilder("Fully differential pair")
+    b.voltage_source("VP", "inp", "gnd")
+    b.voltage_source("VN", "inn", "gnd")
+    b.mosfet(
+        "M1", gate="inp", drain="op", source="t", body="t", gm="2 mS", gds="40 uS", cgs="50 fF", cgd="8 fF"
+    )
+    b.mosfet(
+        "M2", gate="inn", drain="on", source="t", body="t", gm="2.1 mS", gds="44 uS", cgs="52 fF", cgd="9 fF"
+    )
+    b.resistor("R1", "op", "gnd", "5 kohm")
+    b.resistor("R2", "on", "gnd", "5.1 kohm")
+    b.capacitor("C1", "op", "gnd", "100 fF")
+    b.capacitor("C2", "on", "gnd", "105 fF")
+    b.capacitor("CT", "t", "gnd", "200 fF")
+    b.resistor("RT", "t", "gnd", "20 kohm")
+    b.response("gain", source={"VP": "0.5", "VN": "-0.5"}, to=("op", "on"))
+    for first, second in (("M1", "M2"), ("R1", "R2"), ("C1", "C2")):
+        b.assume(f"{first} is {second}", equal=[first, second])
+    return b
+
+
+@pytest.mark.usefixtures("_stay_nested")
+@pytest.mark.parametrize(
+    "more", [{}, {"dominant_pole": True}, {"poles_far_apart": True}, {"band": "100 MHz"}]
+)
+def test_what_both_halves_hide_is_divided_out(more):
+    b = full_pair()
+    if more:
+        b.assume("more", **more)
+    stage = b.stage()
+    made = read_assumptions(stage)
+    written, graph = (Approximator(stages.exact(stage, nested=n)).under(made).response for n in (False, True))
+    compare_figures(written, graph)
+    values = {n: float(v) * np.linspace(0.7, 1.6, 4) for n, v in stage.bias.items()}
+    compare_arrays(written.figures(values, 4), graph.figures(values, 4))
+    if not more:
+        assert [len(r.poles()) for r in (written, graph)] == [1, 1]
+        assert graph.quantity("p1").value == pytest.approx(-(1 / 5e3 + 40e-6) / (100e-15 + 8e-15))
+
+
+def test_what_is_left_is_written_out_where_it_is_small_enough(monkeypatch):
+    """Without its capacitances the stage is small; dominance, which needs written-out terms, then has them."""
+    monkeypatch.setattr(derive, "EXPAND_LIMIT", 10)
+    b = stages.common_source()
+    b.assume("slow", neglect=["cgs", "cgd", "CL"])
+    b.assume("high", small="gds", against="1/RL")
+    stage = b.stage()
+    engine = Approximator(derive.derive(stage, stage.asked["gain"]))
+    assert isinstance(engine.exact.form, Nested)
+    made = read_assumptions(stage)
+    left = engine.under(made).response
+    assert isinstance(left.form, Expanded)
+    assert left.quantity("dc").text == "-gm1*RL"
+    assert engine.under(made[1:]).response is None
+    assert "not written out" in engine.under(made[1:]).why
+
+
+def test_a_bridge_too_is_written_out_then(monkeypatch):
+    monkeypatch.setattr(derive, "EXPAND_LIMIT", 10)
+    b = stages.common_source()
+    b.assume("slow", neglect=["cgs", "CL", "gds"])
+    b.assume("split", miller={"part": "cgd1", "from": "g", "to": "out"})
+    stage = b.stage()
+    engine = Approximator(derive.derive(stage, stage.asked["gain"]))
+    assert isinstance(engine.exact.form, Nested)
+    left = engine.under(read_assumptions(stage)).response
+    assert isinstance(left.form, Expanded)
+    assert left.quantity("p1").text == "-1/(RS*cgd1*(1 + gm1*RL))"
+
+
+def test_a_nested_response_lacks_what_its_rules_lack():
+    """CF and RZ have no value, but formulas; gm6 has none, and their formulas need it."""
+    b = stages.two_stage()
+    b.assume("one", set_={"RZ": "1/gm6", "C1": "CC/20"})
+    stage = b.stage()
+    bias = {n: v for n, v in stage.bias.items() if n not in ("RZ", "C1")}
+    stage = replace(stage, bias=bias)
+    made = Approximator(stages.exact(stage, nested=True)).under(read_assumptions(stage))
+    assert made.response.missing == ()
+    assert made.response.quantity("p1").value is not None
+    stage = replace(stage, bias={n: v for n, v in bias.items() if n != "gm6"})
+    made = Approximator(stages.exact(stage, nested=True)).under(read_assumptions(stage))
+    assert made.response.missing == ("gm6",)

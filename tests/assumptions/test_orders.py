@@ -35,7 +35,14 @@ def near(name: str, other: Callable[[dict[str, Fraction]], Fraction]) -> Change:
 
 # kind → (stage, response, assumption, quantity, how t shrinks the ratio)
 ROWS: list[tuple[str, Any, str, dict[str, Any], str, Change]] = [
-    ("equal", stages.cascode, "gain", {"equal": ["M1", "M2"]}, "dc", lambda b, t: equal(b, t, ("gm", "gds"), 1, 2)),
+    (
+        "equal",
+        stages.cascode,
+        "gain",
+        {"equal": ["M1", "M2"]},
+        "dc",
+        lambda b, t: equal(b, t, ("gm", "gds"), 1, 2),
+    ),
     (
         "equal",
         stages.differential_pair,
@@ -44,10 +51,31 @@ ROWS: list[tuple[str, Any, str, dict[str, Any], str, Change]] = [
         "dc",
         lambda b, t: equal(b, t, ("gm", "gds"), 1, 2),
     ),
-    ("equal", stages.two_stage, "gain", {"equal": ["M1", "M6"]}, "p1", lambda b, t: equal(b, t, ("gm", "gds"), 1, 6)),
-    ("set", stages.two_stage, "gain", {"set_": {"RZ": "0.5/gm6"}}, "z1", near("RZ", lambda b: 1 / (2 * b["gm6"]))),
+    (
+        "equal",
+        stages.two_stage,
+        "gain",
+        {"equal": ["M1", "M6"]},
+        "p1",
+        lambda b, t: equal(b, t, ("gm", "gds"), 1, 6),
+    ),
+    (
+        "set",
+        stages.two_stage,
+        "gain",
+        {"set_": {"RZ": "0.5/gm6"}},
+        "z1",
+        near("RZ", lambda b: 1 / (2 * b["gm6"])),
+    ),
     ("set", stages.cascode, "gain", {"set_": {"gmb2": "gm2/5"}}, "dc", near("gmb2", lambda b: b["gm2"] / 5)),
-    ("set", stages.follower, "gain", {"set_": {"RS": "1/gm1"}}, "bandwidth", near("RS", lambda b: 1 / b["gm1"])),
+    (
+        "set",
+        stages.follower,
+        "gain",
+        {"set_": {"RS": "1/gm1"}},
+        "bandwidth",
+        near("RS", lambda b: 1 / b["gm1"]),
+    ),
     ("neglect", stages.cascode, "gain", {"neglect": "gmb"}, "dc", scale("gmb2")),
     ("neglect", stages.common_source, "gain", {"neglect": "gds"}, "dc", scale("gds1")),
     ("neglect", stages.follower, "gain", {"neglect": "cgd"}, "bandwidth", scale("cgd1")),
@@ -101,7 +129,14 @@ ROWS: list[tuple[str, Any, str, dict[str, Any], str, Change]] = [
         "dc",
         scale("gds1", "gds2", "gds3", "gds4", "gds5"),
     ),
-    ("dominant_pole", stages.common_source, "gain", {"dominant_pole": True}, "bandwidth", scale("RS", power=-1)),
+    (
+        "dominant_pole",
+        stages.common_source,
+        "gain",
+        {"dominant_pole": True},
+        "bandwidth",
+        scale("RS", power=-1),
+    ),
     ("dominant_pole", stages.cascode, "gain", {"dominant_pole": True}, "p1", scale("cdb1", "cgs2")),
     ("dominant_pole", stages.two_stage, "gain", {"dominant_pole": True}, "p1", scale("gds1")),
     ("poles_far_apart", stages.common_source, "gain", {"poles_far_apart": True}, "p1", scale("RS", power=-1)),
@@ -113,7 +148,9 @@ ROWS: list[tuple[str, Any, str, dict[str, Any], str, Change]] = [
 ]
 
 
-def equal(bias: dict[str, Fraction], t: Fraction, parameters: tuple[str, ...], leader: int, other: int) -> Any:
+def equal(
+    bias: dict[str, Fraction], t: Fraction, parameters: tuple[str, ...], leader: int, other: int
+) -> Any:
     """The other part's parameters differ from the leader's by the ratio t."""
     return {f"{p}{other}": bias[f"{p}{leader}"] * (1 + t) for p in parameters}
 

@@ -40,7 +40,12 @@ BY_HAND: dict[str, list[tuple[Any, str, Any, dict[str, str]]]] = {
         (stages.common_source, "gain", {"neglect": "gds"}, {"dc": "-gm1*RL"}),
         (stages.common_source, "gain", {"neglect": "cgd"}, {"p2": "-1/(RS*cgs1)", "p1": "-(1/RL + gds1)/CL"}),
         (stages.cascode, "gain", {"neglect": "gmb"}, {"dc": "-gm1*(gm2 + gds2)/(gds1*gds2)"}),
-        (stages.follower, "gain", {"neglect": ["gds", "gmb"]}, {"dc": "gm1*RS/(1 + gm1*RS)", "z1": "-gm1/cgs1"}),
+        (
+            stages.follower,
+            "gain",
+            {"neglect": ["gds", "gmb"]},
+            {"dc": "gm1*RS/(1 + gm1*RS)", "z1": "-gm1/cgs1"},
+        ),
         (stages.degenerated, "rout", {"neglect": ["go", "cpi", "cmu"]}, {"dc": "RC"}),
         (stages.cascode, "rout", {"neglect": "gds1"}, {"b0": "0", "b1": "1"}),
     ],
@@ -70,7 +75,12 @@ BY_HAND: dict[str, list[tuple[Any, str, Any, dict[str, str]]]] = {
         (stages.common_source, "gain", {"dominant_capacitor": "CL"}, {"p1": "-(1/RL + gds1)/CL"}),
         (stages.cascode, "gain", {"dominant_capacitor": "CL"}, {"p1": f"-gds1*gds2/({G_X}*CL)"}),
         (stages.follower, "gain", {"dominant_capacitor": "cgs1"}, {"z1": "-gm1/cgs1"}),
-        (stages.two_stage, "gain", {"dominant_capacitor": "CL"}, {"p1": "-gds6/CL", "dc": "gm1*gm6/(gds1*gds6)"}),
+        (
+            stages.two_stage,
+            "gain",
+            {"dominant_capacitor": "CL"},
+            {"p1": "-gds6/CL", "dc": "gm1*gm6/(gds1*gds6)"},
+        ),
     ],
     "miller": [
         (
@@ -99,7 +109,10 @@ BY_HAND: dict[str, list[tuple[Any, str, Any, dict[str, str]]]] = {
         (
             stages.follower,
             "gain",
-            {"miller": {"part": "cgs1", "from": "g", "to": "out", "ends": "from"}, "neglect": ["gds", "gmb", "cgd"]},
+            {
+                "miller": {"part": "cgs1", "from": "g", "to": "out", "ends": "from"},
+                "neglect": ["gds", "gmb", "cgd"],
+            },
             {"p2": "-(1 + gm1*RS)/(RG*cgs1)", "p1": "-(1 + gm1*RS)/(RS*CL)"},
         ),
         # gds across a stage driven by a source: from out to ground, V(to) = 0, A = 0: nothing changes.
@@ -118,7 +131,12 @@ BY_HAND: dict[str, list[tuple[Any, str, Any, dict[str, str]]]] = {
             {"dc": "-gm1*(gm2 + gmb2)/(gds1*gds2)"},
         ),
         (stages.follower, "gain", {"small": ["gds", "gmb"], "against": "gm"}, {"dc": "gm1*RS/(1 + gm1*RS)"}),
-        (stages.common_source, "gain", {"small": "gds", "against": "1/RL"}, {"dc": "-gm1*RL", "z1": "gm1/cgd1"}),
+        (
+            stages.common_source,
+            "gain",
+            {"small": "gds", "against": "1/RL"},
+            {"dc": "-gm1*RL", "z1": "gm1/cgd1"},
+        ),
         (stages.degenerated, "rout", {"small": "go1", "against": "1/RC"}, {"dc": "RC"}),
     ],
     "dominant_pole": [
@@ -142,7 +160,10 @@ BY_HAND: dict[str, list[tuple[Any, str, Any, dict[str, str]]]] = {
             stages.two_stage,
             "gain",
             {"dominant_pole": True, "neglect": "C1"},
-            {"p1": "-gds1*gds6/(gds1*CL + (gm6 + gds6 + gds1)*CC + gds1*gds6*RZ*CC)", "z1": "-1/(CC*(RZ - 1/gm6))"},
+            {
+                "p1": "-gds1*gds6/(gds1*CL + (gm6 + gds6 + gds1)*CC + gds1*gds6*RZ*CC)",
+                "z1": "-1/(CC*(RZ - 1/gm6))",
+            },
         ),
         (stages.common_source, "gate", {"dominant_pole": True}, {"dc": "1", "a0": "1", "a1": "0"}),
     ],
@@ -192,7 +213,9 @@ def test_every_kind_stands_on_three_stages():
     assert all(len(rows) >= 3 for rows in BY_HAND.values())
 
 
-@pytest.mark.parametrize(("kind", "row"), ROWS, ids=[f"{k} {r[0].__name__} {i}" for i, (k, r) in enumerate(ROWS)])
+@pytest.mark.parametrize(
+    ("kind", "row"), ROWS, ids=[f"{k} {r[0].__name__} {i}" for i, (k, r) in enumerate(ROWS)]
+)
 def test_by_hand(kind, row):
     make, name, asked, formulas = row
     b = make()
@@ -204,7 +227,9 @@ def test_by_hand(kind, row):
     for quantity, formula in formulas.items():
         found = made.response.quantity(quantity)
         assert found.value is not None, (quantity, found.why)
-        assert found.value == pytest.approx(stages.formula_value(formula, bias), rel=1e-9, abs=1e-300), quantity
+        assert found.value == pytest.approx(stages.formula_value(formula, bias), rel=1e-9, abs=1e-300), (
+            quantity
+        )
         if found.text is not None and "sqrt" not in found.text:
             own = stages.formula_value(found.text, bias)
             assert own == pytest.approx(found.value.real, rel=1e-9, abs=1e-300), quantity
