@@ -13,8 +13,9 @@ from symamp.assumptions.nested import NestedEngine
 from symamp.assumptions.record import Assumption, Miller, Pair
 from symamp.assumptions.rewrite import symbol_value
 from symamp.assumptions.roots import step_on_roots
-from symamp.assumptions.written import WrittenEngine
+from symamp.assumptions.written import WrittenEngine, struck_ratio
 from symamp.errors import StageError, TooLargeError
+from symamp.exact.derive import nested_of
 from symamp.exact.forms import Expanded, Nested
 from symamp.exact.response import Response
 
@@ -70,7 +71,10 @@ class Approximator:
     def _under(self, ask: Pooled) -> Approximation:
         remarks = [*ask.remarks, *_idle_words(ask.pairs)]
         bridges = self._live_bridges(ask, remarks)
-        outcome = self._engine.under(ask, bridges)
+        try:
+            outcome = self._engine.under(ask, bridges)
+        except TooLargeError:
+            outcome = self._on_graph.under(ask, bridges)
         remarks += outcome.remarks
         form = outcome.form
         if form is None:
@@ -88,6 +92,13 @@ class Approximator:
             form = dominated.form
         response, why, more = self._on_roots(ask, form)
         return Approximation((), response, why, dominated, _once([*remarks, *more]))
+
+    @cached_property
+    def _on_graph(self) -> NestedEngine:
+        """The engine for sets under which the response grows too large to be written out."""
+        exact = self.exact
+        ratio = struck_ratio(exact.stage, exact.asked, frozenset())
+        return NestedEngine(replace(exact, form=nested_of(exact.stage, ratio)))
 
     def _live_bridges(self, ask: Pooled, remarks: list[str]) -> tuple[Miller, ...]:
         """The bridges that the response has, and that are still there after step 2."""

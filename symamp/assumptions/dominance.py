@@ -19,6 +19,7 @@ from symamp.assumptions.record import Pair
 from symamp.exact.polys import held
 
 _SAFE = 1 << 40
+_SMALL_POWER = 1 << 15
 
 
 class Terms:
@@ -26,19 +27,28 @@ class Terms:
 
     def __init__(self, polynomial: fmpz_mpoly) -> None:
         self.polynomial = polynomial
-        self.monomials = polynomial.monoms()
         self.factors = polynomial.coeffs()
         width = polynomial.context().nvars()
-        self.exponents = np.array(self.monomials, dtype=object).reshape(-1, width).astype(np.int64)
+        # A ledger keeps the terms of hundreds of forms, so they are kept small.
+        kind = np.int16 if max(map(int, polynomial.degrees()), default=0) < _SMALL_POWER else np.int64
+        self.exponents = np.array(polynomial.monoms(), dtype=kind).reshape(-1, width)
         self.place = {name: i for i, name in enumerate(polynomial.context().names())}
         self.held = held(polynomial)
 
     def __len__(self) -> int:
-        return len(self.monomials)
+        return len(self.factors)
+
+    @property
+    def monomials(self) -> list[tuple[int, ...]]:
+        """The exponents of each term."""
+        return [tuple(row) for row in self.exponents.tolist()]
 
     def only(self, rows: Iterable[int]) -> fmpz_mpoly:
         """The polynomial of these terms alone."""
-        return self.polynomial.context().from_dict({self.monomials[i]: self.factors[i] for i in rows})
+        chosen = np.fromiter(rows, dtype=np.intp)
+        exponents = self.exponents[chosen].tolist()
+        terms = {tuple(row): self.factors[i] for row, i in zip(exponents, chosen, strict=True)}
+        return self.polynomial.context().from_dict(terms)
 
 
 class Dominance:

@@ -14,9 +14,10 @@ from symamp.assumptions.rules import GainRule, Rule, ValueRule
 from symamp.assumptions.written import DC_LOST, ZERO, Settled, WrittenEngine, struck_ratio, zero_form
 from symamp.circuit.kinds import CAPACITANCE
 from symamp.circuit.stage import Stage
+from symamp.errors import TooLargeError
 from symamp.exact.cofactors import Ratio, entry_symbols
 from symamp.exact.derive import form_of, nested_of
-from symamp.exact.forms import Expanded, Nested
+from symamp.exact.forms import Expanded, Nested, write_out_small
 from symamp.exact.graded import PRIME, leading_residues
 from symamp.exact.polys import ring_of
 from symamp.exact.response import Response
@@ -52,7 +53,7 @@ class NestedEngine:
         self._form = exact.form
         self._networks: dict[tuple[Miller, ...], _Network] = {}
         self._gains: dict[Miller, NestedEngine | str] = {}
-        self._written: dict[frozenset[str], WrittenEngine | None] = {}
+        self._written: dict[Hashable, WrittenEngine | None] = {}
         self._settled: dict[Hashable, Settled] = {}
 
     def depends_on(self, symbol: str) -> bool:
@@ -93,6 +94,10 @@ class NestedEngine:
             if rule is None:
                 orders[half.symbol], rule = -1, _nominal(network.stage)
             rules.append((half.symbol, rule))
+        if not orders:
+            written = self._write_out(ask, bridges, frozenset())
+            if written is not None:
+                return written
         if orders and all(order > 0 for order in orders.values()):
             result = self._strike(ask, bridges, network, frozenset(orders), tuple(rules))
             if result is not None:
@@ -122,22 +127,34 @@ class NestedEngine:
         plain = nested_of(network.stage, network.ratio)
         before = replace(plain, computed=_needed(rules, plain))
         lost = (DC_LOST,) if form.skeleton.low > before.skeleton.low else ()
-        written = self._write(struck)
-        if written is not None:
-            found = written.under(ask, bridges)
+        found = self._write_out(ask, bridges, struck)
+        if found is not None:
             return replace(found, remarks=tuple(dict.fromkeys((*found.remarks, *lost))))
         return Settled(form, "", lost)
 
-    def _write(self, struck: frozenset[str]) -> WrittenEngine | None:
-        """The response without these symbols, where it is small enough to be written out."""
-        if struck not in self._written:
-            ratio = struck_ratio(self._exact.stage, self._exact.asked, struck)
-            form = form_of(self._exact.stage, ratio)
-            engine = (
+    def _write_out(self, ask: Pooled, bridges: tuple[Miller, ...], struck: frozenset[str]) -> Settled | None:
+        """What the set leaves, written out where that is small; None where it is not."""
+        engine = self._write(struck, ask.rename)
+        if engine is None:
+            return None
+        try:
+            return engine.under(ask, bridges)
+        except TooLargeError:
+            return None
+
+    def _write(self, struck: frozenset[str], rename: Mapping[str, str]) -> WrittenEngine | None:
+        """The response without these symbols and with those made one, where it is small enough to be written out."""
+        stage = self._exact.stage
+        key = (struck, frozenset(rename.items()))
+        if key not in self._written:
+            ratio = struck_ratio(stage, self._exact.asked, struck)
+            form: Expanded | Nested | None = form_of(stage, ratio)
+            if isinstance(form, Nested):
+                form = write_out_small(ratio, stage.symbols, rename) if rename else None
+            self._written[key] = (
                 WrittenEngine(replace(self._exact, form=form), struck) if isinstance(form, Expanded) else None
             )
-            self._written[struck] = engine
-        return self._written[struck]
+        return self._written[key]
 
     # The whole graph, to leading order in t
 

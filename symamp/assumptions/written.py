@@ -24,8 +24,9 @@ from symamp.assumptions.rewrite import (
 )
 from symamp.circuit.kinds import CAPACITANCE, CONDUCTANCE
 from symamp.circuit.stage import Asked, Stage
+from symamp.errors import TooLargeError
 from symamp.exact.cofactors import Ratio, ratio_of
-from symamp.exact.forms import Expanded, Nested, expanded_of, write_out
+from symamp.exact.forms import EXPAND_LIMIT, Expanded, Nested, expanded_of, write_out
 from symamp.exact.modular import vanishes
 from symamp.exact.polys import by_power, from_coefficients, into_ring, least_exponents, lowest_terms, ring_of
 from symamp.exact.response import Response
@@ -33,6 +34,7 @@ from symamp.exact.system import build_system, without_symbols
 
 DC_LOST = "the limit's dc is not the limit of dc: a root reached s = 0 and cancelled"
 ZERO = "the approximate response is zero"
+_SUBSTITUTED = 100_000  # products of terms up to which a half's value is put in its place
 
 
 @dataclass(frozen=True)
@@ -112,6 +114,7 @@ class Bridged:
         self._exact = exact
         self._stage, self._halves = split_stage(exact.stage, bridges)
         ratio = struck_ratio(self._stage, exact.asked, struck)
+        _refuse_large(ratio)
         _, infinite = vanishes(ratio.graph)
         self._why = "with the bridge in two the response is infinite" if infinite else ""
         self._split = None if infinite else Written(self._stage, write_out(ratio, self._stage.symbols))
@@ -136,6 +139,8 @@ class Bridged:
             value = self._half(half, ask)
             if isinstance(value, str):
                 return LimitResult(None, value)
+            if sum(map(len, ratio)) * sum(map(len, value)) > _SUBSTITUTED:
+                raise TooLargeError(f"Miller across {half.bridge.symbol}: too many terms to be written out")
             ratio = replaced(*_in_one_ring(self._stage, ratio, half.symbol, value))
         if ratio[1].is_zero():
             return LimitResult(None, INFINITE)
@@ -189,6 +194,13 @@ def struck_ratio(stage: Stage, asked: Asked, struck: frozenset[str]) -> Ratio:
     return ratio_of(without_symbols(build_system(stage, asked.without), set(struck)), asked)
 
 
+def _refuse_large(ratio: Ratio) -> None:
+    """TooLargeError where the graph stands for more terms than are written out."""
+    terms = sum(ratio.graph.count_terms())
+    if terms > EXPAND_LIMIT:
+        raise TooLargeError(f"{terms:,} product terms are not written out")
+
+
 def zero_form(stage: Stage) -> Expanded:
     """The response that is zero."""
     context = ring_of(stage.symbols, ())
@@ -199,5 +211,6 @@ def _gain(exact: Response, bridge: Miller, struck: frozenset[str]) -> Written | 
     """The gain across a bridge in the network as it stands, or the words for there being none."""
     stage, across = gain_across(exact.stage, exact.asked, bridge)
     ratio = struck_ratio(stage, across, struck)
+    _refuse_large(ratio)
     zero, infinite = vanishes(ratio.graph)
     return dc_words(bridge, zero, infinite) or Written(stage, write_out(ratio, stage.symbols))

@@ -215,8 +215,11 @@ def known_names(stage: Stage) -> list[str]:
     return list(dict.fromkeys((*stage.symbols, *stage.aliases, *labels, *BARE_PARAMETERS)))
 
 
-def unknown_symbol(stage: Stage, name: str) -> ReadError:
-    """The error about a name that no symbol has: the parameter that a device lacks, or the nearest name."""
+def unknown_symbol(stage: Stage, name: str, *, selectors: bool = True) -> ReadError:
+    """The error about a name that no symbol has: the parameter that a device lacks, or the nearest name.
+
+    Without `selectors` only symbols and aliases are proposed, as where a bare name or a part has no place.
+    """
     for part in stage.parts.values() if name.isidentifier() else ():
         bare = name.removesuffix(part.symbol(""))
         if (
@@ -228,7 +231,7 @@ def unknown_symbol(stage: Stage, name: str) -> ReadError:
                 f"{part.label} has no {bare}, because its bias gives none",
                 f"add {bare} to the bias of {part.label}, or name one of {', '.join(symbols_of([part]))}",
             )
-    known = known_names(stage)
+    known = known_names(stage) if selectors else [*stage.symbols, *stage.aliases]
     if any(character.isdigit() or character == "_" for character in name):  # meant as one device's own
         known = [other for other in known if other not in BARE_PARAMETERS] or known
     return ReadError(f"{quoted(name)} names no symbol", propose(name, known, "symbols"))

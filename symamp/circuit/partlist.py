@@ -6,20 +6,22 @@ of devices follow from the bias (`bias`).
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections import Counter
+from collections.abc import Iterable, Mapping
 from typing import Any
 
 from symamp.circuit.kinds import KINDS, Kind
 from symamp.circuit.labels import check_label
-from symamp.circuit.near import propose
+from symamp.circuit.near import nearest, propose
 from symamp.circuit.place import Path, Place
-from symamp.circuit.stage import GROUND, Part
+from symamp.circuit.stage import GROUND, Asked, Part
 from symamp.values import quoted
 
 MOST_NODES = 200
 
 _CURRENT_CONTROLLED = ("cccs", "ccvs")
-_TWO_TERMINAL = ("resistor", "capacitor", "inductor", "voltage_source", "current_source")
+_PASSIVE = ("resistor", "capacitor", "inductor")
+_TWO_TERMINAL = (*_PASSIVE, "voltage_source", "current_source")
 
 
 def read_parts(data: Mapping[str, Any], place: Place) -> dict[str, Part]:
@@ -54,14 +56,29 @@ def read_parts(data: Mapping[str, Any], place: Place) -> dict[str, Part]:
     return parts
 
 
-def node_warnings(parts: Mapping[str, Part]) -> list[str]:
-    """Warnings about nodes whose names look like signal ground and are not."""
-    nodes = dict.fromkeys(node for part in parts.values() for node in part.nodes)
-    return [
+def node_warnings(parts: Mapping[str, Part], asked: Iterable[Asked] = ()) -> list[str]:
+    """Warnings about nodes that may be misspelt: such as look like signal ground, and loose ends.
+
+    A loose end is a terminal on a node that nothing else touches and that no response asks about.
+    """
+    touched = Counter(node for part in parts.values() for node in part.nodes)
+    wanted = {node for one in asked for pair in (one.to, one.over, one.looking_into) for node in pair or ()}
+    warnings = [
         f"node {node} is not signal ground: the only one is {GROUND}"
-        for node in nodes
+        for node in touched
         if node != GROUND and node.lower() in (GROUND, "ground", "0")
     ]
+    for part in parts.values():
+        passive = part.kind.name in _PASSIVE
+        if passive and part.nodes[0] == part.nodes[1]:
+            warnings.append(f"both ends of {part.label} are on node {part.nodes[0]}: it has no effect")
+        for node in part.nodes:
+            if touched[node] == 1 and node != GROUND and node not in wanted:
+                near = nearest(node, [other for other in touched if other != node])
+                meant = f"; was {near} meant?" if near else f"; a supply at rest is {GROUND}" if not passive else ""
+                effect = ", so that no current flows in it" if passive else ""
+                warnings.append(f"node {node} is on {part.label} alone{effect}{meant}")
+    return warnings
 
 
 def read_node(raw: object, path: Path, place: Place) -> str:

@@ -23,7 +23,7 @@ from symamp.circuit.place import Place, dotted
 from symamp.circuit.responses import read_responses
 from symamp.circuit.spanfile import read_box, span_sheet
 from symamp.circuit.stage import Span, Stage
-from symamp.circuit.tablefile import Sheet, check_complete, parameters_in, read_table
+from symamp.circuit.tablefile import Sheet, check_complete, parameters_in, read_table, unit_warnings
 from symamp.errors import InputError, StageError
 from symamp.values import quoted
 
@@ -168,17 +168,18 @@ def _stage(tables: Mapping[str, Any], place: Place, folder: Path) -> Stage:
     given = values if values or sheet is None else parameters_in(sheet, parts)
     parts = with_parameters(parts, given)
     check_symbols(parts)
+    asked = read_responses(tables, parts, place)
     stage = Stage(
         title=tables.get("title", "") or _title(place.file),
         parts=parts,
-        asked=read_responses(tables, parts, place),
+        asked=asked,
         symbols=symbols_of(parts.values()),
         aliases=alias_table(parts.values()),
         bias={},
         assumptions=tuple(tables.get("assumption", ())),
         claims=tuple(tables.get("claim", ())),
         file=place.file,
-        warnings=(*body_warnings(parts), *node_warnings(parts)),
+        warnings=(*body_warnings(parts), *node_warnings(parts, asked.values())),
         source=place.source,
     )
     bias = {
@@ -208,4 +209,5 @@ def _with_table(stage: Stage, sheet: Sheet) -> Stage:
         check_complete(sheet, table, stage)
         row = dict(zip(table.columns, table.rows[0], strict=True))
         stage = replace(stage, bias={name: row[name] for name in stage.symbols})
-    return replace(stage, span=Span(table=table))
+    warnings = (*stage.warnings, *unit_warnings(sheet, stage))
+    return replace(stage, span=Span(table=table), warnings=warnings)

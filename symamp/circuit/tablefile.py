@@ -121,6 +121,17 @@ def check_complete(sheet: Sheet, table: Table, stage: Stage) -> None:
             )
 
 
+def unit_warnings(sheet: Sheet, stage: Stage) -> list[str]:
+    """A warning for each column of bare numbers whose head gives no unit, where the symbol has one."""
+    found = []
+    for index, (name, written) in enumerate(zip(sheet.names, sheet.units, strict=True)):
+        unit = unit_of(stage, name)
+        bare = all(not row[index][-1:].isalpha() for row in sheet.rows)
+        if unit and written is None and bare:
+            found.append(f"column {name} of {sheet.path} gives no unit: its numbers are read in {unit}")
+    return found
+
+
 def _records(text: str, shown: str) -> tuple[list[list[str]], list[int]]:
     """The rows that are not blank, their cells without outer spaces, and the line of each."""
     records, lines = [], []
@@ -167,7 +178,7 @@ def _check_shape(sheet: Sheet) -> None:
 def _column(sheet: Sheet, index: int, stage: Stage) -> _Column:
     name, written = sheet.names[index], sheet.units[index]
     if name not in stage.symbols and name not in stage.aliases:
-        error = unknown_symbol(stage, name)
+        error = unknown_symbol(stage, name, selectors=False)
         raise sheet.error(None, index, error.problem, error.remedy)
     unit = unit_of(stage, name)
     solved = solve(stage.aliases[name]) if name in stage.aliases else Solved(name, 1)

@@ -58,8 +58,11 @@ def parse_quantity(text: str) -> Quantity:
     return _with_face(_named(stem.strip()), dot + face.strip())
 
 
-def unit_of(quantity: Quantity, response_unit: str) -> str:
-    """The unit of the quantity of a response with that unit ("" for a plain ratio)."""
+def unit_of(quantity: Quantity, response_unit: str, first: int = 0) -> str:
+    """The unit of the quantity of a response with that unit ("" for a plain ratio).
+
+    `first` is the lowest power of s in the denominator: coefficients count from it, since it is the one made 1.
+    """
     by_face = {"hz": "Hz", "db": "dB", "deg": "deg"}
     name = quantity.name
     if quantity.face in by_face:
@@ -73,7 +76,7 @@ def unit_of(quantity: Quantity, response_unit: str) -> str:
     if name == "gain_bandwidth":
         return _times(response_unit, "Hz")
     if name in ("a", "b"):
-        return _times(response_unit if name == "a" else "", _seconds(quantity.index or 0))
+        return _in_seconds(response_unit if name == "a" else "", (quantity.index or 0) - first)
     return response_unit
 
 
@@ -161,8 +164,12 @@ def _hertz(frequency: Fraction) -> str:
         return f"{float(frequency)!r} Hz"
 
 
-def _seconds(power: int) -> str:
-    return "" if power == 0 else "s" if power == 1 else f"s^{power}"
+def _in_seconds(unit: str, power: int) -> str:
+    """The unit times seconds to that power: `s`, `ohm·s^2`, `1/s`, `S/s^2`."""
+    if not power:
+        return unit
+    seconds = "s" if abs(power) == 1 else f"s^{abs(power)}"
+    return _times(unit, seconds) if power > 0 else f"{unit or '1'}/{seconds}"
 
 
 def _times(left: str, right: str) -> str:

@@ -18,6 +18,8 @@ Reals = NDArray[np.float64]
 Flags = NDArray[np.bool_]
 
 _NOISE = 16 * float(np.finfo(float).eps)  # sums smaller than this against their terms are rounding
+_SURE = 40  # coefficients of numerator and denominator together, up to which squares keep their digits
+_NEAR = 0.1  # how near to 0 the logarithm of a level must lie at a frequency that is said to reach it
 
 
 @dataclass(frozen=True)
@@ -212,3 +214,26 @@ def _squared_and_slope(c: Reals, x: Reals) -> tuple[Reals, Reals]:
     if odd.shape[0]:
         slope = slope + 2 * x * o * evaluate(derivative(odd), x)
     return e * e + x * o * o, slope
+
+
+def confirmed(response: Centred, weight: Reals, x: Reals) -> Reals:
+    """x, shape (K, P), with nan for those at which weight·|N|²/|D|² is nowhere near 1.
+
+    Squared magnitudes of high degree are sums that cancel, and what is left can be a root that is none.
+    """
+    if response.num.shape[0] + response.den.shape[0] <= _SURE:
+        return x
+    level = np.log(weight) + 2 * (_log_magnitude(response.num, x) - _log_magnitude(response.den, x))
+    return np.where(np.abs(level) < _NEAR, x, np.nan)
+
+
+def _log_magnitude(c: Reals, x: Reals) -> Reals:
+    """ln |C(jω)|; above ω = 1 by the reversed polynomial at 1/(jω), so that no power overflows."""
+    omega = np.sqrt(x)
+    outside = omega > 1
+    point = np.where(outside, -1j / omega, 1j * omega)
+    degree = c.shape[0] - 1
+    value = np.zeros(x.shape, dtype=complex)
+    for k in range(degree + 1):
+        value = value * point + np.where(outside, c[k], c[degree - k])
+    return np.log(np.abs(value)) + np.where(outside, degree * np.log(omega), 0.0)

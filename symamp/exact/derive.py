@@ -10,7 +10,7 @@ from symamp.circuit.stage import Asked, Stage
 from symamp.circuit.stagefile import locate
 from symamp.errors import NetworkError, StageError
 from symamp.exact.cofactors import Ratio, entry_symbols, ratio_of
-from symamp.exact.forms import EXPAND_LIMIT, Expanded, Nested, write_out
+from symamp.exact.forms import EXPAND_LIMIT, Expanded, Nested, write_out_small
 from symamp.exact.modular import PRIME, residue, vanishes
 from symamp.exact.response import Response
 from symamp.exact.system import System, build_system
@@ -28,9 +28,9 @@ def derive(stage: Stage, asked: Asked) -> Response:
 
 def form_of(stage: Stage, ratio: Ratio) -> Expanded | Nested:
     """Written out in lowest terms where the graph's count allows, nested otherwise."""
-    if sum(ratio.graph.count_terms()) <= EXPAND_LIMIT:
-        return write_out(ratio, stage.symbols)
-    return nested_of(stage, ratio)
+    small = sum(ratio.graph.count_terms()) <= EXPAND_LIMIT
+    written = write_out_small(ratio, stage.symbols) if small else None
+    return written or nested_of(stage, ratio)
 
 
 def nested_of(stage: Stage, ratio: Ratio) -> Nested:
@@ -58,10 +58,15 @@ def _refuse_vanishing(stage: Stage, asked: Asked, system: System, ratio: Ratio) 
             "ask for another node, or join it to the drive",
             **place,
         )
-    if zero:
-        drive = ", ".join(asked.drive) or "the test current"
+    if zero and not asked.drive:
         raise StageError(
-            f"response {asked.name!r} is identically zero: nothing carries {drive} to its output",
+            f"response {asked.name!r} is identically zero: no current raises a voltage there",
+            "a source, an op amp or a transformer holds it at 0: ask for another node, or take that part off",
+            **place,
+        )
+    if zero:
+        raise StageError(
+            f"response {asked.name!r} is identically zero: nothing carries {', '.join(asked.drive)} to its output",
             "ask for a node that the drive reaches, or mend the connection",
             **place,
         )

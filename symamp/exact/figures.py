@@ -132,7 +132,9 @@ class Figures:
         low, _ = crossings.ends(self.rows[1])
         row = rows[index] if index < rows.shape[0] else np.zeros(self.points)
         value = _finite(row / self.den[low, np.arange(self.points)])
-        return value if (self.scale == 1).all() else value * self.scale ** (low - index)
+        if not (self.scale == 1).all():
+            value = value * self.scale ** (low - index)
+        return np.where((value == 0) & (row != 0), np.nan, value)  # too small to be a number
 
     # Frequencies, from polynomials in x = ω², frequency in units of `_centred.unit`
 
@@ -150,10 +152,14 @@ class Figures:
 
     def _first_fall(self, weight: Reals) -> Reals:
         """The lowest x at which weight·|N|²/|D|² falls through 1."""
-        level = crossings.level_polynomial(*self._squares, weight)
-        x = crossings.positive_roots(level)
+        level, x = self._level(weight)
         lowest = crossings.first(x, crossings.falls(level, x))
         return crossings.sharpened(self._centred, weight, lowest)
+
+    def _level(self, weight: Reals) -> tuple[Reals, Reals]:
+        """weight·|N|² − |D|² as a polynomial in x, and its positive roots."""
+        level = crossings.level_polynomial(*self._squares, weight)
+        return level, crossings.confirmed(self._centred, weight, crossings.positive_roots(level))
 
     @cached_property
     def bandwidth(self) -> Reals:
@@ -182,8 +188,7 @@ class Figures:
     @cached_property
     def unity_crossings(self) -> Reals:
         """All frequencies in Hz at which the magnitude passes through 1, shape (k, P), nan between them."""
-        level = crossings.level_polynomial(*self._squares, self._unity_weight)
-        x = crossings.positive_roots(level)
+        _, x = self._level(self._unity_weight)
         return self._hertz(crossings.sharpened(self._centred, self._unity_weight, x))
 
     # The peak
@@ -230,7 +235,7 @@ class Figures:
         """x nearest below and above the peak at which the magnitude is 1/√2 of the largest."""
         peak_x, squared = self.largest
         weight = np.where(np.isfinite(squared) & (squared > 0), 2 / squared, np.nan)
-        x = crossings.positive_roots(crossings.level_polynomial(*self._squares, weight))
+        _, x = self._level(weight)
         low = crossings.first(x[::-1], x[::-1] < peak_x)
         high = crossings.first(x, x > peak_x)
         below, above = (crossings.sharpened(self._centred, weight, corner) for corner in (low, high))

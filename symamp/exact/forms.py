@@ -12,18 +12,21 @@ import numpy as np
 from flint import fmpq, fmpq_poly, fmpz_mpoly, fmpz_mpoly_ctx
 
 from symamp.circuit.stage import Symbol
+from symamp.errors import TooLargeError
 from symamp.exact.cofactors import Ratio, entry_symbols
 from symamp.exact.ends import ends_cancel
 from symamp.exact.graded import Coefficients, exact_in_limit, scaled_entries, walk_in_powers
 from symamp.exact.hidden import without_hidden
 from symamp.exact.minors import MinorGraph
-from symamp.exact.polys import S, coefficients_of_s, inverted, lowest_terms, ring_of
+from symamp.exact.polys import S, coefficients_of_s, factors_in_s, inverted, lowest_terms, ring_of
 from symamp.exact.skeleton import Skeleton, skeleton_of
 from symamp.exact.tape import Tape, term_dict
 
 Values = Mapping[str, np.ndarray | float]
-EXPAND_LIMIT = 40_000  # product terms up to which a response is written out
+EXPAND_LIMIT = 100_000  # product terms up to which a response is written out
+WRITTEN_LIMIT = 12_000  # terms above which what was written out helps nobody, and the graph is quicker
 _NESTED_BLOCK = 1024
+_SMALL_WORK = 400_000  # products of terms that are tried, about half a second
 
 
 @dataclass(frozen=True)
@@ -45,6 +48,11 @@ class Expanded:
     @cached_property
     def _tape(self) -> Tape:
         return Tape([*self.numerator, *self.denominator])
+
+    @cached_property
+    def factors(self) -> tuple[list[tuple[fmpz_mpoly, ...]], list[tuple[fmpz_mpoly, ...]]]:
+        """The factors in s of numerator and denominator (see `factors_in_s`)."""
+        return factors_in_s(self.numerator), factors_in_s(self.denominator)
 
     @cached_property
     def symbols(self) -> frozenset[str]:
@@ -70,13 +78,17 @@ class Expanded:
 
 
 def _exact_value(polynomial: fmpz_mpoly, values: Mapping[str, Fraction]) -> fmpq:
-    total = Fraction(0)
+    powers: dict[tuple[str, int], fmpq] = {}
+    total = fmpq(0)
     for monomial, coefficient in term_dict(polynomial).items():
-        product = Fraction(coefficient)
-        for name, exponent in monomial:
-            product *= values[name] ** exponent
+        product = fmpq(coefficient)
+        for factor in monomial:
+            if factor not in powers:
+                value = values[factor[0]] ** factor[1]
+                powers[factor] = fmpq(value.numerator, value.denominator)
+            product *= powers[factor]
         total += product
-    return fmpq(total.numerator, total.denominator)
+    return total
 
 
 @dataclass(frozen=True)
@@ -91,8 +103,6 @@ class Nested:
     terms: int
     reactive: frozenset[str] = frozenset()
     computed: tuple[tuple[str, Callable[[Mapping[str, Any]], Any]], ...] = ()
-    reference: Mapping[str, float] = field(default_factory=dict)
-
     keep: tuple[frozenset[int] | None, frozenset[int] | None] = (None, None)
     limits: Mapping[str, int] = field(default_factory=dict)
     valuation: tuple[int, int] = (0, 0)
@@ -167,7 +177,7 @@ class Nested:
         return np.asarray(float(self.scale) * numerator / denominator)
 
     def exact_coefficients(self, values: Mapping[str, Fraction]) -> tuple[fmpq_poly, fmpq_poly]:
-        """Both polynomials in s with rational coefficients, in lowest terms at this one bias point."""
+        """Both polynomials in s with rational coefficients, without what they share whatever the values."""
         full = self.full_values(values)
         if self.limits:
             numerator, denominator = exact_in_limit(self.graph, full, self.limits, self.valuation)
@@ -175,8 +185,9 @@ class Nested:
             entries = [_rational_entry(entry, full) for entry in self.graph.entries]
             numerator, denominator = self.graph.walk(entries, fmpq_poly([1]), fmpq_poly([0]))
         numerator = numerator * fmpq(self.scale.numerator, self.scale.denominator)
-        common = numerator.gcd(denominator)
-        if common.degree() > 0:
+        # What cancels whatever the values is divided out; what cancels at this point alone stays, as elsewhere.
+        if self.skeleton.low + self.skeleton.common > 0:
+            common = numerator.gcd(denominator)
             numerator, denominator = numerator / common, denominator / common
         if self.keep == (None, None):
             return numerator, denominator
@@ -226,9 +237,25 @@ def _kept(coefficients: np.ndarray, powers: frozenset[int]) -> np.ndarray:
     return kept[: max((k + 1 for k, keep in enumerate(rows) if keep), default=1)]
 
 
-def write_out(ratio: Ratio, symbols: Mapping[str, Symbol], extra: tuple[str, ...] = ()) -> Expanded:
-    """The graph written out in lowest terms. `extra` are generators beyond the stage's symbols (no unit, no value)."""
-    numerator, denominator = raw_polynomials(ratio, symbols, extra)
+def write_out(ratio: Ratio, symbols: Mapping[str, Symbol]) -> Expanded:
+    """The graph written out in lowest terms."""
+    numerator, denominator = raw_polynomials(ratio, symbols)
+    return expanded_of(*lowest_terms(numerator, denominator))
+
+
+def write_out_small(
+    ratio: Ratio, symbols: Mapping[str, Symbol], rename: Mapping[str, str] | None = None
+) -> Expanded | None:
+    """The graph written out where that is small, with symbols made one with others; else None.
+
+    Where symbols are made one, the graph's count of product terms says little: most of them are alike.
+    """
+    try:
+        numerator, denominator = raw_polynomials(ratio, symbols, rename, _SMALL_WORK if rename else None)
+    except TooLargeError:
+        return None
+    if len(numerator) + len(denominator) > WRITTEN_LIMIT:
+        return None
     return expanded_of(*lowest_terms(numerator, denominator))
 
 
@@ -238,11 +265,14 @@ def expanded_of(numerator: fmpz_mpoly, denominator: fmpz_mpoly) -> Expanded:
 
 
 def raw_polynomials(
-    ratio: Ratio, symbols: Mapping[str, Symbol], extra: tuple[str, ...] = ()
+    ratio: Ratio, symbols: Mapping[str, Symbol], rename: Mapping[str, str] | None = None, work: int | None = None
 ) -> tuple[fmpz_mpoly, fmpz_mpoly]:
-    """Numerator and denominator as they come from the graph, common factors and all."""
-    names = [name for name in entry_symbols(ratio.graph) if name not in extra]
-    context = ring_of(symbols, names, extra)
+    """Numerator and denominator as they come from the graph, common factors and all.
+
+    `rename` makes symbols one with others. Raises TooLargeError after `work` products of terms.
+    """
+    named = {name: (rename or {}).get(name, name) for name in entry_symbols(ratio.graph)}
+    context = ring_of(symbols, named.values())
     generator = dict(zip(context.names(), context.gens(), strict=True))
     entries = []
     inverse: set[str] = set()
@@ -251,11 +281,27 @@ def raw_polynomials(
         for coefficient, symbol, power, s_power in entry:
             product = context.constant(coefficient)
             if symbol is not None:
-                product *= generator[symbol]
+                product *= generator[named[symbol]]
                 if power < 0:
-                    inverse.add(symbol)
+                    inverse.add(named[symbol])
             total += product * generator[S] if s_power else product
         entries.append(total)
-    numerator, denominator = ratio.graph.walk(entries, context.constant(1), context.constant(0))
+    one, zero = context.constant(1), context.constant(0)
+    numerator, denominator = ratio.graph.walk(entries, one, zero, _meter(work))
     numerator, denominator = inverted(numerator, denominator, inverse)
     return numerator * ratio.scale.numerator, denominator * ratio.scale.denominator
+
+
+def _meter(work: int | None) -> Callable[[Any, Any], None] | None:
+    """Counts products of terms, and stops when there have been too many."""
+    if work is None:
+        return None
+    spent = 0
+
+    def count(entry: Any, minor: Any) -> None:
+        nonlocal spent
+        spent += len(entry) * len(minor)
+        if spent > work:
+            raise TooLargeError(f"more than {work:,} products of terms")
+
+    return count

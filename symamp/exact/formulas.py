@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from math import pi
 from typing import Any, Protocol
 
@@ -12,9 +13,7 @@ from symamp.circuit.stage import Stage
 from symamp.exact.asked_quantity import Quantity
 from symamp.exact.forms import Expanded, Nested
 from symamp.exact.polys import (
-    by_power,
-    coefficients_of_s,
-    from_coefficients,
+    held,
     into_ring,
     lowest_terms,
     ring_of,
@@ -47,13 +46,12 @@ class Formed(Protocol):
     def negative_ok(self) -> frozenset[str]: ...
 
 
-_FACTOR_LIMIT = 2000  # terms above which a polynomial in s is not factored in search of its roots
 
 
 def formula_of(response: Formed, quantity: Quantity) -> Formula | None:
-    """The formula of a quantity (its face left aside only where there is none), or None."""
+    """The formula of a quantity, or None: of a face (not in dB or degrees) where the quantity's sign is sure."""
     if quantity.face is not None:
-        return None
+        return _face_formula(response, quantity)
     ratio = rational_of(response, quantity)
     if ratio is not None:
         return shape_of(*ratio, weights=response.bias_values or None)
@@ -62,6 +60,27 @@ def formula_of(response: Formed, quantity: Quantity) -> Formula | None:
     if quantity.name in ("bandwidth", "gain_bandwidth"):
         return _one_pole_band(response, quantity)
     return None
+
+
+def _face_formula(response: Formed, quantity: Quantity) -> Formula | None:
+    """Of what is positive as it is, its own formula; of what is rational, its real and imaginary part and size."""
+    whole = replace(quantity, face=None)
+    if quantity.name in ("bandwidth", "gain_bandwidth"):
+        return formula_of(response, whole)
+    ratio = rational_of(response, whole)
+    if ratio is None or quantity.face not in ("re", "im", "magnitude", "hz"):
+        return None
+    above, below = ratio
+    if quantity.face == "im":
+        above = 0 * above
+    if quantity.face in ("re", "im") or above.is_zero():
+        return shape_of(*lowest_terms(above, below), weights=response.bias_values or None)
+    sign = _sign(above) * _sign(below)
+    if not sign or response.negative_ok & held(above, below):
+        return None
+    if quantity.face == "hz":
+        return _over_two_pi(response, above * sign, below)
+    return shape_of(above * sign, below, weights=response.bias_values or None)
 
 
 def _one_pole_band(response: Formed, quantity: Quantity) -> Formula | None:
@@ -73,9 +92,14 @@ def _one_pole_band(response: Formed, quantity: Quantity) -> Formula | None:
     above = form.numerator[0] if quantity.name == "gain_bandwidth" else b0
     if _sign(b0) <= 0 or _sign(b1) <= 0 or not _sign(above) or response.negative_ok & form.symbols:
         return None
-    names = ring_of(response.stage.symbols, form.symbols).names()
+    return _over_two_pi(response, above * _sign(above), b1)
+
+
+def _over_two_pi(response: Formed, above: fmpz_mpoly, below: fmpz_mpoly) -> Formula:
+    """above/(2π·below)."""
+    names = ring_of(response.stage.symbols, held(above, below)).names()
     context = fmpz_mpoly_ctx.get(("pi", *names), Ordering.lex)
-    above, below = (into_ring(p, context) for p in (above * _sign(above), 2 * b1))
+    above, below = (into_ring(p, context) for p in (above, 2 * below))
     below *= context.gens()[0]
     weights = {**response.bias_values, "pi": pi} if response.bias_values else None
     return shape_of(*lowest_terms(above, below), weights=weights)
@@ -124,11 +148,16 @@ def _coefficient_ratio(form: Expanded, quantity: Quantity) -> PolyRatio | None:
     return (row[index], unit) if index < len(row) else (zero, one)
 
 
-def _root_coefficients(response: Formed, quantity: Quantity) -> tuple[fmpz_mpoly, ...]:
+def _root_form(response: Formed, quantity: Quantity) -> Expanded:
     form = response.form
     if quantity.name == "z" and response.first_zero is not None:
         form = response.first_zero
     assert isinstance(form, Expanded)
+    return form
+
+
+def _root_coefficients(response: Formed, quantity: Quantity) -> tuple[fmpz_mpoly, ...]:
+    form = _root_form(response, quantity)
     return form.denominator if quantity.name == "p" else form.numerator
 
 
@@ -140,7 +169,7 @@ def _rational_root(response: Formed, quantity: Quantity) -> PolyRatio | None:
     if response.apart:
         k = _apart_index(response, coefficients, index)
         return None if k is None or coefficients[k].is_zero() else (-coefficients[k - 1], coefficients[k])
-    factor = _factor_of_root(response, coefficients, index)
+    factor = _factor_of_root(response, quantity, coefficients)
     if factor is None or len(factor[0]) != 2:
         return None
     return -factor[0][0], factor[0][1]
@@ -164,14 +193,14 @@ def _quadratic_root(response: Formed, quantity: Quantity) -> QuadraticRoot | Non
     coefficients = _root_coefficients(response, quantity)
     if len(coefficients) <= index or response.apart:
         return None
-    factor = _factor_of_root(response, coefficients, index)
+    factor = _factor_of_root(response, quantity, coefficients)
     if factor is None or len(factor[0]) != 3:
         return None
     c, b, a = factor[0]
     weights = response.bias_values or None
     first = QuadraticRoot.of(a, b, c, 1, weights)
     second = QuadraticRoot.of(a, b, c, -1, weights)
-    smaller = first
+    smaller = second if _sign(b) < 0 else first
     if weights is not None and not response.missing:
         values = [float(_value(p, response)) for p in (a, b, c)]
         roots = _quadratic_values(*values)
@@ -196,10 +225,11 @@ def _quadratic_values(a: float, b: float, c: float) -> tuple[complex, complex]:
 
 
 def _factor_of_root(
-    response: Formed, coefficients: tuple[fmpz_mpoly, ...], index: int
+    response: Formed, quantity: Quantity, coefficients: tuple[fmpz_mpoly, ...]
 ) -> tuple[tuple[fmpz_mpoly, ...], int] | None:
-    """The irreducible factor in s that has the index-th root, and which of its roots that is (from 0)."""
-    factors = factors_in_s(coefficients)
+    """The irreducible factor in s that has the root asked for, and which of its roots that is (from 0)."""
+    index = quantity.index or 1
+    factors = _root_form(response, quantity).factors[0 if quantity.name == "z" else 1]
     if len(factors) == 1 and len(factors[0]) - 1 == len(coefficients) - 1:
         return factors[0], index - 1
     if response.missing:
@@ -214,20 +244,6 @@ def _factor_of_root(
         return None
     _, which, factor = places[index - 1]
     return factor, which
-
-
-def factors_in_s(coefficients: tuple[fmpz_mpoly, ...]) -> list[tuple[fmpz_mpoly, ...]]:
-    """The factors of positive degree in s, each as coefficients of s ascending, repeated by multiplicity."""
-    polynomial = from_coefficients(coefficients)
-    if len(polynomial) > _FACTOR_LIMIT:
-        return [tuple(coefficients)]
-    if len(coefficients) == 2 and not coefficients[0].is_zero():
-        return [tuple(coefficients)]
-    found = []
-    for factor, multiplicity in polynomial.factor()[1]:
-        if max(by_power(factor)) > 0:
-            found.extend([coefficients_of_s(factor)] * multiplicity)
-    return found
 
 
 def _value(polynomial: fmpz_mpoly, response: Formed) -> Any:

@@ -9,7 +9,7 @@ the same idea.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from math import comb
 from typing import Any
@@ -42,15 +42,24 @@ class MinorGraph:
         """How many minors there are."""
         return len(self.edges) - 1
 
-    def walk(self, entry_values: Sequence[Any], one: Any, zero: Any) -> tuple[Any, Any]:
+    def walk(
+        self,
+        entry_values: Sequence[Any],
+        one: Any,
+        zero: Any,
+        before: Callable[[Any, Any], None] | None = None,
+    ) -> tuple[Any, Any]:
         """Numerator and denominator over any ring whose elements know +, − and ·.
 
         `entry_values[i]` is the value of `entries[i]`: integers, polynomials, balls, numpy arrays over points.
+        `before` is told of each product, entry and minor, before it is worked out.
         """
         values: list[Any] = [one]
         for edges in self.edges[1:]:
             total: Any = None
             for child, entry, sign in edges:
+                if before is not None:
+                    before(entry_values[entry], values[child])
                 product = entry_values[entry] * values[child]
                 if total is None:
                     total = product if sign > 0 else -product

@@ -45,7 +45,11 @@ def remarks_beside(figures: Figures, quantity: Quantity, point: int = 0) -> list
 
 def _peaking(here: Figures) -> list[str]:
     size, peak = abs(here.dc[0]), here.peak[0]
-    if not size > 0 or math.isnan(here.bandwidth[0]) or not peak > _THREE_DB * size:
+    if not size > 0 or math.isnan(here.bandwidth[0]):
+        return []
+    if here.undamped.any():
+        return ["the magnitude is infinite at an undamped pole"]
+    if not peak > _THREE_DB * size:
         return []
     above = show_value(20 * math.log10(peak / size), "dB", 3)
     return [f"the magnitude peaks at {show_value(here.peak_frequency[0], 'Hz')}, {above} above DC"]

@@ -15,6 +15,8 @@ from symamp.exact.modular import PRIME
 S = "s"
 _GCD_AT_ONCE = 5000  # terms up to which a greatest common divisor is sought without asking whether there may be one
 
+_FACTOR_LIMIT = 2000  # terms above which a polynomial in s is not factored in search of its roots
+
 # What an analog designer writes first: transconductances, then conductances, resistances, reactances.
 _RANK = {
     kinds.TRANSCONDUCTANCE: 0,
@@ -94,6 +96,20 @@ def from_coefficients(coefficients: Sequence[fmpz_mpoly]) -> fmpz_mpoly:
     return total
 
 
+def factors_in_s(coefficients: tuple[fmpz_mpoly, ...]) -> list[tuple[fmpz_mpoly, ...]]:
+    """The factors of positive degree in s, each as coefficients of s ascending, repeated by multiplicity."""
+    polynomial = from_coefficients(coefficients)
+    if len(polynomial) > _FACTOR_LIMIT:
+        return [tuple(coefficients)]
+    if len(coefficients) == 2 and not coefficients[0].is_zero():
+        return [tuple(coefficients)]
+    found = []
+    for factor, multiplicity in polynomial.factor()[1]:
+        if max(by_power(factor)) > 0:
+            found.extend([coefficients_of_s(factor)] * multiplicity)
+    return found
+
+
 def least_exponents(polynomials: Iterable[fmpz_mpoly]) -> list[int]:
     """The least exponent of each generator over all terms of the polynomials."""
     least: list[int] | None = None
@@ -113,9 +129,8 @@ def inverted(numerator: fmpz_mpoly, denominator: fmpz_mpoly, names: set[str]) ->
     places = [i for i, name in enumerate(context.names()) if name in names]
     if not places:
         return numerator, denominator
-    top = {
-        i: max((int(e[i]) for p in (numerator, denominator) for e in p.monoms()), default=0) for i in places
-    }
+    degrees = numerator.degrees(), denominator.degrees()
+    top = {i: max(0, *(int(each[i]) for each in degrees)) for i in places}
 
     def flip(polynomial: fmpz_mpoly) -> fmpz_mpoly:
         terms = {}

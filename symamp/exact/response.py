@@ -11,9 +11,10 @@ from typing import Any
 import numpy as np
 from flint import fmpq_poly
 
+from symamp.circuit.bias import solve
 from symamp.circuit.stage import Asked, Stage
 from symamp.errors import StageError
-from symamp.exact.asked_quantity import parse_quantity, unit_of
+from symamp.exact.asked_quantity import Quantity, parse_quantity, unit_of
 from symamp.exact.crossings import ends, without_common_s
 from symamp.exact.ends import with_sure_ends
 from symamp.exact.figures import Figures
@@ -124,25 +125,42 @@ class Response:
     def at(self, hz: Any, bias: Mapping[str, Any] | None = None) -> Any:
         """The complex response at a frequency in Hz, or an array of them.
 
-        `bias` replaces bias values by symbol, each a number or an array that broadcasts with `hz`. A complex
-        number for scalars, else an array. Raises StageError where a symbol has no value.
+        `bias` replaces bias values by symbol or alias, each a number or an array that broadcasts with `hz`. A
+        complex number for scalars, else an array. Raises StageError where a symbol has no value, or has two.
         """
-        values: dict[str, Any] = {**self.bias_values, **(bias or {})}
-        unknown = [name for name in bias or {} if name not in self.stage.symbols]
-        if unknown:
-            raise StageError(f"{unknown[0]!r} is no symbol of this stage")
-        lacking = [name for name in self.missing if name not in values]
-        if lacking:
-            raise StageError(f"{', '.join(lacking)} has no value", "give it in [bias], or pass bias={...}")
+        given = bias or {}
         arrays = np.broadcast_arrays(
-            np.asarray(hz, dtype=float), *(np.asarray(values[n], dtype=float) for n in (bias or {}))
+            np.asarray(hz, dtype=float), *(np.asarray(value, dtype=float) for value in given.values())
         )
         shape = arrays[0].shape
         s = 2j * np.pi * arrays[0].ravel()
-        for name, array in zip(bias or {}, arrays[1:], strict=True):
-            values[name] = array.ravel()
-        result = self._at(s, values).reshape(shape)
+        values = self._replaced(dict(zip(given, (array.ravel() for array in arrays[1:]), strict=True)))
+        lacking = [name for name in self.missing if name not in values]
+        if lacking:
+            raise StageError(f"{', '.join(lacking)} has no value", "give it in [bias], or pass bias={...}")
+        with np.errstate(all="ignore"):  # infinite at a pole, and not a number where all is 0
+            result = self._at(s, values).reshape(shape)
         return complex(result) if shape == () else result
+
+    def _replaced(self, given: Mapping[str, np.ndarray]) -> dict[str, Any]:
+        """The bias values with those given in their place, symbols before the aliases that may need them."""
+        known = {name: powers for name, powers in self.stage.aliases.items() if name not in self.stage.symbols}
+        aliases = {name: solve(known[name]) for name in given if name in known}
+        targets = [aliases[name].target if name in aliases else name for name in given]
+        for name, target in zip(given, targets, strict=True):
+            if target not in self.stage.symbols:
+                raise StageError(f"{name!r} is no symbol of this stage")
+            if targets.count(target) > 1:
+                raise StageError(f"{name} and another value both set {target}", "give one of the two")
+        values: dict[str, Any] = {**self.bias_values, **{n: v for n, v in given.items() if n not in aliases}}
+        for name in sorted(aliases, key=lambda alias: len(aliases[alias].times)):
+            found = given[name] ** float(aliases[name].exponent)
+            for other, power in aliases[name].times.items():
+                if other not in values:
+                    raise StageError(f"{name} needs a value of {other} beside it", f"give {other} too")
+                found = found * values[other] ** power
+            values[aliases[name].target] = found
+        return values
 
     def _at(self, s: np.ndarray, values: Values) -> np.ndarray:
         varied = any(isinstance(v, np.ndarray) and v.ndim for v in values.values())
@@ -212,10 +230,26 @@ class Response:
         figures = self.zero_figures(self.bias_values, 1) or self.bias_figures
         return [complex(z[0]) for z in figures.zeros if not np.isnan(z[0])]
 
+    def unit_of(self, quantity: Quantity) -> str:
+        """The unit of a quantity of this response."""
+        return unit_of(quantity, self.unit, self._first_power)
+
+    @cached_property
+    def _first_power(self) -> int:
+        """The lowest power of s in the denominator, numerator and denominator sharing none."""
+        form = self.form
+        if isinstance(form, Expanded):
+            rows = (form.numerator, form.denominator)
+            above, below = ([k for k, c in enumerate(row) if not c.is_zero()] for row in rows)
+        else:
+            kept = zip(form.skeleton.powers, form.keep, strict=True)
+            above, below = ([k for k in powers if keep is None or k in keep] for powers, keep in kept)
+        return below[0] - min(above[0], below[0]) if above and below else 0
+
     def quantity(self, name: str) -> QuantityValue:
         """A quantity by name ("dc", "p1.hz", "at(10 MHz).db"): value at the bias point, and formula."""
         asked = parse_quantity(name)
-        unit = unit_of(asked, self.unit)
+        unit = self.unit_of(asked)
         shape = formula_of(self, asked)
         if self.missing:
             why = f"{', '.join(self.missing)} has no bias value"
@@ -312,5 +346,5 @@ def _exact_roots(polynomial: fmpq_poly) -> np.ndarray:
     for root, multiplicity in roots:
         value = complex(float(root.real.mid()), float(root.imag.mid()))
         found.extend([value] * multiplicity)
-    found.sort(key=lambda r: (abs(r), -r.imag))
+    found.sort(key=lambda r: (abs(r), -abs(r.imag), -r.imag))  # pairs of one magnitude stay together
     return np.array(found, dtype=complex).reshape(-1, 1)

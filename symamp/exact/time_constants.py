@@ -9,15 +9,16 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from fractions import Fraction
+from math import lcm
 
-import numpy as np
 from flint import fmpz_mpoly
 
 from symamp.circuit.kinds import CAPACITANCE, INDUCTANCE
 from symamp.circuit.stage import Asked, Stage
 from symamp.exact.cofactors import Ratio, entry_symbols, ratio_of
-from symamp.exact.derive import nested_of
 from symamp.exact.forms import EXPAND_LIMIT, raw_polynomials
+from symamp.exact.minors import MinorGraph
 from symamp.exact.polys import by_power, lowest_terms
 from symamp.exact.shape import Shape, shape_in_resistances
 from symamp.exact.system import build_system
@@ -57,37 +58,67 @@ def time_constants(
     if missing:
         why = f"{', '.join(missing)} has no bias value"
         return tuple(TimeConstant(n, None, None, None, formulas.get(n), why) for n in names)
-    seconds = _seconds(stage, ratio, names)
-    total = float(np.sum(seconds))
+    b0, added = _linear_terms(stage, ratio)
+    if not b0:
+        why = "the others at rest leave no path at DC: the resistance is infinite"
+        return tuple(TimeConstant(n, None, None, None, formulas.get(n), why) for n in names)
+    total = sum(added.values())
     found = []
-    for name, tau in zip(names, seconds, strict=True):
-        if not np.isfinite(tau):
-            why = "the others at rest leave no path at DC: the resistance is infinite"
-            found.append(TimeConstant(name, None, None, None, formulas.get(name), why))
-            continue
-        value = float(stage.bias[name])
-        if stage.symbols[name].nature == CAPACITANCE:
-            resistance = tau / value if value else None
-        else:
-            resistance = value / tau if tau else None
-        share = float(tau / total) if np.isfinite(total) and total else None
+    for name in names:
+        tau, value = added.get(name, Fraction(0)) / b0, stage.bias[name]
+        above, below = (tau, value) if stage.symbols[name].nature == CAPACITANCE else (value, tau)
+        resistance = float(above / below) if below else None
+        share = float(tau * b0 / total) if total else None
         found.append(TimeConstant(name, resistance, float(tau), share, formulas.get(name)))
     return tuple(found)
 
 
-def _seconds(stage: Stage, ratio: Ratio, names: list[str]) -> np.ndarray:
-    """b1/b0 with one reactive part left at a time: one bias point a part."""
-    values = {name: float(value) for name, value in stage.bias.items()}
-    points = len(names)
-    arrays: dict[str, np.ndarray | float] = dict(values)
-    for i, name in enumerate(names):
-        arrays[name] = np.where(np.arange(points) == i, values[name], 0.0)
-    given = nested_of(stage, ratio).coefficients(arrays, points)
-    below = given.denominator
-    with np.errstate(all="ignore"):
-        b1 = below[1] if below.shape[0] > 1 else np.zeros(points)
-        tau = b1 / below[0] / given.omega
-    return np.where(below[0] == 0, np.inf, tau + 0.0)  # + 0.0 makes a zero of −0.0
+def _linear_terms(stage: Stage, ratio: Ratio) -> tuple[Fraction, dict[str, Fraction]]:
+    """b0, and what each reactive part adds to b1, both times one number: exactly, at the bias point.
+
+    b1 is linear in the reactive parts, so each adds its value times the determinant's derivative at s = 0, and
+    all derivatives come from one walk down the graph (Baur and Strassen, Theor. Comput. Sci. 22, 1983).
+    """
+    graph = ratio.graph
+    entries = _integer_entries(graph, stage.bias)
+    at_rest = [sum(value for _, s_power, value in terms if not s_power) for terms in entries]
+    values = [1]
+    for edges in graph.edges[1:]:
+        values.append(sum(sign * at_rest[entry] * values[child] for child, entry, sign in edges))
+    slopes, entry_slopes = [0] * len(values), [0] * len(entries)
+    for factor, node in graph.denominator:
+        slopes[node] += factor
+    for node in range(len(values) - 1, 0, -1):
+        slope = slopes[node]
+        for child, entry, sign in graph.edges[node] if slope else ():
+            slopes[child] += sign * slope * at_rest[entry]
+            entry_slopes[entry] += sign * slope * values[child]
+    added: dict[str, Fraction] = {}
+    for terms, slope in zip(entries, entry_slopes, strict=True):
+        for symbol, s_power, value in terms if slope else ():
+            if s_power and symbol is not None:
+                added[symbol] = added.get(symbol, Fraction(0)) + value * slope
+    return Fraction(sum(factor * values[node] for factor, node in graph.denominator)), added
+
+
+def _integer_entries(
+    graph: MinorGraph, bias: Mapping[str, Fraction]
+) -> list[list[tuple[str | None, int, int]]]:
+    """Each entry's terms as (symbol, power of s, value), each matrix row times what makes it whole."""
+    entries: list[list[tuple[str | None, int, Fraction]]] = [
+        [
+            (symbol, s_power, coefficient * (bias[symbol] ** power if symbol is not None else Fraction(1)))
+            for coefficient, symbol, power, s_power in entry
+        ]
+        for entry in graph.entries
+    ]
+    whole: dict[int, int] = {}
+    for terms, row in zip(entries, graph.entry_rows, strict=True):
+        whole[row] = lcm(whole.get(row, 1), *(value.denominator for _, _, value in terms))
+    return [
+        [(symbol, s_power, int(value * whole[row])) for symbol, s_power, value in terms]
+        for terms, row in zip(entries, graph.entry_rows, strict=True)
+    ]
 
 
 def _formulas(

@@ -95,22 +95,18 @@ def asked_words(asked: Asked) -> str:
     if asked.looking_into is not None:
         return f"impedance at {_pair(asked.looking_into)}{without}"
     above = f"I({asked.to_source})" if asked.to_source is not None else f"V({_pair(asked.to or ('', ''))})"
-    drive = _drive(asked)
-    below = f"V({_pair(asked.over)})" if asked.over is not None else drive
-    tail = f", driven by {drive}" if asked.over is not None else ""
-    return f"{above} / {below}{tail}{without}"
+    single = next(iter(asked.drive)) if list(asked.drive.values()) == [1] else None
+    if asked.over is not None:
+        return f"{above} / V({_pair(asked.over)}), driven by {single or _weights(asked)}{without}"
+    if single:
+        return f"{above} / {single}{without}"
+    return f"{above} for {_weights(asked)}{without}"
 
 
 def _pair(pair: tuple[str, str]) -> str:
     return pair[0] if pair[1] == GROUND else ", ".join(pair)
 
 
-def _drive(asked: Asked) -> str:
-    if len(asked.drive) == 1 and next(iter(asked.drive.values())) == 1:
-        return next(iter(asked.drive))
-    weights = []
-    for label, weight in asked.drive.items():
-        sign = MINUS if weight < 0 else "+"
-        size = "" if abs(weight) == 1 else f"{abs(weight)}·"
-        weights.append(f"{sign} {size}{label}")
-    return f"({' '.join(weights).removeprefix('+ ')})"
+def _weights(asked: Asked) -> str:
+    """The drive: "VP = 1/2, VN = −1/2"; the response is the output for this drive."""
+    return ", ".join(f"{label} = {weight}".replace("-", MINUS) for label, weight in asked.drive.items())

@@ -219,6 +219,22 @@ def test_a_node_that_looks_like_signal_ground_draws_a_warning() -> None:
     assert stage.warnings == ("node GND is not signal ground: the only one is gnd",)
 
 
+def test_a_loose_end_draws_a_warning_with_the_name_that_was_meant() -> None:
+    stage = read(mend('CL = ["out", "gnd"]', 'CL = ["ot", "gnd"]\nCX = ["out", "out"]', NO_BIAS))
+    assert stage.warnings == (
+        "node ot is on CL alone, so that no current flows in it; was out meant?",
+        "both ends of CX are on node out: it has no effect",
+    )
+
+
+def test_a_loose_end_that_a_response_asks_about_is_meant() -> None:
+    asked = 'probe = { looking_into = "probe" }\nlate ='
+    text = mend("late =", asked, NO_BIAS)
+    assert (
+        read(mend('CL = ["out", "gnd"]', 'CL = ["out", "gnd"]\nCP = ["out", "probe"]', text)).warnings == ()
+    )
+
+
 def test_a_byte_order_mark_and_windows_line_ends_are_read() -> None:
     data = b"\xef\xbb\xbf" + CASCODE.replace("\n", "\r\n").encode()
     assert parse_stage(data, file=None, folder=Path()).bias == read(CASCODE).bias
@@ -259,3 +275,21 @@ def test_a_stage_with_something_struck_or_doubled_is_read_or_refused_in_words(da
         assert error.file == "my.stage.toml"  # noqa: PT017
     else:
         assert stage.symbols
+
+
+def test_a_supply_that_is_not_written_as_ground_draws_a_warning() -> None:
+    text = """\
+[mosfet]
+M1 = { gate = "in", drain = "vdd", source = "out" }
+[resistor]
+RL = ["out", "gnd"]
+[voltage_source]
+VIN = ["in", "gnd"]
+[response]
+gain = { from = "VIN", to = "out" }
+[bias]
+M1 = { gm = "4 mS", gds = "0.1 mS", gmb = 0 }
+RL = "2 kohm"
+"""
+    stage = parse_stage(text.encode(), file="follower.stage.toml", folder=Path())
+    assert any("node vdd is on M1 alone" in warning and "gnd" in warning for warning in stage.warnings)

@@ -53,6 +53,13 @@ def test_a_table_in_any_units_and_aliases(tmp_path: Path) -> None:
     assert table.rows[1] == (Fraction(8, 1000), Fraction(1, 2500), Fraction(3, 10**12))
 
 
+def test_bare_numbers_under_a_head_without_unit_draw_a_warning(tmp_path: Path) -> None:
+    stage = read(table_stage(tmp_path, "gm1, CL [pF], gds1\n0.004, 1, 0.2 mS\n"), tmp_path)
+    (warning,) = stage.warnings
+    assert "column gm1" in warning
+    assert "read in S" in warning
+
+
 def test_with_no_bias_the_first_row_is_the_bias_and_columns_give_parameters(tmp_path: Path) -> None:
     header = "gm1 [mS],gds1 [mS],cgd1 [fF],gm2 [mS],gds2 [mS],CL\n"
     stage = read(
@@ -77,6 +84,7 @@ BAD_TABLES = [
     ("gm1 [mS]\nnan\n", 2, "row 1, column gm1", "no plain number"),
     ("gm1 [pF]\n4\n", 1, "column gm1", "no unit for gm1"),
     ("gm9 [mS]\n4\n", 1, "column gm9", "nearest known one is gm1"),
+    ("gds [mS]\n4\n", 1, "column gds", "nearest known one is gds1"),  # a bare name heads no column
     ("cgd1 [fF]\n4\n", 1, "column cgd1", "M1 has no cgd"),
     ("gm1 [mS],gm1 [mS]\n4,4\n", 1, None, "stands twice"),
     ("gds1 [mS],ro1 [kohm]\n4,4\n", 1, "column ro1", "both set gds1"),

@@ -12,7 +12,9 @@ from scipy.linalg import eig
 
 from symamp.circuit.checks import nodes_of
 from symamp.circuit.stage import GROUND, Asked, Part, Stage
+from symamp.exact.asked_quantity import parse_quantity
 from symamp.exact.derive import derive
+from symamp.exact.figures import Figures
 from symamp.exact.response import Response
 
 STAGES = {
@@ -198,3 +200,16 @@ def test_a_ladder_of_200_nodes_is_quick() -> None:
         drop = drop + z * voltage
         voltage = voltage + drop
     np.testing.assert_allclose(response.at(hz), 1 / voltage, rtol=1e-9)
+
+
+def test_a_long_ladder_has_no_gain_to_fall_through_one() -> None:
+    """Its squared magnitude is a polynomial of degree 99, whose rounding must not be taken for a crossing."""
+    stage = ladder(100)
+    figures = derive(stage, stage.asked["transfer"]).bias_figures
+    assert np.isnan(figures.value(parse_quantity("unity_gain_frequency"))[0])
+    assert np.isnan(figures.value(parse_quantity("phase_margin"))[0])
+    louder = Figures(1000 * figures.num, figures.den, "", figures.scale)
+    # By 1/A of the chain of sections in 120 digits, halving an interval.
+    assert louder.value(parse_quantity("unity_gain_frequency"))[0] == pytest.approx(
+        1855723.31684957, rel=1e-12
+    )

@@ -359,3 +359,21 @@ def test_phase_margin_against_second_pole(r, zero, margin):
     loop = with_roots(1e6, [-gain_bandwidth / 1e6, -r * gain_bandwidth], zeros)
     # the row with a zero depends on the unnamed DC gain in its last digit: 61.9 at 1e6, 62.0 at 500
     assert value(loop, "phase_margin") == pytest.approx(margin, abs=0.12 if zero else 0.06)
+
+
+# At the ends of what numbers hold
+
+
+def test_an_undamped_pole_stands_in_a_remark_beside_the_bandwidth() -> None:
+    undamped = response([1], [1, 0, 1])
+    assert value(undamped, "bandwidth") == pytest.approx(math.sqrt(1 + math.sqrt(2)) / TWO_PI)
+    assert remarks_beside(undamped, parse_quantity("bandwidth")) == [
+        "the magnitude is infinite at an undamped pole"
+    ]
+
+
+def test_a_coefficient_too_small_for_a_number_is_no_zero() -> None:
+    tiny = Figures(np.array([[1.0]]), np.array([[1.0], [1.0], [1.0]]), "", 1e200)
+    assert value(tiny, "b1") == pytest.approx(1e-200)
+    assert math.isnan(value(tiny, "b2"))
+    assert why(tiny, "b2") == "the coefficient is beyond the range of numbers"
