@@ -36,7 +36,7 @@ class InputError(SymampError, ValueError):
     def __str__(self) -> str:
         place = self.file or ""
         if self.line is not None:
-            place = f"{place}:{self.line}"
+            place = f"{place}:{self.line}" if place else f"line {self.line}"
         head = ": ".join(part for part in (place, self.key or "") if part)
         body = f"{self.problem}; {self.remedy}" if self.remedy else self.problem
         return f"{head}: {body}" if head else body

@@ -17,6 +17,9 @@ from symamp.circuit.kinds import KINDS as PARTS
 from symamp.circuit.schema import ASSUMPTION_KEYS
 from symamp.cli import cli
 from symamp.exact.asked_quantity import FACES, NAMES
+from symamp.exact.forms import EXPAND_LIMIT, WRITTEN_LIMIT
+from symamp.judge.ledger import POINTS, SEED
+from symamp.judge.sets import SHARES_LIMIT
 
 PAGE = (ROOT / "README.md").read_text(encoding="utf-8")
 
@@ -80,6 +83,16 @@ def test_options_belong_to_the_commands_that_the_readme_says() -> None:
     rows = re.findall(r"^\| `(--[a-z-]+)` \| ([^|]+) \|", PAGE, re.MULTILINE)
     said = {option: set(re.findall(r"`([a-z]+)`", where)) for option, where in rows}
     assert said == {option: {n for n, c in commands().items() if option in options(c)} for option in said}
+
+
+def test_numbers_of_the_readme_are_those_of_the_code() -> None:
+    assert f"sampled from a box ({POINTS})" in PAGE
+    assert f"the seed of the sampling ({SEED})" in PAGE
+    assert f"up to {SHARES_LIMIT} assumptions" in PAGE
+    written_out = f"more than {EXPAND_LIMIT:,} product terms, or of {WRITTEN_LIMIT:,} once".replace(
+        ",0", " 0"
+    )
+    assert written_out in PAGE
 
 
 def test_assumptions_are_those_of_the_readme() -> None:

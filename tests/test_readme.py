@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 
 from examples import ROOT, blocks, copy_of, counted, hold, rendered
 
 from symamp.circuit.stagefile import parse_stage
+from symamp.exact.derive import derive
 
 README = ROOT / "README.md"
 PAGE = README.read_text(encoding="utf-8")
@@ -32,6 +34,46 @@ def test_the_stage_file_in_short_is_one(tmp_path: Path) -> None:
     stage = parse_stage(text.encode(), file="README.md", folder=tmp_path)
     assert stage.warnings == ()
     assert set(stage.asked) == {"gain", "rout"}
+
+
+def rows(heading: str) -> list[str]:
+    """The rows of the table below a heading, its head first."""
+    section = PAGE.split(f"\n### {heading}\n")[1].split("\n#")[0]
+    return [line for line in section.splitlines() if line.startswith("| ") and "---" not in line]
+
+
+def test_the_responses_of_the_table_are_read(tmp_path: Path) -> None:
+    written = [re.findall(r"`([^`]+)`", row)[0] for row in rows("Responses")[1:]]
+    assert len(written) == 8
+    network = """
+        [voltage_source]
+        VIN = ["in", "gnd"]
+        VP = ["p", "gnd"]
+        VN = ["n", "gnd"]
+        VB = ["b", "gnd"]
+        [resistor]
+        RSIG = ["in", "a"]
+        RA = ["a", "out"]
+        RB = ["out", "b"]
+        RP = ["p", "out"]
+        RN = ["n", "out"]
+        [response]
+    """
+    asked = "\n".join(f"r{i} = {text}" for i, text in enumerate(written))
+    stage = parse_stage((network + asked).encode(), file="README.md", folder=tmp_path)
+    assert len(stage.asked) == 8
+    for one in stage.asked.values():
+        derive(stage, one)
+
+
+def test_the_table_of_the_page_is_read(tmp_path: Path) -> None:
+    head, *cells = (row.replace("`", "").strip("| ").replace(" | ", ", ") for row in rows("A table as span"))
+    (tmp_path / "corners.csv").write_text("\n".join([head, *cells]), encoding="utf-8")
+    text = blocks(PAGE, "toml")[0].text
+    stage = parse_stage(text.encode(), file="README.md", folder=tmp_path)
+    assert stage.span.table is not None
+    assert stage.span.table.columns == ("gm1", "RL")
+    assert len(stage.span.table.rows) == 2
 
 
 def test_two_install_lines() -> None:

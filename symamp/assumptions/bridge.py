@@ -74,7 +74,8 @@ def dc_words(bridge: Miller, zero: bool, infinite: bool) -> str:
     """The words for a gain that gives no halves, "" where it does: A = 0, or V(from) = 0."""
     where = f"Miller across {bridge.symbol}"
     if infinite:
-        return f"{where}: V({bridge.start}) is zero at s = 0, so A = V({bridge.end})/V({bridge.start}) does not exist"
+        zero_or_infinite = f"V({bridge.start}) is zero at s = 0, or V({bridge.end}) infinite"
+        return f"{where}: {zero_or_infinite}, so A = V({bridge.end})/V({bridge.start}) does not exist"
     if zero and bridge.both:
         return f"{where}: A = V({bridge.end})/V({bridge.start}) is zero at s = 0, so 1 − 1/A does not exist"
     return ""

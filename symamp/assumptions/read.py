@@ -37,8 +37,13 @@ def read_assumptions(stage: Stage) -> tuple[Assumption, ...]:
     return tuple(found)
 
 
-def chosen(assumptions: Sequence[Assumption], wanted: Sequence[str]) -> tuple[Assumption, ...]:
-    """The assumptions of these names, in listed order; "all" means every one. Raises StageError."""
+def chosen(
+    assumptions: Sequence[Assumption], wanted: Sequence[str], key: str | None = None
+) -> tuple[Assumption, ...]:
+    """The assumptions of these names, in listed order; "all" means every one.
+
+    Raises StageError for an unknown name, its key the one given: where the names were written.
+    """
     if "all" in wanted and all(a.name != "all" for a in assumptions):
         return tuple(assumptions)
     known = {assumption.name: assumption for assumption in assumptions}
@@ -49,6 +54,6 @@ def chosen(assumptions: Sequence[Assumption], wanted: Sequence[str]) -> tuple[As
             raise StageError(
                 f"there is no assumption named {quoted(name)}",
                 f"did you mean {near[0]!r}?" if near else f"its assumptions: {listed}",
-                key="--assume",
+                key=key,
             )
     return tuple(a for a in assumptions if a.name in set(wanted))

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from copy import copy
+from dataclasses import replace
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -12,94 +14,55 @@ from symamp.assumptions.apply import Approximation, Approximator
 from symamp.assumptions.read import Assumption
 from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root
 from symamp.exact.figures import Figures, face
-from symamp.exact.forms import Coefficients, Expanded
+from symamp.exact.forms import Expanded
 from symamp.exact.response import Response
-from symamp.exact.tape import Tape, term_dict
+from symamp.judge.bank import Bank, in_bank, poly_key
 from symamp.judge.pairing import partners
 from symamp.judge.sets import Plan
 from symamp.judge.stacking import StackedFigures, stacked
 
+Progress = Callable[[str, int, int], None]  # of what so many are done, of so many in all
 _Figures = Figures | StackedFigures
 
 _ROUNDING = 1e-14  # a relative difference below this is rounding, and no error of an assumption
 
 
-class Bank:
-    """Polynomials of many forms on one tape, so that what they share is worked out once a block."""
-
-    def __init__(self) -> None:
-        self._place: dict[Any, int] = {}
-        self._polynomials: list[Any] = []
-        self._tape: Tape | None = None
-        self._given: Any = None
-        self._arrays: list[np.ndarray] = []
-
-    def place(self, polynomial: Any) -> int:
-        """The number of a polynomial in the bank; equal ones have one number."""
-        key = _poly_key(polynomial)
-        if key not in self._place:
-            self._place[key] = len(self._polynomials)
-            self._polynomials.append(polynomial)
-        return self._place[key]
-
-    def row(self, number: int, values: Mapping[str, Any], points: int) -> np.ndarray:
-        """The values of one polynomial; all are worked out when the bias points change."""
-        if self._given is not values:
-            self._tape = self._tape or Tape(self._polynomials)
-            self._arrays = self._tape(values, points)
-            self._given = values
-        return self._arrays[number]
-
-
-@dataclass(frozen=True)
-class BankedForm:
-    """An expanded form whose coefficients come out of a bank."""
-
-    bank: Bank
-    numerator: tuple[int, ...]
-    denominator: tuple[int, ...]
-
-    @classmethod
-    def of(cls, form: Expanded, bank: Bank) -> BankedForm:
-        """The form with all its polynomials in the bank."""
-        return cls(
-            bank, tuple(bank.place(c) for c in form.numerator), tuple(bank.place(c) for c in form.denominator)
-        )
-
-    def coefficients(self, values: Mapping[str, Any], points: int) -> Coefficients:
-        """As of the form itself."""
-        return Coefficients(
-            np.array([self.bank.row(i, values, points) for i in self.numerator]),
-            np.array([self.bank.row(i, values, points) for i in self.denominator]),
-        )
-
-
 class ErrorTable:
-    """One response under all sets of its assumptions."""
+    """One response under all sets of its assumptions, or under those that a plan needs."""
 
     def __init__(
-        self, exact: Response, assumptions: Sequence[Assumption], quantities: Sequence[Quantity]
+        self,
+        exact: Response,
+        assumptions: Sequence[Assumption],
+        quantities: Sequence[Quantity],
+        progress: Progress | None = None,
     ) -> None:
         self.exact = exact
         self.assumptions = tuple(a for a in assumptions if a.applies(exact.name))
         self.quantities = tuple(quantities)
         self.plan = Plan(len(self.assumptions))
-        engine = Approximator(exact)
-        self.approximations: dict[int, Approximation] = {
-            mask: engine.under([a for k, a in enumerate(self.assumptions) if mask >> k & 1])
-            for mask in self.plan.masks
-        }
-        self.variants: list[Response] = []
-        self._variant_of: dict[int, int | None] = {}
+        self.approximations: dict[int, Approximation] = {}
+        self.warnings: dict[str, None] = {}  # those under any set, each once
+        self._approximate(progress)
         self._number_variants()
-        bank = Bank()
-        self._banked = [_banked(variant, bank) for variant in self.variants]
+
+    def _approximate(self, progress: Progress | None) -> None:
+        """The response under every set, without the account of what was dropped, which is large."""
+        engine = Approximator(self.exact)
+        for done, mask in enumerate(self.plan.masks, start=1):
+            found = engine.under([a for k, a in enumerate(self.assumptions) if mask >> k & 1])
+            self.warnings.update(dict.fromkeys(found.warnings))
+            self.approximations[mask] = replace(found, dominated=None)
+            if progress:
+                progress("sets of assumptions", done, len(self.plan.masks))
 
     def _number_variants(self) -> None:
         """Sets that lead to the same response share its numbers."""
+        self.variants: list[Response] = []
+        self._variant_of: dict[int, int | None] = {}
         known: dict[Any, int] = {}
-        for mask, approximation in self.approximations.items():
-            response = approximation.response
+        for mask in self.plan.masks:
+            response = self.approximations[mask].response
             if response is None:
                 self._variant_of[mask] = None
                 continue
@@ -108,6 +71,16 @@ class ErrorTable:
                 known[key] = len(self.variants)
                 self.variants.append(response)
             self._variant_of[mask] = known[key]
+        bank = Bank()
+        self._banked = [in_bank(variant, bank) for variant in self.variants]
+
+    @cached_property
+    def without_shares(self) -> ErrorTable:
+        """The same for the few sets that all figures but the shares need."""
+        table = copy(self)
+        table.plan = self.plan.without_shares
+        table._number_variants()
+        return table
 
     def response(self, mask: int) -> Response | None:
         """The response under a set."""
@@ -115,47 +88,39 @@ class ErrorTable:
 
     def at_bias(self) -> dict[Quantity, tuple[np.ndarray, np.ndarray]]:
         """For each quantity its values under every set (sets, 1), and the errors; at the bias point."""
-        figures = [variant.bias_figures for variant in self.variants]
-        zeros = [variant.zero_figures(variant.bias_values, 1) for variant in self.variants]
-        return self._all(figures, zeros)
+        figures = [variant.bias_figures for variant in self._banked]
+        zeros = [variant.zero_figures(variant.bias_values, 1) for variant in self._banked]
+        return {quantity: (found, errors) for quantity, found, errors in self._each(figures, zeros)}
 
     def at(self, values: Mapping[str, Any], points: int) -> dict[Quantity, tuple[np.ndarray, np.ndarray]]:
         """The same at `points` bias points: (sets, points)."""
+        return {quantity: (found, errors) for quantity, found, errors in self.each_at(values, points)}
+
+    def each_at(
+        self, values: Mapping[str, Any], points: int
+    ) -> Iterator[tuple[Quantity, np.ndarray, np.ndarray]]:
+        """The same, one quantity after the other."""
         with np.errstate(all="ignore"):
             figures = stacked([variant.figures(values, points) for variant in self._banked])
             zeros = [variant.zero_figures(values, points) for variant in self._banked]
-            return self._all(figures, zeros)
+            yield from self._each(figures, zeros)
 
-    def _all(
+    def _each(
         self, figures: Sequence[_Figures], zeros: Sequence[Figures | None]
-    ) -> dict[Quantity, tuple[np.ndarray, np.ndarray]]:
+    ) -> Iterator[tuple[Quantity, np.ndarray, np.ndarray]]:
         paired: dict[tuple[int, str], np.ndarray] = {}
         base = self._variant_of[0]
         assert base is not None
-        found = {}
         for quantity in self.quantities:
             rows = [_value(quantity, v, figures, zeros, base, paired) for v in range(len(self.variants))]
             errors = [error_of(quantity, row, rows[base]) for row in rows]
-            found[quantity] = (self._by_set(rows), self._by_set(errors))
-        return found
+            yield quantity, self._by_set(rows), self._by_set(errors)
 
     def _by_set(self, rows: list[np.ndarray]) -> np.ndarray:
         nothing = np.full(rows[0].shape, np.nan, dtype=rows[0].dtype)
         return np.array(
             [nothing if (v := self._variant_of[mask]) is None else rows[v] for mask in self.plan.masks]
         )
-
-
-def _banked(variant: Response, bank: Bank) -> Any:
-    """The variant with its coefficients out of the bank; a nested one as it is."""
-    if not isinstance(variant.form, Expanded):
-        return variant
-    # A banked form gives coefficients as the form itself does, which is all that figures ask of it.
-    form: Any = BankedForm.of(variant.form, bank)
-    first: Any = variant.first_zero
-    if isinstance(first, Expanded):
-        first = BankedForm.of(first, bank)
-    return replace(variant, form=form, first_zero=first)
 
 
 def _key(response: Response) -> Any:
@@ -172,11 +137,7 @@ def _key(response: Response) -> Any:
 def _form_key(form: Any) -> Any:
     if not isinstance(form, Expanded):
         return id(form)
-    return tuple(tuple(_poly_key(c) for c in row) for row in (form.numerator, form.denominator))
-
-
-def _poly_key(polynomial: Any) -> Any:
-    return frozenset(term_dict(polynomial).items())
+    return tuple(tuple(poly_key(c) for c in row) for row in (form.numerator, form.denominator))
 
 
 def _value(

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Any
@@ -18,7 +18,7 @@ from symamp.exact.formulas import Formula, formula_of
 from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.response import Response
 from symamp.judge.error_formula import ErrorFormula, error_formula
-from symamp.judge.errors_at import ErrorTable
+from symamp.judge.errors_at import ErrorTable, Progress
 from symamp.judge.pairing import left_over
 from symamp.judge.sets import FIGURES, names_of
 from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
@@ -26,7 +26,6 @@ from symamp.values import show_value
 
 POINTS = 4096
 SEED = 1
-Progress = Callable[[int, int], None]
 
 
 @dataclass(frozen=True)
@@ -88,6 +87,14 @@ class Ledger:
     seed: int | None = None
     method: str = ""
 
+    @property
+    def share_points(self) -> int | None:
+        """The bias points at which shares have been worked out, None where there are none."""
+        found = [
+            share.span["share"] for a in self.accounts for share in a.assumptions if "share" in share.span
+        ]
+        return min((figure.points for figure in found), default=None)
+
     def __getitem__(self, name: str) -> Account:
         for account in self.accounts:
             if account.name == name:
@@ -125,7 +132,7 @@ def make_ledger(
         )
     asked = _asked(stage, quantities)
     notes = _Notes(list(stage.warnings), list(stage.remarks))
-    tables = {name: _table(stage, name, made, wanted, notes) for name, wanted in asked.items()}
+    tables = {name: _table(stage, name, made, wanted, notes, progress) for name, wanted in asked.items()}
     swept = span_errors(stage, list(tables.values()), points, seed, progress)
     accounts: list[Account] = []
     for name, table in tables.items():
@@ -184,7 +191,12 @@ def default_quantities(exact: Response) -> tuple[Quantity, ...]:
 
 
 def _table(
-    stage: Stage, name: str, made: Sequence[Assumption], wanted: tuple[Quantity, ...] | None, notes: _Notes
+    stage: Stage,
+    name: str,
+    made: Sequence[Assumption],
+    wanted: tuple[Quantity, ...] | None,
+    notes: _Notes,
+    progress: Progress | None,
 ) -> ErrorTable:
     exact = derive(stage, stage.asked[name])
     if exact.missing:
@@ -194,10 +206,9 @@ def _table(
             key="bias",
             file=stage.file,
         )
-    table = ErrorTable(exact, made, wanted or default_quantities(exact))
+    table = ErrorTable(exact, made, wanted or default_quantities(exact), progress)
     full = table.approximations[table.plan.masks[-1]]
-    for approximation in table.approximations.values():
-        notes.warnings.extend(approximation.warnings)
+    notes.warnings.extend(table.warnings)
     notes.remarks.extend(f"{name}: {remark}" for remark in full.remarks)
     if full.response is None:
         notes.remarks.append(f"{name}: under all assumptions there is no response left: {full.why}")
@@ -240,7 +251,7 @@ def _account(
         formula_exact=formula_of(exact, quantity),
         formula_approximate=None if approximate is None else _approximate_formula(table, quantity, values),
         error_formula=formula,
-        modulus=bool(span and span[0] and span[0].modulus)
+        modulus=any(figure is not None and figure.modulus for figure in span or ())
         or bool(np.iscomplexobj(figures) and (np.where(np.isnan(figures), 0.0, figures).imag != 0).any()),
         absolute=in_decibels_or_degrees(quantity),
         lost=lost,

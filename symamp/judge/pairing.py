@@ -7,6 +7,7 @@ from itertools import permutations
 import numpy as np
 
 _ENUMERATE = 130  # pairings up to which all are tried at once
+_TIE = 1e-9  # a difference of costs that counts as none
 _NEVER = 1e6  # the cost of a pairing of a root at 0 with one elsewhere: such two are no partners
 
 
@@ -121,7 +122,9 @@ def _by_assignment(cost: np.ndarray) -> np.ndarray:
     from scipy.optimize import linear_sum_assignment  # heavy, and only many roots need it
 
     picked = np.full((cost.shape[0], cost.shape[2]), -1)
+    # Where several pairings cost the same (two roots that both move one way, past one another), order is kept.
+    order = _TIE * np.subtract.outer(np.arange(cost.shape[0]), np.arange(cost.shape[1])) ** 2
     for p in range(cost.shape[2]):
-        rows, columns = linear_sum_assignment(cost[:, :, p])
+        rows, columns = linear_sum_assignment(cost[:, :, p] + order)
         picked[rows, p] = columns
     return picked

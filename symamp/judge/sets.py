@@ -27,11 +27,22 @@ class Plan:
     """Which sets are needed for n assumptions, and the rows of figures over them."""
 
     count: int
+    with_shares: bool = True
 
     @property
     def shares(self) -> bool:
         """Whether shares are worked out."""
-        return self.count <= SHARES_LIMIT
+        return self.with_shares and self.count <= SHARES_LIMIT
+
+    @property
+    def without_shares(self) -> Plan:
+        """The same but for shares, which alone need more than some three sets an assumption."""
+        return Plan(self.count, False)
+
+    def places_in(self, other: Plan) -> np.ndarray:
+        """For each row of figures the number that it has in another plan."""
+        place = {row: number for number, row in enumerate(other.rows, start=1)}
+        return np.array([0, *(place[row] for row in self.rows)])
 
     @cached_property
     def masks(self) -> tuple[int, ...]:

@@ -74,7 +74,7 @@ def stacked(figures: Sequence[Figures]) -> list[Figures | StackedFigures]:
     found: list[Figures | StackedFigures] = list(figures)
     alike: dict[Any, list[int]] = {}
     for k, each in enumerate(figures):
-        shape = (each.num.shape, each.den.shape, each.unit, _has_roots(each), each.given_rows is not None)
+        shape = (each.num.shape, each.den.shape, each.unit, _root_shapes(each), _row_shapes(each))
         alike.setdefault(shape, []).append(k)
     for numbers in alike.values():
         points = figures[numbers[0]].points
@@ -86,6 +86,14 @@ def stacked(figures: Sequence[Figures]) -> list[Figures | StackedFigures]:
                 for place, k in enumerate(some):
                     found[k] = StackedFigures(whole, slice(place * points, (place + 1) * points))
     return found
+
+
+def _root_shapes(figures: Figures) -> Any:
+    return (figures.zeros.shape, figures.poles.shape) if _has_roots(figures) else None
+
+
+def _row_shapes(figures: Figures) -> Any:
+    return None if figures.given_rows is None else tuple(row.shape for row in figures.given_rows)
 
 
 def _has_roots(figures: Figures) -> bool:

@@ -140,7 +140,8 @@ def _factor_groups(number: int, factors: Sequence[Factor]) -> list[tuple[int, li
     for factor in factors:
         times = TERMINAL.times if groups else ""
         if isinstance(factor.base, str):
-            text = times + (_power(factor.base, factor.power) if factor.power > 1 else factor.base)
+            base = _symbol(factor.base)
+            text = times + (_power(base, factor.power) if factor.power > 1 else base)
             if groups:
                 groups[-1][1][-1] += text
             else:

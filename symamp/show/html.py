@@ -5,7 +5,7 @@ from __future__ import annotations
 from html import escape
 
 from symamp.judge.ledger import Account, Ledger
-from symamp.judge.sets import FIGURES
+from symamp.judge.sets import FIGURES, SHARES_LIMIT
 from symamp.judge.span_errors import SpanFigure
 from symamp.show.words import error_words, value_words
 
@@ -13,8 +13,11 @@ from symamp.show.words import error_words, value_words
 def ledger_html(ledger: Ledger) -> str:
     """The ledger as one table a quantity, with the worst error over the span."""
     body = "".join(_account(account) for account in ledger.accounts)
-    method = f"<p>{ledger.points:,} bias points; {escape(ledger.method)}.</p>" if ledger.points else ""
-    return f"<h4>{escape(ledger.stage.title)}</h4>{body}{method}"
+    seed = "" if ledger.seed is None else f", seed {ledger.seed}"
+    method = f"<p>{ledger.points:,} bias points{seed}; {escape(ledger.method)}.</p>" if ledger.points else ""
+    notes = [f"warning: {text}" for text in ledger.warnings] + [f"remark: {text}" for text in ledger.remarks]
+    below = method + "".join(f"<p>{escape(note)}</p>" for note in notes)
+    return f"<h4>{escape(ledger.stage.title)}</h4>{body}{below}"
 
 
 def _account(account: Account) -> str:
@@ -28,12 +31,13 @@ def _account(account: Account) -> str:
         return "<tr>" + "".join(f"<{tag}>{value}</{tag}>" for value in values) + "</tr>"
 
     over = account.span is not None
-    over_header = "share over the span" + (", modulus" if account.modulus else "")
+    figure = "share" if len(account.assumptions) <= SHARES_LIMIT else "added"
+    over_header = f"{figure} over the span" + (", modulus" if account.modulus else "")
     rows = cells(["assumption", *FIGURES, *([over_header] if over else [])], "th")
     for share in account.assumptions:
         values = [escape(share.name), *(error(share.figures[figure]) for figure in FIGURES)]
         if over:
-            found = share.span.get("share")
+            found = share.span.get(figure)
             values.append("none" if found is None else ends(found))
         rows += cells(values)
     total = ["<b>all</b>", "", "", "", f"<b>{error(account.error)}</b>"]

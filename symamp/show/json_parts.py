@@ -235,7 +235,7 @@ def _account_json(account: Account, ledger: Ledger) -> dict[str, Any]:
         points: dict[str, Any] = {"points": ledger.points, "seed": ledger.seed}
         if ledger.seed is None:
             points["why_seed"] = "every row is tried, and none is drawn"
-        result["span"] = {"error": {**span_json(account.span, ledger.method), **points}}
+        result["span"] = {"error": {**span_json(account.span, ledger), **points}}
     else:
         result["span"] = None
         result["why_span"] = _why_no_span(ledger)
@@ -259,8 +259,7 @@ def _share_json(share: Share, ledger: Ledger) -> dict[str, Any]:
     if ledger.stage.span.empty:
         return {**result, "span": None, "why_span": _why_no_span(ledger)}
     over: dict[str, Any] = {
-        figure: span_json(share.span[figure], ledger.method) if figure in share.span else None
-        for figure in FIGURES
+        figure: span_json(share.span[figure], ledger) if figure in share.span else None for figure in FIGURES
     }
     lacking = {
         figure: share.why.get(figure) or _why_no_span(ledger) for figure in FIGURES if over[figure] is None
@@ -269,15 +268,16 @@ def _share_json(share: Share, ledger: Ledger) -> dict[str, Any]:
     return result
 
 
-def span_json(figure: SpanFigure, method: str) -> dict[str, Any]:
+def span_json(figure: SpanFigure, ledger: Ledger) -> dict[str, Any]:
     """A figure over the span; what is sampled is never proved."""
+    fewer = figure.points < ledger.points
     result: dict[str, Any] = {
         "min": figure.least,
         "max": figure.greatest,
         "where_min": dict(figure.where_least),
         "where_max": dict(figure.where_greatest),
         "proved": False,
-        "method": method,
+        "method": f"{ledger.method}; at {figure.points} of the points" if fewer else ledger.method,
     }
     if figure.missing:
         result["missing"] = figure.missing

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 
 from symamp.judge.ledger import Account, Ledger, LostRoot
 from symamp.judge.sets import FIGURES, SHARES_LIMIT
-from symamp.judge.span_errors import SpanFigure
+from symamp.judge.span_errors import SpanFigure, Where
 from symamp.show.columns import LEFT, POINT, table_groups
 from symamp.show.formulas import formula_lines, one_line
 from symamp.show.page import Page
@@ -15,6 +15,9 @@ from symamp.show.words import error_words, value_words, where_words
 
 _NAME = 30  # characters of an assumption's name in a row; the list above has it whole
 _SHORT_NAME = 16  # the same where the page is narrow
+_SYMBOLS = 4  # symbols of a bias point in a row
+_CANCELLED = 10  # how many times the error its largest term must be for the others to nearly cancel it
+_ERROR_LINES = 12  # lines of an error's formula
 
 
 def ledger_page(page: Page, ledger: Ledger) -> None:
@@ -27,6 +30,9 @@ def ledger_page(page: Page, ledger: Ledger) -> None:
     if ledger.points:
         seed = "" if ledger.seed is None else f", seed {ledger.seed}"
         page.prose(f"Over the span: {ledger.points:,} bias points{seed}; {ledger.method}.")
+        shares = ledger.share_points
+        if shares is not None and shares < ledger.points:
+            page.prose(f"Shares, which need every set of assumptions, at {shares:,} of these points.")
         if ledger.seed is not None:
             page.line("Sampled, not proved: a worse point may lie between those tried.")
     else:
@@ -45,10 +51,8 @@ def _account(page: Page, account: Account, ledger: Ledger) -> None:
     if _untouched(account):
         page.prose(f"exact {_value(account.exact, account)}; no assumption changes it", "bold", indent=2)
         return
-    values = f"exact {_value(account.exact, account)}, approximate {_value(account.approximate, account)}"
-    error = _error(account.error, account) + (" (modulus)" if _modulus_here(account) else "")
-    page.prose(f"{values}, error {error}" + (f": {account.why}" if account.why else ""), "bold", indent=2)
-    if account.error_absolute is not None:
+    page.prose(_bold_words(account), "bold", indent=2)
+    if account.error_absolute:
         page.line(f"  absolute error {value_words(account.error_absolute, account.unit)}")
     _error_formula(page, account)
     _roots(page, "lost", account.lost)
@@ -61,24 +65,40 @@ def _account(page: Page, account: Account, ledger: Ledger) -> None:
         page.prose(f"remark: {remark}", indent=2)
 
 
+def _bold_words(account: Account) -> str:
+    """Exact and approximate value and error, and why there is none."""
+    exact = f"exact {_value(account.exact, account)}"
+    if account.exact is None and account.approximate is None:
+        return f"{exact}: {account.why}"
+    if account.error_absolute == 0:
+        return f"{exact}, approximate 0 too"
+    error = _error(account.error, account) + (" (modulus)" if _modulus_here(account) else "")
+    why = f": {account.why}" if account.why else ""
+    return f"{exact}, approximate {_value(account.approximate, account)}, error {error}{why}"
+
+
 def _error_formula(page: Page, account: Account) -> None:
     """The error as a formula, and its leading term: with its value where the other terms cancel it."""
     formula = account.error_formula
     if formula is None or formula.leading is None:
         return
     text, leading = one_line(formula.shape), one_line(formula.leading)
-    if len(text) <= page.width - 10:
-        page.line(f"  error = {text}")
+    lines = [f"error = {text}"]
+    if len(lines[0]) + 2 > page.width:
+        lines = formula_lines(formula.shape, page.width - 4, label="error")
+    if len(lines) <= _ERROR_LINES:
+        page.block(lines, indent=2)
     else:
-        page.block(formula_lines(formula.shape, page.width - 4, label="error"), indent=2)
+        page.prose("the error's formula is too long to be read here; --json has it", indent=2)
     if leading == text:
         return
     value = formula.leading_value
-    if value is not None and account.error is not None and abs(value) > 2 * abs(account.error):
-        words = error_words(value, account.unit, absolute=False)
-        page.prose(f"its largest term {leading}, {words}, is nearly cancelled by others", indent=2)
-    else:
+    if value is None or account.error is None or abs(value) <= 2 * abs(account.error):
         page.prose(f"its leading term {leading}", indent=2)
+        return
+    words = error_words(value, account.unit, absolute=False)
+    most = "nearly" if abs(value) > _CANCELLED * abs(account.error) else "partly"
+    page.prose(f"its largest term {leading}, {words}, is {most} cancelled by others", indent=2)
 
 
 def _empty(account: Account) -> bool:
@@ -142,6 +162,11 @@ def _table(page: Page, account: Account, ledger: Ledger) -> None:
         for lines in table[:-1]:
             page.block(lines)
         page.block(table[-1], style="bold")
+    if account.span is not None:
+        worst = _worst(account.span)
+        if len(worst) > _SYMBOLS and account.span.least != account.span.greatest:
+            words = where_words(worst, _units(ledger), most=len(worst))
+            page.prose(f"the worst of all lies at {words}", indent=2)
 
 
 def _whys(page: Page, account: Account) -> None:
@@ -185,12 +210,21 @@ def _numbered(
 
 def _over_span(account: Account, ledger: Ledger) -> tuple[list[str], list[list[str]]]:
     """Headers and cells of what is over the span: shares, or what each adds where there are no shares."""
-    units = {name: symbol.unit for name, symbol in ledger.stage.symbols.items()}
+    units = _units(ledger)
     figure = "share" if len(account.assumptions) <= SHARES_LIMIT else "added"
     word = "modulus" if account.modulus else figure
     cells = [_over(share.span.get(figure), account, units) for share in account.assumptions]
     cells.append(_over(account.span, account, units))
     return [f"{word} least", f"{word} greatest", "worst at"], cells
+
+
+def _worst(figure: SpanFigure) -> Where:
+    """The bias point of the end that is larger in magnitude."""
+    return figure.where_greatest if abs(figure.greatest) >= abs(figure.least) else figure.where_least
+
+
+def _units(ledger: Ledger) -> dict[str, str]:
+    return {name: symbol.unit for name, symbol in ledger.stage.symbols.items()}
 
 
 def _label(number: int, name: str, most: int) -> str:
@@ -200,8 +234,7 @@ def _label(number: int, name: str, most: int) -> str:
 def _over(figure: SpanFigure | None, account: Account, units: dict[str, str]) -> list[str]:
     if figure is None:
         return ["none", "none", ""]
-    worst = figure.where_greatest if abs(figure.greatest) >= abs(figure.least) else figure.where_least
-    place = "" if figure.least == figure.greatest == 0 else where_words(worst, units)
+    place = "" if figure.least == figure.greatest == 0 else where_words(_worst(figure), units, _SYMBOLS)
     if figure.missing:
         place += f" (no value at {figure.missing} points)"
     ends = (figure.least, figure.greatest)

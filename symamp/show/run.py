@@ -57,7 +57,7 @@ def derive(
     stage = read_stage(file)
     hertz = [_frequency(text) for text in frequencies]
     assumptions = read_assumptions(stage)
-    made = chosen(assumptions, assume) if assume else None
+    made = chosen(assumptions, assume, "--assume") if assume else None
     rename = resistance_names(stage) if resistances else {}
     wanted = _wanted(stage, responses)
     with _placed(stage):
@@ -195,19 +195,19 @@ class _Bar:
         if self._bar is not None:
             self._bar.stop()
 
-    def advance(self, done: int, total: int) -> None:
-        """So many of so many bias points are done."""
+    def advance(self, what: str, done: int, total: int) -> None:
+        """So many of so many bias points, or sets of assumptions, are done."""
         if not self._watched or time.monotonic() - self._start < _PATIENCE:
             return
         if self._bar is None:
             columns = (
-                TextColumn("bias points"),
+                TextColumn("{task.description}"),
                 BarColumn(),
                 TextColumn("{task.completed:,}/{task.total:,}"),
             )
             self._bar = Progress(
                 *columns, TimeRemainingColumn(), console=Console(stderr=True), transient=True
             )
-            self._task = self._bar.add_task("", total=total)
+            self._task = self._bar.add_task(what, total=total)
             self._bar.start()
-        self._bar.update(self._task, completed=done)
+        self._bar.update(self._task, description=what, completed=done, total=total)

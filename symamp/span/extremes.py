@@ -32,17 +32,20 @@ class Extremes:
         self._place: list[list[np.ndarray | None]] = [[None] * rows for _ in range(4)]
         self._complex = np.zeros(rows, dtype=bool)
         self.missing = np.zeros(rows, dtype=int)
+        self.seen = np.zeros(rows, dtype=int)  # points, those without a value too
 
     @property
     def rows(self) -> int:
         return int(self._value.shape[1])
 
-    def take(self, figures: np.ndarray, places: np.ndarray) -> None:
-        """Take in figures (rows, P) at places (d, P)."""
+    def take(self, figures: np.ndarray, places: np.ndarray, rows: np.ndarray | None = None) -> None:
+        """Take in figures (rows, P) at places (d, P): of all rows, or of those whose numbers are given."""
+        rows = np.arange(self.rows) if rows is None else rows
         nan = ~np.isfinite(figures)
-        self.missing += nan.sum(axis=1)
+        self.seen[rows] += figures.shape[1]
+        self.missing[rows] += nan.sum(axis=1)
         if np.iscomplexobj(figures):
-            self._complex |= (np.where(nan, 0.0, figures).imag != 0).any(axis=1)
+            self._complex[rows] |= (np.where(nan, 0.0, figures).imag != 0).any(axis=1)
             signed, size = figures.real, np.abs(figures)
         else:
             signed, size = figures, np.abs(figures)
@@ -50,14 +53,14 @@ class Extremes:
             least = kind % 2 == 0
             filled = np.where(nan, np.inf if least else -np.inf, data)
             at = filled.argmin(axis=1) if least else filled.argmax(axis=1)
-            best = filled[np.arange(self.rows), at]
-            known = self._value[kind]
+            best = filled[np.arange(len(rows)), at]
+            known = self._value[kind, rows]
             margin = _ROUNDING * np.abs(known)
             beats = best < known - margin if least else best > known + margin
             gain = np.isfinite(best) & (np.isnan(known) | beats)
-            for row in np.flatnonzero(gain):
-                self._value[kind, row] = best[row]
-                self._place[kind][row] = places[:, at[row]].copy()
+            for k in np.flatnonzero(gain):
+                self._value[kind, rows[k]] = best[k]
+                self._place[kind][rows[k]] = places[:, at[k]].copy()
 
     def kinds(self, row: int) -> tuple[int, int]:
         """Which two of the four kinds this figure shows."""

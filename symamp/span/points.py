@@ -128,9 +128,10 @@ class Box:
 
 @dataclass(frozen=True)
 class Rows:
-    """The rows of a table as bias points."""
+    """The rows of a table as bias points, in blocks of `size` at most."""
 
     stage: Stage
+    size: int = BLOCK
 
     @property
     def varied(self) -> tuple[str, ...]:
@@ -143,7 +144,8 @@ class Rows:
         assert table is not None
         base = {name: float(value) for name, value in self.stage.bias.items()}
         data = np.array([[float(cell) for cell in row] for row in table.rows])
-        for start in range(0, len(data), BLOCK):
-            part = data[start : start + BLOCK]
+        size = min(self.size, BLOCK)
+        for start in range(0, len(data), size):
+            part = data[start : start + size]
             columns = {n: np.ascontiguousarray(c) for n, c in zip(table.columns, part.T, strict=True)}
             yield len(part), {**base, **columns}

@@ -26,7 +26,7 @@ def compass_search(extremes: list[Extremes], take: Take, dimensions: int) -> int
     step = _FIRST_STEP
     for _ in range(_HALVINGS):
         for _ in range(_REPEATS):
-            points = _around(_starts(extremes), step, dimensions, seen)
+            points = _around(places_of(extremes), step, dimensions, seen)
             if points.shape[1] == 0:
                 break
             tried += points.shape[1]
@@ -35,8 +35,8 @@ def compass_search(extremes: list[Extremes], take: Take, dimensions: int) -> int
     return tried
 
 
-def _starts(extremes: list[Extremes]) -> list[np.ndarray]:
-    """The places of the extremes, each once; those of the errors of all, row 0, come first."""
+def places_of(extremes: list[Extremes]) -> list[np.ndarray]:
+    """The places of the extremes, _STARTS at most and each once; those of the errors of all, row 0, come first."""
     found: dict[bytes, np.ndarray] = {}
     for row in range(max((e.rows for e in extremes), default=0)):
         for each in extremes:

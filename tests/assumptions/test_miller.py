@@ -144,7 +144,20 @@ def test_no_voltage_to_start_from_in_words(nested):
     b.assume("it", miller=BRIDGE)
     made = put(b, "rout", nested)
     assert made.response is None
-    assert made.why == "Miller across cgd1: V(g) is zero at s = 0, so A = V(out)/V(g) does not exist"
+    assert made.why == (
+        "Miller across cgd1: V(g) is zero at s = 0, or V(out) infinite, so A = V(out)/V(g) does not exist"
+    )
+
+
+@BOTH
+def test_a_gain_without_bound_in_words(nested):
+    """With neither load nor output conductance the output of the transconductance has no DC path."""
+    b = stages.common_source()
+    b.assume("it", miller=BRIDGE)
+    b.assume("ideal load", open_=["RL"], neglect=["gds"])
+    made = put(b, nested=nested)
+    assert made.response is None
+    assert "V(out) infinite" in made.why
 
 
 @BOTH

@@ -158,3 +158,12 @@ def test_no_roots_at_all() -> None:
     assert paired(none, none).shape == (0,)
     assert np.isnan(paired(np.array([-1 + 0j]), none)).all()
     assert left_over(none, np.array([-3 + 0j])) == ([], [-3 + 0j])
+
+
+def test_many_roots_that_could_be_paired_in_two_ways_keep_their_order() -> None:
+    """Two roots that move past one another cost the same either way; rounding must not decide."""
+    far = np.array([1e6 * np.exp(2j), 1e6 * np.exp(-2j), -1e8, -1e9, -1e10])
+    for factor in np.geomspace(2.1, 50, 40):
+        first = np.array([-1.7, -3.1])
+        exact, approximate = (np.concatenate([low, far]).reshape(-1, 1) for low in (first, first * factor))
+        assert partners(exact, approximate)[:2, 0] == pytest.approx(first * factor)

@@ -264,8 +264,41 @@ def test_the_search_finds_a_worst_point_that_lies_inside_the_box() -> None:
 
 
 def test_the_same_at_any_number_of_points_in_a_block() -> None:
-    calls: list[tuple[int, int]] = []
+    calls: list[tuple[str, int, int]] = []
     stage = stage_of(CASCODE, '\n[span]\ngm1 = "50 %"\n', NO_BODY)
-    make_ledger(stage, quantities=["gain.dc"], points=20000, progress=lambda d, t: calls.append((d, t)))
-    assert [done for done, _ in calls] == sorted(done for done, _ in calls)
-    assert calls[-1][0] == calls[-1][1] == 20003
+    make_ledger(stage, quantities=["gain.dc"], points=20000, progress=lambda *call: calls.append(call))
+    assert [call for call in calls if call[0] == "sets of assumptions"] == [
+        ("sets of assumptions", 1, 2),
+        ("sets of assumptions", 2, 2),
+    ]
+    seen = [(done, total) for what, done, total in calls if what == "bias points"]
+    assert [done for done, _ in seen] == sorted(done for done, _ in seen)
+    assert (20003, 20003) in seen
+    assert seen[-1][0] == seen[-1][1] > 20003  # the search
+
+
+def test_where_sets_and_points_are_many_shares_are_looked_at_in_fewer_points(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    span = '\n[span]\ngm1 = ["1 mS", "10 mS"]\nRS = ["100 ohm", "20 kohm"]\nCL = ["0.1 pF", "5 pF"]\n'
+    stage = stage_of(COMMON_SOURCE, span, NO_CGD_LOAD, FAST)
+    names = ["gain.p1", "gain.bandwidth"]
+    monkeypatch.setattr(module, "compass_search", lambda *_: 0)  # it would begin elsewhere
+    every = make_ledger(stage, quantities=names, points=256)
+    monkeypatch.setattr(module, "_ENOUGH", 8 * 40)  # 8 sets at some 40 points
+    monkeypatch.setattr(module, "_AT_ONCE", 8 * 7)
+    fewer = make_ledger(stage, quantities=names, points=256)
+    assert every.share_points == every.points
+    assert 20 < (fewer.share_points or 0) < 150
+    assert fewer.points == every.points
+    for one, other in zip(every.accounts, fewer.accounts, strict=True):
+        assert one.span == other.span
+        assert one.error == other.error
+        for mine, theirs in zip(one.assumptions, other.assumptions, strict=True):
+            for figure in ("alone", "added", "last"):
+                assert mine.span[figure] == theirs.span[figure]
+            here, there = mine.span["share"], theirs.span["share"]
+            assert here.least <= there.least <= there.greatest <= here.greatest
+            at_bias = mine.figures["share"]
+            assert isinstance(at_bias, float)
+            assert there.least <= at_bias <= there.greatest

@@ -5,8 +5,10 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from symamp.circuit.builder import StageBuilder
 from symamp.exact.asked_quantity import parse_quantity
 from symamp.exact.figures import Figures
+from symamp.judge.ledger import make_ledger
 from symamp.judge.stacking import StackedFigures, stacked
 
 QUANTITIES = ("dc", "p1", "p2.hz", "z1", "bandwidth", "unity_gain_frequency", "phase_margin", "at(1 kHz).db")
@@ -46,3 +48,22 @@ def test_roots_that_were_given_stay() -> None:
         assert (together.poles[1] == -9.0 - k).all()
         assert (together.zeros == -1.0 - k).all()
         assert (together.value(parse_quantity("p1")) == -2.0 - k).all()
+
+
+def test_variants_with_different_numbers_of_roots_stand_apart() -> None:
+    """A single pole with all roots taken from neighbours has more roots than its coefficients have powers."""
+    b = StageBuilder("three stages in a row")
+    for k in (1, 2, 3):
+        b.vccs(f"GM{k}", out=(f"n{k}", "gnd"), control=("in" if k == 1 else f"n{k - 1}", "gnd"), value="1 mS")
+        b.resistor(f"R{k}", f"n{k}", "gnd", "10 kohm")
+        b.capacitor(f"C{k}", f"n{k}", "gnd", f"{10**k} pF")
+    b.capacitor("CC", "n1", "n3", "0.1 pF")
+    b.voltage_source("VIN", "in", "gnd")
+    b.response("gain", source="VIN", to="n3")
+    b.span("R1", "5 kohm", "20 kohm")
+    b.assume("one pole", dominant_pole=True)
+    b.assume("far apart", poles_far_apart=True)
+    b.assume("no C1", neglect=["C1"])
+    account = make_ledger(b.stage(), quantities=["gain.p1"], points=64)["gain.p1"]
+    assert account.span is not None
+    assert account.span.least <= account.error <= account.span.greatest

@@ -161,14 +161,41 @@ def test_absolute_errors_are_in_their_unit() -> None:
 
 def test_a_quantity_without_exact_value_says_why() -> None:
     shown = " ".join(text(ledger(CASCODE, ASSUMPTIONS, quantities=("rout.unity_gain_frequency",))).split())
-    assert "exact none, approximate none, error none: " in shown
+    assert "exact none: the response has a unit (ohm), so a magnitude of 1 means nothing" in shown
 
 
 def test_without_any_figure_there_is_no_table() -> None:
     shown = text(ledger(CASCODE, SPAN, ASSUMPTIONS, quantities=("gain.hf", "gain.p1.im", "gain.hf.db")))
     assert "alone" not in shown
-    assert shown.count("error none: ") == 3
-    assert shown.count("  absolute error 0") == 2
+    assert shown.count(", approximate 0 too\n") == 2
+    assert "exact none: hf is 0, which has no value in dB" in shown
+
+
+def test_an_error_of_an_exact_zero_is_absolute() -> None:
+    shown = text(ledger(COMPLEX.replace('short = ["R2"]', "set = { C1 = 0 }"), quantities=("gain.hf",)))
+    assert "exact 0, approximate 1, error none: the exact value is 0, so there is no relative error" in shown
+    assert "\n  absolute error 1\n" in shown
+
+
+def test_the_worst_point_in_full_where_a_row_cuts_it_short() -> None:
+    wide = SPAN + 'gmb2 = "10 %"\nCL = "10 %"\n'
+    shown = text(ledger(CASCODE, wide, ASSUMPTIONS, quantities=("gain.dc",)), 120)
+    assert ", …" in shown
+    assert re.search(r"  the worst of all lies at gm1 .*, gds1 .*, gm2 .*, gds2 .*, gmb2 .*, CL ", shown)
+    assert "the worst of all" not in text(ledger(CASCODE, SPAN, ASSUMPTIONS, quantities=("gain.dc",)), 120)
+
+
+def test_a_long_formula_of_an_error_gives_way_to_its_leading_term() -> None:
+    parts = "".join(f'R{k} = ["x{k - 1}", "x{k}"]\nQ{k} = ["x{k}", "gnd"]\n' for k in range(1, 9))
+    values = "".join(f'R{k} = "{k} kohm"\nQ{k} = "{k}00 kohm"\n' for k in range(1, 9))
+    ladder = (
+        f'title = "Ladder"\n[resistor]\n{parts}[voltage_source]\nVIN = ["x0", "gnd"]\n'
+        f'[response]\ngain = {{ from = "VIN", to = "x8" }}\n[bias]\n{values}'
+        '[[assumption]]\nname = "no load"\nopen = ["Q1"]\n'
+    )
+    shown = text(ledger(ladder, quantities=("gain.dc",)), 80)
+    assert "the error's formula is too long to be read here; --json has it" in shown
+    assert "its leading term" in shown or "its largest term" in shown
 
 
 def test_thirteen_assumptions_show_what_each_adds_over_the_span() -> None:

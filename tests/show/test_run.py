@@ -50,12 +50,12 @@ def watch(monkeypatch: pytest.MonkeyPatch, out: bool, err: bool) -> tuple[Termin
 def test_a_bar_appears_after_two_seconds(monkeypatch: pytest.MonkeyPatch, clock: Clock) -> None:
     out, err = watch(monkeypatch, True, True)
     with run._Bar() as bar:
-        bar.advance(1000, 100_000)
+        bar.advance("bias points", 1000, 100_000)
         clock.now += 1.9
-        bar.advance(2000, 100_000)
+        bar.advance("bias points", 2000, 100_000)
         assert err.getvalue() == ""
         clock.now += 0.2
-        bar.advance(30_000, 100_000)
+        bar.advance("bias points", 30_000, 100_000)
         assert bar._bar is not None
         assert bar._bar.tasks[0].completed == 30_000
         assert bar._bar.tasks[0].total == 100_000
@@ -72,7 +72,7 @@ def test_no_bar_where_nobody_watches(
     terminals = watch(monkeypatch, out, err)
     with run._Bar() as bar:
         clock.now += 60
-        bar.advance(30_000, 100_000)
+        bar.advance("bias points", 30_000, 100_000)
     assert [terminal.getvalue() for terminal in terminals] == ["", ""]
 
 
@@ -83,7 +83,7 @@ def test_a_bar_is_taken_away_when_the_run_fails(monkeypatch: pytest.MonkeyPatch,
     def interrupted() -> None:
         with bar:
             clock.now += 3
-            bar.advance(1, 2)
+            bar.advance("bias points", 1, 2)
             raise KeyboardInterrupt
 
     with pytest.raises(KeyboardInterrupt):
