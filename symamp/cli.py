@@ -33,7 +33,7 @@ def cli() -> None:
     """
 
 
-@cli.command()
+@cli.command(short_help="Exact and approximate expressions of a stage.")
 @_FILE
 @click.option(
     "--assume", metavar="NAME", multiple=True, help="Show the response under this assumption (or: all)."
@@ -60,7 +60,7 @@ def derive(
     _run("derive", file, assume, frequencies, responses, resistances, second_opinion, as_json)
 
 
-@cli.command()
+@cli.command(short_help="The error that each assumption adds.")
 @_FILE
 @click.option(
     "--quantity",
@@ -83,7 +83,7 @@ def ledger(file: str, quantities: tuple[str, ...], points: int, seed: int, as_js
     _run("ledger", file, quantities, points, seed, as_json)
 
 
-@cli.command()
+@cli.command(short_help="The JSON Schema of stage files.")
 @click.option(
     "--schema", is_flag=True, required=True, help="Print the JSON Schema of stage files, for editors."
 )

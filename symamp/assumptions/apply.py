@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 from functools import cached_property
 
 from symamp.assumptions.dominance import Dominance, idle, pool
-from symamp.assumptions.dropping import Dominated, Dropped, TermTable
+from symamp.assumptions.dropping import Dominated, Dropped, Kept, TermTable
 from symamp.assumptions.merge import Pooled, pooled
 from symamp.assumptions.nested import NestedEngine
 from symamp.assumptions.record import Assumption, Miller, Pair
@@ -19,7 +19,7 @@ from symamp.exact.derive import nested_of
 from symamp.exact.forms import Expanded, Nested
 from symamp.exact.response import Response
 
-__all__ = ["Approximation", "Approximator", "Dropped"]
+__all__ = ["Approximation", "Approximator", "Dropped", "Kept"]
 
 
 @dataclass(frozen=True)
@@ -36,6 +36,11 @@ class Approximation:
     def dropped(self) -> tuple[Dropped, ...]:
         """What dominance dropped, each term with the one it fell to."""
         return () if self.dominated is None else self.dominated.dropped
+
+    @cached_property
+    def kept(self) -> tuple[Kept, ...]:
+        """What dominance was put to and left: the terms that none of their coefficient outweighs."""
+        return () if self.dominated is None else self.dominated.kept
 
     @cached_property
     def warnings(self) -> tuple[str, ...]:

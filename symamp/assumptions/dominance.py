@@ -100,6 +100,11 @@ def _values(exponents: np.ndarray, forms: Sequence[Vector]) -> np.ndarray:
 
 def _labels(rows: np.ndarray) -> np.ndarray:
     """A number for each row, the same for equal rows."""
+    if rows.dtype != object:
+        mixed = rows @ np.random.default_rng(0).integers(1, 1 << 62, rows.shape[1])  # modulo 2**64
+        _, first, labels = np.unique(mixed, return_index=True, return_inverse=True)
+        if np.array_equal(rows[first[labels]], rows):  # no two different rows were mixed to one number
+            return labels.ravel()
     return np.unique(rows, axis=0, return_inverse=True)[1].ravel()
 
 

@@ -37,6 +37,19 @@ class Dropped:
         return polynomial_text(self.polynomials[1])
 
 
+@dataclass(frozen=True)
+class Kept:
+    """A term of a coefficient that nothing in it outweighs."""
+
+    coefficient: str
+    polynomial: fmpz_mpoly
+
+    @cached_property
+    def term(self) -> str:
+        """The term."""
+        return polynomial_text(self.polynomial)
+
+
 class TermTable:
     """The terms of all coefficients of a form."""
 
@@ -84,6 +97,15 @@ class Dominated:
                     pair = terms.only([int(i)]), terms.only([int(to[i])])
                     found.append(Dropped(name, pair, ratio))
         return tuple(found)
+
+    @cached_property
+    def kept(self) -> tuple[Kept, ...]:
+        """Each term that stays, as it stands before what is left is brought to lowest terms."""
+        return tuple(
+            Kept(name, terms.only([int(i)]))
+            for (name, terms), to in zip(self.table.named(), self.falls, strict=True)
+            for i in np.flatnonzero(to == np.arange(len(to)))
+        )
 
     @cached_property
     def warnings(self) -> tuple[str, ...]:

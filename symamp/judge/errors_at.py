@@ -88,8 +88,10 @@ class ErrorTable:
 
     def at_bias(self) -> dict[Quantity, tuple[np.ndarray, np.ndarray]]:
         """For each quantity its values under every set (sets, 1), and the errors; at the bias point."""
-        figures = [variant.bias_figures for variant in self._banked]
-        zeros = [variant.zero_figures(variant.bias_values, 1) for variant in self._banked]
+        values = self.exact.bias_values  # one object for all, by which the bank knows the point again
+        with np.errstate(all="ignore"):
+            figures = [v.figures(values, 1) if v.apart else v.bias_figures for v in self._banked]
+            zeros = [variant.zero_figures(values, 1) for variant in self._banked]
         return {quantity: (found, errors) for quantity, found, errors in self._each(figures, zeros)}
 
     def at(self, values: Mapping[str, Any], points: int) -> dict[Quantity, tuple[np.ndarray, np.ndarray]]:
@@ -103,7 +105,7 @@ class ErrorTable:
         with np.errstate(all="ignore"):
             figures = stacked([variant.figures(values, points) for variant in self._banked])
             zeros = [variant.zero_figures(values, points) for variant in self._banked]
-            yield from self._each(figures, zeros)
+        yield from self._each(figures, zeros)
 
     def _each(
         self, figures: Sequence[_Figures], zeros: Sequence[Figures | None]
@@ -112,8 +114,9 @@ class ErrorTable:
         base = self._variant_of[0]
         assert base is not None
         for quantity in self.quantities:
-            rows = [_value(quantity, v, figures, zeros, base, paired) for v in range(len(self.variants))]
-            errors = [error_of(quantity, row, rows[base]) for row in rows]
+            with np.errstate(all="ignore"):
+                rows = [_value(quantity, v, figures, zeros, base, paired) for v in range(len(self.variants))]
+                errors = [error_of(quantity, row, rows[base]) for row in rows]
             yield quantity, self._by_set(rows), self._by_set(errors)
 
     def _by_set(self, rows: list[np.ndarray]) -> np.ndarray:

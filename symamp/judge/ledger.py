@@ -12,7 +12,7 @@ import numpy as np
 from symamp.assumptions.read import Assumption, read_assumptions
 from symamp.circuit.stage import Stage
 from symamp.errors import InputError, StageError
-from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root, parse_quantity, unit_of
+from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root, parse_quantity
 from symamp.exact.derive import derive
 from symamp.exact.formulas import Formula, formula_of
 from symamp.exact.missing_figures import remarks_beside, why_missing
@@ -25,6 +25,7 @@ from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
 from symamp.values import show_value
 
 POINTS = 4096
+_BEYOND = "the value is beyond the range of numbers"
 SEED = 1
 
 
@@ -242,7 +243,7 @@ def _account(
     return Account(
         response=name,
         quantity=quantity,
-        unit=unit_of(quantity, exact.unit),
+        unit=exact.unit_of(quantity),
         exact=value_e,
         approximate=value_a,
         error=_number(figures[0]),
@@ -281,17 +282,17 @@ def _approximate_formula(table: ErrorTable, quantity: Quantity, values: np.ndarr
 def _why(table: ErrorTable, quantity: Quantity, values: np.ndarray, lost: Sequence[LostRoot]) -> str:
     """Why there is no error at the bias point, or ""."""
     exact, full = table.exact, table.approximations[table.plan.masks[-1]]
-    if np.isnan(values[0, 0]):
-        return why_missing(exact.bias_figures, quantity)
+    if not np.isfinite(values[0, 0]):
+        return why_missing(exact.bias_figures, quantity) or _BEYOND
     if full.response is None:
         return full.why
-    if np.isnan(values[-1, 0]):
+    if not np.isfinite(values[-1, 0]):
         mine = f"{quantity.name}{quantity.index}"
         if is_root(quantity):
             hz = next((root.hz for root in lost if root.name == mine), None)
             where = "" if hz is None else f", at {show_value(hz, 'Hz')},"
             return f"{mine}{where} is lost: it has no partner"
-        return why_missing(full.response.bias_figures, quantity)
+        return why_missing(full.response.bias_figures, quantity) or _BEYOND
     if values[0, 0] == 0:
         return "the exact value is 0, so there is no relative error"
     return ""
@@ -358,11 +359,11 @@ class _Whys:
 
     def of(self, mask: int | None) -> str:
         """Why there is no error under the smallest set that a figure needs; the set is named."""
-        if np.isnan(self.values[0]) or mask is None:
+        if not np.isfinite(self.values[0]) or mask is None:
             why = why_missing(self.table.exact.bias_figures, self.quantity)
             return f"the exact {self.quantity.text} has no value" + (f": {why}" if why else "")
         listed = " and ".join(repr(name) for name in names_of(mask, self.names))
-        if not np.isnan(self.values[self.table.plan.masks.index(mask)]):
+        if np.isfinite(self.values[self.table.plan.masks.index(mask)]):
             return f"the exact value is 0, so there is no relative error under {listed}"
         if is_root(self.quantity) and self.table.response(mask) is not None:
             return f"under {listed} {self.quantity.name}{self.quantity.index} is lost: it has no partner"
@@ -376,8 +377,8 @@ class _Whys:
 
 
 def _number(value: Any) -> float | complex | None:
-    """A number as plain Python; None for nan; real where the imaginary part is exactly 0."""
-    if np.isnan(value):
+    """A number as plain Python, None where it is not finite; real where the imaginary part is exactly 0."""
+    if not np.isfinite(value):
         return None
     if np.iscomplexobj(value):
         return complex(value) if value.imag else float(value.real)

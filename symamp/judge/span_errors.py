@@ -20,7 +20,7 @@ from symamp.span.search import compass_search, places_of
 
 # Shares need every set: they are looked at in all points while sets times points are no more than this.
 _ENOUGH = 1 << 21
-_AT_ONCE = 1 << 21  # sets times bias points that are held at one time
+_AT_ONCE = 1 << 20  # sets times bias points that are held at one time
 Where = Mapping[str, float] | Mapping[str, int]
 
 

@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import cmath
+import math
 from collections.abc import Sequence
 
-from symamp.assumptions.apply import Approximation
+from symamp.assumptions.apply import Approximation, Dropped
 from symamp.circuit.kinds import CAPACITANCE, INDUCTANCE
 from symamp.exact.forms import Expanded, Nested
 from symamp.exact.grouped import grouped
@@ -16,6 +18,7 @@ from symamp.show.json_parts import QUANTITIES
 from symamp.show.page import Page
 from symamp.show.words import MINUS, asked_words, percent_words, root_words, value_words
 
+_DROPPED = 30  # dropped terms that are shown
 _AROUND_PEAK = ("peak_frequency", "low_corner", "high_corner")
 _QUANTITIES = tuple(name for name in QUANTITIES if name != "peak")
 
@@ -76,9 +79,22 @@ def _body(page: Page, response: Response, frequencies: Sequence[float]) -> None:
     _quantities(page, response)
     _roots(page, response)
     for hz in frequencies:
-        if not response.missing:
-            value = response.at(hz)
-            page.line(f"  at {value_words(hz, 'Hz')}: {value_words(value, response.unit)}")
+        _at(page, response, hz)
+
+
+def _at(page: Page, response: Response, hz: float) -> None:
+    """The response at a frequency: as a complex number, and as magnitude, dB and degrees."""
+    where = f"at {value_words(hz, 'Hz')}"
+    if response.missing:
+        page.line(f"  {where}: none, for want of bias values")
+        return
+    value = response.at(hz)
+    words = [value_words(value, response.unit), f"magnitude {value_words(abs(value), response.unit)}"]
+    if value and not response.unit:
+        words.append(value_words(20 * math.log10(abs(value)), "dB"))
+    if value:
+        words.append(value_words(math.degrees(cmath.phase(value)), "deg"))
+    page.line(f"  {where}: {', '.join(words)}")
 
 
 def _quantities(page: Page, response: Response) -> None:
@@ -174,7 +190,8 @@ def _dropped(page: Page, approximation: Approximation) -> None:
     if not approximation.dropped:
         return
     rows = []
-    for item in approximation.dropped:
+    listed, below = _listed(approximation.dropped)
+    for item in listed:
         ratio = "none" if item.ratio is None else percent_words(item.ratio)
         rows.append([item.coefficient, _dots(item.term), _dots(item.against), ratio])
     page.line()
@@ -185,6 +202,20 @@ def _dropped(page: Page, approximation: Approximation) -> None:
         headers, kinds, *rows = ([row[i] for i in order] for row in (headers, kinds, *rows))
         lines = table_lines(headers, rows, kinds, width=page.width)
     page.block(lines)
+    if below:
+        more = len(approximation.dropped) - len(listed)
+        page.prose(f"and {more:,} more, each at most {below} of what it fell to; --json lists all", indent=2)
+
+
+def _listed(dropped: Sequence[Dropped]) -> tuple[Sequence[Dropped], str]:
+    """The dropped terms to be shown, all or the largest, and how large the others are at most ("" for none)."""
+    if len(dropped) <= _DROPPED:
+        return dropped, ""
+    sizes = [math.inf if item.ratio is None else abs(item.ratio) for item in dropped]
+    order = sorted(range(len(dropped)), key=lambda i: -sizes[i])
+    next_one = sizes[order[_DROPPED]]
+    words = percent_words(next_one) if math.isfinite(next_one) else "an unknown part"
+    return [dropped[i] for i in sorted(order[:_DROPPED])], words
 
 
 def _dots(text: str) -> str:

@@ -179,6 +179,7 @@ def approximation_json(
         result = response_json(response, constants, frequencies)
     result["assumptions"] = list(approximation.assumptions)
     result["dropped"] = [_dropped_json(item) for item in approximation.dropped]
+    result["kept"] = [{"coefficient": item.coefficient, "term": item.term} for item in approximation.kept]
     result["warnings"] = list(approximation.warnings)
     result["remarks"] = list(approximation.remarks)
     result["exact"] = dict(exact)

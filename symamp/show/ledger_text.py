@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 from symamp.judge.ledger import Account, Ledger, LostRoot
-from symamp.judge.sets import FIGURES, SHARES_LIMIT
+from symamp.judge.sets import FIGURES
 from symamp.judge.span_errors import SpanFigure, Where
 from symamp.show.columns import LEFT, POINT, table_groups
 from symamp.show.formulas import formula_lines, one_line
@@ -24,8 +24,11 @@ def ledger_page(page: Page, ledger: Ledger) -> None:
     """The whole ledger."""
     page.line(ledger.stage.title, "bold")
     _listed(page, ledger)
+    told: set[tuple[str, str]] = set()  # responses and kinds of root whose lost ones have been listed
     for account in ledger.accounts:
-        _account(page, account, ledger)
+        kind = account.response, account.quantity.name
+        _account(page, account, ledger, kind not in told)
+        told.add(kind)
     page.line()
     if ledger.points:
         seed = "" if ledger.seed is None else f", seed {ledger.seed}"
@@ -45,7 +48,8 @@ def _listed(page: Page, ledger: Ledger) -> None:
         page.prose(f"{k}  {name}", indent=2)
 
 
-def _account(page: Page, account: Account, ledger: Ledger) -> None:
+def _account(page: Page, account: Account, ledger: Ledger, first: bool) -> None:
+    """One account; which roots are lost is said with the first of their kind."""
     page.heading(account.name)
     _formulas(page, account)
     if _untouched(account):
@@ -55,8 +59,9 @@ def _account(page: Page, account: Account, ledger: Ledger) -> None:
     if account.error_absolute:
         page.line(f"  absolute error {value_words(account.error_absolute, account.unit)}")
     _error_formula(page, account)
-    _roots(page, "lost", account.lost)
-    _roots(page, "new", account.new)
+    if first:
+        _roots(page, "lost", account.lost)
+        _roots(page, "new", account.new)
     if not _empty(account):
         page.line()
         _table(page, account, ledger)
@@ -72,7 +77,8 @@ def _bold_words(account: Account) -> str:
         return f"{exact}: {account.why}"
     if account.error_absolute == 0:
         return f"{exact}, approximate 0 too"
-    error = _error(account.error, account) + (" (modulus)" if _modulus_here(account) else "")
+    modulus = account.error is not None and _modulus_here(account)
+    error = _error(account.error, account) + (" (modulus)" if modulus else "")
     why = f": {account.why}" if account.why else ""
     return f"{exact}, approximate {_value(account.approximate, account)}, error {error}{why}"
 
@@ -163,10 +169,10 @@ def _table(page: Page, account: Account, ledger: Ledger) -> None:
             page.block(lines)
         page.block(table[-1], style="bold")
     if account.span is not None:
-        worst = _worst(account.span)
+        units = _units(ledger)
+        worst = _sides(_worst(account.span), units)
         if len(worst) > _SYMBOLS and account.span.least != account.span.greatest:
-            words = where_words(worst, _units(ledger), most=len(worst))
-            page.prose(f"the worst of all lies at {words}", indent=2)
+            page.prose(f"the worst of all lies at {where_words(worst, units, most=len(worst))}", indent=2)
 
 
 def _whys(page: Page, account: Account) -> None:
@@ -183,9 +189,10 @@ def _groups(page: Page, account: Account, ledger: Ledger, name: int, apart: bool
     here = [[_error(share.figures[figure], account) for figure in FIGURES] for share in account.assumptions]
     here.append(["", "", "", _error(account.error, account)])
     headers, kinds = list(FIGURES), [POINT] * len(FIGURES)
-    if account.span is None:
+    figure = _figure_over_span(account)
+    if figure is None:
         return [_numbered(labels, "assumption", headers, here, kinds)]
-    over_headers, over = _over_span(account, ledger)
+    over_headers, over = _over_span(account, ledger, figure)
     over_kinds = [POINT, POINT, LEFT]
     if not apart:
         both = [a + b for a, b in zip(here, over, strict=True)]
@@ -208,11 +215,18 @@ def _numbered(
     return table_groups([title, *headers], whole, [LEFT, *kinds], width=width)
 
 
-def _over_span(account: Account, ledger: Ledger) -> tuple[list[str], list[list[str]]]:
-    """Headers and cells of what is over the span: shares, or what each adds where there are no shares."""
+def _figure_over_span(account: Account) -> str | None:
+    """Which figure is shown over the span: the shares, else what each adds, else what each does alone."""
+    for figure in ("share", "added", "alone"):
+        if any(figure in share.span for share in account.assumptions):
+            return figure
+    return None
+
+
+def _over_span(account: Account, ledger: Ledger, figure: str) -> tuple[list[str], list[list[str]]]:
+    """Headers and cells of what is over the span."""
     units = _units(ledger)
-    figure = "share" if len(account.assumptions) <= SHARES_LIMIT else "added"
-    word = "modulus" if account.modulus else figure
+    word = f"{figure} modulus" if account.modulus else figure
     cells = [_over(share.span.get(figure), account, units) for share in account.assumptions]
     cells.append(_over(account.span, account, units))
     return [f"{word} least", f"{word} greatest", "worst at"], cells
@@ -223,8 +237,15 @@ def _worst(figure: SpanFigure) -> Where:
     return figure.where_greatest if abs(figure.greatest) >= abs(figure.least) else figure.where_least
 
 
+def _sides(where: Where, units: Mapping[str, str]) -> dict[str, float]:
+    """The sides' symbols, or the row: what follows a side says nothing that the side does not."""
+    return {name: value for name, value in where.items() if name in units or name == "row"}
+
+
 def _units(ledger: Ledger) -> dict[str, str]:
-    return {name: symbol.unit for name, symbol in ledger.stage.symbols.items()}
+    """The symbols that the sides of the box set, with their units."""
+    symbols = ledger.stage.symbols
+    return {side.symbol: symbols[side.symbol].unit for side in ledger.stage.span.sides}
 
 
 def _label(number: int, name: str, most: int) -> str:
@@ -234,7 +255,8 @@ def _label(number: int, name: str, most: int) -> str:
 def _over(figure: SpanFigure | None, account: Account, units: dict[str, str]) -> list[str]:
     if figure is None:
         return ["none", "none", ""]
-    place = "" if figure.least == figure.greatest == 0 else where_words(_worst(figure), units, _SYMBOLS)
+    where = _sides(_worst(figure), units)
+    place = "" if figure.least == figure.greatest == 0 else where_words(where, units, _SYMBOLS)
     if figure.missing:
         place += f" (no value at {figure.missing} points)"
     ends = (figure.least, figure.greatest)

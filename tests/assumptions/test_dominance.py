@@ -220,6 +220,16 @@ def test_dropped_terms_name_what_outweighs_them():
     assert not gone & kept
 
 
+def test_terms_that_stay_can_be_asked_for():
+    made = dominated(stages.cascode(), small="gds", against="gm")
+    kept = {(k.coefficient, k.term) for k in made.kept if k.coefficient == "denominator s^0"}
+    assert kept == {("denominator s^0", "gds1*gds2")}
+    gone = {(d.coefficient, d.term) for d in made.dropped}
+    assert not gone & {(k.coefficient, k.term) for k in made.kept}
+    # Each dropped term names one that stays.
+    assert {(d.coefficient, d.against) for d in made.dropped} <= {(k.coefficient, k.term) for k in made.kept}
+
+
 def test_ratio_is_none_without_bias():
     b = StageBuilder("no bias")
     b.voltage_source("VIN", "in", "gnd")

@@ -312,3 +312,24 @@ def test_a_quantity_asked_twice_is_accounted_for_once() -> None:
     assert [account.name for account in found.accounts] == ["gain.dc", "mid.dc"]
     with pytest.raises(KeyError):
         found["gain.p1"]
+
+
+def test_a_value_beyond_the_range_of_numbers_is_none_with_a_why() -> None:
+    """Admissible values, each within 1e±100, of which a quantity comes out larger than numbers go."""
+    text = COMMON_SOURCE
+    for old, new in {
+        "5 mS": "1e-70 S",
+        "0.2 mS": "1e-100 S",
+        "0.4 pF": "1e30 F",
+        "0.1 pF": "1e70 F",
+        "20 kohm": "1e-30 ohm",
+        "4 kohm": "1 ohm",
+        "0.7 pF": "1e-100 F",
+    }.items():
+        assert old in text
+        text = text.replace(old, new)
+    account = ledger(text, LONG_LOAD, quantities=("gain.bandwidth",))["gain.bandwidth"]
+    assert account.exact is None
+    assert account.error is None
+    assert account.why == "the value is beyond the range of numbers"
+    assert all(why.startswith("the exact bandwidth has no value") for why in account.assumptions[0].why.values())

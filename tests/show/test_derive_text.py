@@ -9,6 +9,7 @@ import pytest
 from shown import ASSUMPTIONS, CASCODE, run, saved
 
 from symamp.exact import derive as derive_module
+from symamp.show import derive_text
 from symamp.show import run as run_module
 
 WIDE = """\
@@ -72,10 +73,27 @@ def test_what_was_dropped_is_listed_with_its_ratio(tmp_path: Path) -> None:
     assert "rout" not in shown
 
 
+def test_of_many_dropped_terms_the_largest_are_listed(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    options = ("--assume", "all", "--response", "rout")
+    whole = derived(tmp_path, CASCODE, ASSUMPTIONS, options=options)
+    rows = re.findall(r"^  (?:numerator|denominator) s.*$", whole, re.MULTILINE)
+    assert len(rows) == 4
+    monkeypatch.setattr(derive_text, "_DROPPED", 2)
+    shown = derived(tmp_path, CASCODE, ASSUMPTIONS, options=options)
+    kept = re.findall(r"^  (?:numerator|denominator) s.*$", shown, re.MULTILINE)
+    sizes = sorted((float(re.search(r"([\d.]+) %$", row)[1]) for row in rows), reverse=True)  # type: ignore[index]
+    assert kept == [row for row in rows if row in kept]
+    assert sorted((float(re.search(r"([\d.]+) %$", row)[1]) for row in kept), reverse=True) == sizes[:2]  # type: ignore[index]
+    assert f"and 2 more, each at most {sizes[2]:.3g} % of what it fell to; --json lists all" in shown
+
+
 def test_a_response_at_frequencies(tmp_path: Path) -> None:
     shown = derived(tmp_path, CASCODE, options=("--at", "10 MHz", "--at", "0"))
-    assert re.search(r"  at 10 MHz: [+−]?[\d.]+ [+−] j·[\d.]+", shown)
-    assert "  at 0 Hz: −387.2\n" in shown
+    number = r"[+−]?[\d.]+"
+    assert re.search(rf"  at 10 MHz: {number} [+−] j·[\d.]+, magnitude {number}, {number} dB, {number} deg\n", shown)
+    assert "  at 0 Hz: −387.2, magnitude 387.2, 51.76 dB, 180 deg\n" in shown
 
 
 def test_without_bias_there_are_formulas_and_no_numbers(tmp_path: Path) -> None:

@@ -162,6 +162,8 @@ def test_derive_has_the_keys_of_the_design(answers: dict[str, Any]) -> None:
                 assert isinstance(response["dropped"], list)
                 for dropped in response["dropped"]:
                     assert set(dropped) >= {"coefficient", "term", "against", "ratio"}
+                kept = [(item["coefficient"], item["term"]) for item in response["kept"]]
+                assert {(item["coefficient"], item["against"]) for item in response["dropped"]} <= set(kept)
 
 
 def test_ledger_has_the_keys_of_the_design(answers: dict[str, Any]) -> None:
