@@ -104,10 +104,19 @@ def _run(command: str, *arguments: Any) -> None:
         click.echo("interrupted", err=True)
         sys.exit(130)
     except BrokenPipeError:
-        # Whoever reads has had enough; what is left to be flushed at the end goes nowhere.
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        # Whoever reads has had enough.
+        _drop_output()
         sys.exit(0)
+    except OSError as error:
+        _drop_output()
+        click.echo(f"nothing more can be written: {error.strerror or error}", err=True)
+        sys.exit(2)
     sys.exit(code)
+
+
+def _drop_output() -> None:
+    """What is left to be flushed at the end goes nowhere."""
+    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
 def _brought_in(name: str) -> ModuleType:

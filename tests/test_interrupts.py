@@ -149,3 +149,20 @@ def test_nobody_reading_is_no_error(tmp_path: Path) -> None:
         err = process.stderr.read()
         process.stderr.close()
         assert (process.wait(20), err) == (0, b"")
+
+
+@pytest.mark.skipif(not Path("/dev/full").exists(), reason="the system has no device that is always full")
+def test_a_full_disk_is_said_in_words(tmp_path: Path) -> None:
+    path = tmp_path / "one.stage.toml"
+    path.write_text(STAGE, encoding="utf-8")
+    with Path("/dev/full").open("w") as full:
+        done = subprocess.run(
+            [sys.executable, "-m", "symamp", "derive", str(path)],
+            stdout=full,
+            stderr=subprocess.PIPE,
+            text=True,
+            check=False,
+        )
+    assert done.returncode == 2
+    assert done.stderr.startswith("nothing more can be written: ")
+    assert "Traceback" not in done.stderr

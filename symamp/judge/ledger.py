@@ -14,6 +14,7 @@ from symamp.circuit.stage import Stage
 from symamp.errors import InputError, StageError
 from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root, parse_quantity
 from symamp.exact.derive import derive
+from symamp.exact.forms import Nested
 from symamp.exact.formulas import Formula, formula_of
 from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.response import Response
@@ -25,6 +26,7 @@ from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
 from symamp.values import show_value
 
 POINTS = 4096
+_MANY_ROOTS = 24  # poles or zeros above which their coefficients in double precision settle close ones no more
 _BEYOND = "the value is beyond the range of numbers"
 SEED = 1
 
@@ -213,7 +215,24 @@ def _table(
     notes.remarks.extend(f"{name}: {remark}" for remark in full.remarks)
     if full.response is None:
         notes.remarks.append(f"{name}: under all assumptions there is no response left: {full.why}")
+    notes.remarks.extend(_new_root_words(name, table))
+    if isinstance(exact.form, Nested) and not stage.span.empty and max(exact.form.skeleton.degrees) > _MANY_ROOTS:
+        notes.warnings.append(
+            f"{name}: of so many roots those that lie close together are uncertain over the span; those at the bias "
+            "point are right to all digits"
+        )
     return table
+
+
+def _new_root_words(name: str, table: ErrorTable) -> list[str]:
+    """Roots that the assumptions bring and the exact response does not have, where no account names them."""
+    words = []
+    for letter, word in (("p", "pole"), ("z", "zero")):
+        if any(quantity.name == letter for quantity in table.quantities):
+            continue  # the accounts of such roots name new ones
+        for root in _left_over(table, Quantity(letter, index=1))[1]:
+            words.append(f"{name}: under all assumptions a new {word} appears at {show_value(root.hz, 'Hz')}")
+    return words
 
 
 def _accounts(name: str, table: ErrorTable, swept: SpanErrors | None) -> list[Account]:

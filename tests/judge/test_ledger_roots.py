@@ -7,6 +7,7 @@ from math import pi
 import pytest
 from judged import CASCODE, COMMON_SOURCE, NO_R2, RESONATOR, stage_of
 
+from symamp.circuit.builder import StageBuilder
 from symamp.judge.ledger import Ledger, LostRoot, make_ledger
 
 GDS2, GDS1, GM2, GMB2 = 0.24e-3, 0.21e-3, 3.9e-3, 0.62e-3
@@ -120,3 +121,21 @@ neglect = ["C1", "C2"]
         account = found[f"gain.{name}"]
         assert [root.name for root in account.lost] == ["p1", "p2"]
         assert account.why == f"{name}, at 159.2 MHz, is lost: it has no partner"
+
+
+def test_a_new_root_that_no_account_names_is_a_remark() -> None:
+    """A nulling resistor of 1/G2 puts the zero at infinity; shorting it brings the zero G2/CC back."""
+    b = StageBuilder("two stages and a nulling resistor")
+    b.vccs("G1", out=("x", "gnd"), control=("in", "gnd"), value="0.5 mS")
+    b.vccs("G2", out=("o", "gnd"), control=("x", "gnd"), value="2 mS")
+    b.resistor("R1", "x", "gnd", "100 kohm")
+    b.resistor("R2", "o", "gnd", "50 kohm")
+    b.resistor("RZ", "x", "z", "500 ohm")
+    b.capacitor("CC", "z", "o", "4 pF")
+    b.capacitor("CL", "o", "gnd", "5 pF")
+    b.voltage_source("VIN", "in", "gnd")
+    b.response("gain", source="VIN", to="o")
+    b.assume("no nulling resistor", short=["RZ"])
+    made = make_ledger(b.stage())
+    assert "gain: under all assumptions a new zero appears at 79.58 MHz" in made.remarks
+    assert not make_ledger(b.stage(), quantities=["gain.z1"]).remarks
