@@ -14,7 +14,18 @@ from symamp.circuit.near import propose
 from symamp.circuit.stage import Stage, Symbol
 from symamp.errors import InputError, StageError
 from symamp.exact.system import terminal_node
-from symamp.formula import Call, Node, Pi, Power, dimension_of, dimension_of_unit, names, parse, walk
+from symamp.formula import (
+    Call,
+    Dimension,
+    Node,
+    Pi,
+    Power,
+    dimension_of,
+    dimension_of_unit,
+    names,
+    parse,
+    walk,
+)
 from symamp.values import quoted, read_frequency
 
 _OTHER_KEYS = ("name", "for")
@@ -231,7 +242,18 @@ class TableReader:
             lone, other = ("small", "against") if "small" in self.raw else ("against", "small")
             raise StageError(f"{lone} stands alone", f'say {other} too, such as {other} = ["gm"]', key=lone)
         small, against = self._products("small"), self._products("against")
+        units = [{self._dimension(product).unit for product in side} for side in (small, against)]
+        if small and against and not units[0] & units[1]:
+            left, right = (" and ".join(unit or "a pure number" for unit in sorted(side)) for side in units)
+            problem = f"small is in {left} and against in {right}, so nothing of one outweighs the other"
+            raise StageError(problem, 'compare like with like, such as "1/RL" with "gds"', key="against")
         return tuple(Pair(x, y, name) for x in small for y in against)
+
+    def _dimension(self, product: Mapping[str, Fraction]) -> Dimension:
+        total = Dimension()
+        for name, power in product.items():
+            total = total.times(dimension_of_unit(unit_of(self.stage, name)).to(power))
+        return total
 
     def _products(self, key: str) -> list[Mapping[str, Fraction]]:
         found: list[Mapping[str, Fraction]] = []

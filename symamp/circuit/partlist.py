@@ -75,7 +75,13 @@ def node_warnings(parts: Mapping[str, Part], asked: Iterable[Asked] = ()) -> lis
         for node in part.nodes:
             if touched[node] == 1 and node != GROUND and node not in wanted:
                 near = nearest(node, [other for other in touched if other != node])
-                meant = f"; was {near} meant?" if near else f"; a supply at rest is {GROUND}" if not passive else ""
+                meant = (
+                    f"; was {near} meant?"
+                    if near
+                    else f"; a supply at rest is {GROUND}"
+                    if not passive
+                    else ""
+                )
                 effect = ", so that no current flows in it" if passive else ""
                 warnings.append(f"node {node} is on {part.label} alone{effect}{meant}")
     return warnings

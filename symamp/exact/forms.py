@@ -146,9 +146,7 @@ class Nested:
         blocks_n, blocks_d = [], []
         for start in range(0, points, _NESTED_BLOCK):
             stop = min(points, start + _NESTED_BLOCK)
-            block = {
-                n: v[start:stop] if isinstance(v, np.ndarray) and v.ndim else v for n, v in full.items()
-            }
+            block = {n: v[start:stop] if isinstance(v, np.ndarray) and v.ndim else v for n, v in full.items()}
             entries = scaled_entries(self.graph, block, omega, self.limits)
             n, d = walk_in_powers(self.graph, entries, stop - start, self.valuation)
             blocks_n.append(n)
@@ -195,7 +193,9 @@ class Nested:
             p if keep is None else fmpq_poly([p[k] if k in keep else 0 for k in range(p.degree() + 1)])
             for p, keep in zip((numerator, denominator), self.keep, strict=True)
         )
-        low = min((k for p in (numerator, denominator) for k in range(p.degree() + 1) if p[k] != 0), default=0)
+        low = min(
+            (k for p in (numerator, denominator) for k in range(p.degree() + 1) if p[k] != 0), default=0
+        )
         return numerator.right_shift(low), denominator.right_shift(low)
 
     def _omega(self, values: Mapping[str, Any]) -> float:
@@ -265,7 +265,10 @@ def expanded_of(numerator: fmpz_mpoly, denominator: fmpz_mpoly) -> Expanded:
 
 
 def raw_polynomials(
-    ratio: Ratio, symbols: Mapping[str, Symbol], rename: Mapping[str, str] | None = None, work: int | None = None
+    ratio: Ratio,
+    symbols: Mapping[str, Symbol],
+    rename: Mapping[str, str] | None = None,
+    work: int | None = None,
 ) -> tuple[fmpz_mpoly, fmpz_mpoly]:
     """Numerator and denominator as they come from the graph, common factors and all.
 

@@ -46,8 +46,6 @@ class Formed(Protocol):
     def negative_ok(self) -> frozenset[str]: ...
 
 
-
-
 def formula_of(response: Formed, quantity: Quantity) -> Formula | None:
     """The formula of a quantity, or None: of a face (not in dB or degrees) where the quantity's sign is sure."""
     if quantity.face is not None:
@@ -130,7 +128,11 @@ def _levels(response: Formed) -> Expanded | None:
     form = response.form
     if not isinstance(form, Expanded):
         return None
-    return Expanded(form.numerator[:1], form.denominator[:2]) if response.apart and response.single_pole else form
+    return (
+        Expanded(form.numerator[:1], form.denominator[:2])
+        if response.apart and response.single_pole
+        else form
+    )
 
 
 def _coefficient_ratio(form: Expanded, quantity: Quantity) -> PolyRatio | None:

@@ -13,7 +13,9 @@ from symamp.circuit.stage import Symbol
 from symamp.exact.modular import PRIME
 
 S = "s"
-_GCD_AT_ONCE = 5000  # terms up to which a greatest common divisor is sought without asking whether there may be one
+_GCD_AT_ONCE = (
+    5000  # terms up to which a greatest common divisor is sought without asking whether there may be one
+)
 
 _FACTOR_LIMIT = 2000  # terms above which a polynomial in s is not factored in search of its roots
 
@@ -120,7 +122,9 @@ def least_exponents(polynomials: Iterable[fmpz_mpoly]) -> list[int]:
     return least or []
 
 
-def inverted(numerator: fmpz_mpoly, denominator: fmpz_mpoly, names: set[str]) -> tuple[fmpz_mpoly, fmpz_mpoly]:
+def inverted(
+    numerator: fmpz_mpoly, denominator: fmpz_mpoly, names: set[str]
+) -> tuple[fmpz_mpoly, fmpz_mpoly]:
     """Write generators in `names` as their inverses: a conductance's place is taken by its resistance.
 
     Both polynomials are multiplied by the same monomial, which clears the negative powers.

@@ -144,7 +144,9 @@ class Response:
 
     def _replaced(self, given: Mapping[str, np.ndarray]) -> dict[str, Any]:
         """The bias values with those given in their place, symbols before the aliases that may need them."""
-        known = {name: powers for name, powers in self.stage.aliases.items() if name not in self.stage.symbols}
+        known = {
+            name: powers for name, powers in self.stage.aliases.items() if name not in self.stage.symbols
+        }
         aliases = {name: solve(known[name]) for name in given if name in known}
         targets = [aliases[name].target if name in aliases else name for name in given]
         for name, target in zip(given, targets, strict=True):
@@ -259,7 +261,9 @@ class Response:
             figures = self.zero_figures(self.bias_values, 1) or figures
         value = figures.value(asked)[0]
         if np.isnan(value):
-            return QuantityValue(asked.text, None, unit, why_missing(figures, asked), shape, (), self.negative_ok)
+            return QuantityValue(
+                asked.text, None, unit, why_missing(figures, asked), shape, (), self.negative_ok
+            )
         plain = complex(value) if np.iscomplexobj(value) else float(value)
         remarks = tuple(remarks_beside(figures, asked))
         return QuantityValue(asked.text, plain, unit, None, shape, remarks, self.negative_ok)
@@ -270,7 +274,8 @@ class Response:
         parts = []
         for coefficients in (self.form.numerator, self.form.denominator):
             written = [
-                f"\\left({polynomial_latex(c)}\\right)" + ("" if k == 0 else " s" if k == 1 else f" s^{{{k}}}")
+                f"\\left({polynomial_latex(c)}\\right)"
+                + ("" if k == 0 else " s" if k == 1 else f" s^{{{k}}}")
                 for k, c in enumerate(coefficients)
                 if not c.is_zero()
             ]

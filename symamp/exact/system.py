@@ -86,7 +86,9 @@ def build_system(stage: Stage, without: Iterable[str] = ()) -> System:
     used: dict[str, None] = {}
     for (row, column), cell in stamp.matrix.cells.items():
         entry = tuple(
-            Term(coefficient, symbol, power, s) for (symbol, power, s), coefficient in cell.items() if coefficient
+            Term(coefficient, symbol, power, s)
+            for (symbol, power, s), coefficient in cell.items()
+            if coefficient
         )
         if entry:
             rows[row][column] = entry

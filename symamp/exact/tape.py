@@ -40,6 +40,7 @@ class Tape:
         self._symbols: list[str] = []
         self._outputs = [self._polynomial(polynomial) for polynomial in polynomials]
         self._schedule()
+        self._known.clear()  # of use while building alone, and large
 
     @property
     def symbols(self) -> tuple[str, ...]:

@@ -121,9 +121,7 @@ def _integer_entries(
     ]
 
 
-def _formulas(
-    stage: Stage, ratio: Ratio, names: list[str], rename: Mapping[str, str]
-) -> dict[str, Shape]:
+def _formulas(stage: Stage, ratio: Ratio, names: list[str], rename: Mapping[str, str]) -> dict[str, Shape]:
     """The resistances as formulas; those of a part that sees none or an infinite one are left out."""
     if sum(ratio.graph.count_terms()) > EXPAND_LIMIT:
         return {}

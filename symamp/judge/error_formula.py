@@ -52,9 +52,7 @@ def error_formula(exact: Response, approximate: Response, quantity: Quantity) ->
     largest = lowest_terms(_largest(above, exact), _largest(below, exact))
     sizes = [_value(polynomial, exact) for polynomial in largest]
     value = None if exact.missing or not sizes[1] else sizes[0] / sizes[1]
-    return ErrorFormula(
-        shape_of(above, below, weights=weights), shape_of(*largest, weights=weights), value
-    )
+    return ErrorFormula(shape_of(above, below, weights=weights), shape_of(*largest, weights=weights), value)
 
 
 def _partner(
@@ -89,7 +87,9 @@ def _largest(polynomial: fmpz_mpoly, exact: Response) -> fmpz_mpoly:
 
 
 def _value(polynomial: fmpz_mpoly, exact: Response) -> float:
-    return sum(_product(monomial, coefficient, exact) for monomial, coefficient in term_dict(polynomial).items())
+    return sum(
+        _product(monomial, coefficient, exact) for monomial, coefficient in term_dict(polynomial).items()
+    )
 
 
 def _product(monomial: Monomial, coefficient: int, exact: Response) -> float:

@@ -18,7 +18,7 @@ from symamp.exact.forms import Expanded
 from symamp.exact.response import Response
 from symamp.judge.bank import Bank, in_bank, poly_key
 from symamp.judge.pairing import partners
-from symamp.judge.sets import Plan
+from symamp.judge.sets import Plan, names_of
 from symamp.judge.stacking import StackedFigures, stacked
 
 Progress = Callable[[str, int, int], None]  # of what so many are done, of so many in all
@@ -42,7 +42,7 @@ class ErrorTable:
         self.quantities = tuple(quantities)
         self.plan = Plan(len(self.assumptions))
         self.approximations: dict[int, Approximation] = {}
-        self.warnings: dict[str, None] = {}  # those under any set, each once
+        self._told: dict[str, tuple[int, str]] = {}  # a warning's beginning: the set, and the whole warning
         self._approximate(progress)
         self._number_variants()
 
@@ -51,10 +51,28 @@ class ErrorTable:
         engine = Approximator(self.exact)
         for done, mask in enumerate(self.plan.masks, start=1):
             found = engine.under([a for k, a in enumerate(self.assumptions) if mask >> k & 1])
-            self.warnings.update(dict.fromkeys(found.warnings))
+            self._hear(mask, found.warnings)
             self.approximations[mask] = replace(found, dominated=None)
             if progress:
                 progress("sets of assumptions", done, len(self.plan.masks))
+
+    def _hear(self, mask: int, warnings: Sequence[str]) -> None:
+        """Keep each warning once, which dropped term it names aside: under all assumptions, else the smallest set."""
+        for warning in warnings:
+            about = warning.partition(", so ")[0]
+            before = self._told.get(about)
+            whole = mask == self.plan.masks[-1]
+            if before is None or whole or mask.bit_count() < before[0].bit_count():
+                self._told[about] = mask, warning
+
+    @property
+    def warnings(self) -> tuple[str, ...]:
+        """Those of all sets, each with the set that it is of unless that is all assumptions."""
+        found = []
+        for mask, warning in self._told.values():
+            listed = " and ".join(repr(name) for name in names_of(mask, [a.name for a in self.assumptions]))
+            found.append(warning if mask == self.plan.masks[-1] else f"{warning} (with {listed} alone)")
+        return tuple(found)
 
     def _number_variants(self) -> None:
         """Sets that lead to the same response share its numbers."""

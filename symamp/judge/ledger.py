@@ -20,23 +20,17 @@ from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.response import Response
 from symamp.judge.error_formula import ErrorFormula, error_formula
 from symamp.judge.errors_at import ErrorTable, Progress
-from symamp.judge.pairing import left_over
+from symamp.judge.lost_roots import LostRoot, lost_and_new
 from symamp.judge.sets import FIGURES, names_of
 from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
 from symamp.values import show_value
 
 POINTS = 4096
-_MANY_ROOTS = 24  # poles or zeros above which their coefficients in double precision settle close ones no more
+_MANY_ROOTS = (
+    24  # poles or zeros above which their coefficients in double precision settle close ones no more
+)
 _BEYOND = "the value is beyond the range of numbers"
 SEED = 1
-
-
-@dataclass(frozen=True)
-class LostRoot:
-    """A root without a partner: its name in the response it belongs to, and its frequency in Hz."""
-
-    name: str
-    hz: float
 
 
 @dataclass(frozen=True)
@@ -216,7 +210,11 @@ def _table(
     if full.response is None:
         notes.remarks.append(f"{name}: under all assumptions there is no response left: {full.why}")
     notes.remarks.extend(_new_root_words(name, table))
-    if isinstance(exact.form, Nested) and not stage.span.empty and max(exact.form.skeleton.degrees) > _MANY_ROOTS:
+    if (
+        isinstance(exact.form, Nested)
+        and not stage.span.empty
+        and max(exact.form.skeleton.degrees) > _MANY_ROOTS
+    ):
         notes.warnings.append(
             f"{name}: of so many roots those that lie close together are uncertain over the span; those at the bias "
             "point are right to all digits"
@@ -322,22 +320,7 @@ def _left_over(table: ErrorTable, quantity: Quantity) -> tuple[tuple[LostRoot, .
     approximate = table.approximations[table.plan.masks[-1]].response
     if not is_root(quantity) or approximate is None:
         return (), ()
-    kind = quantity.name
-    exact_roots = table.exact.poles() if kind == "p" else table.exact.zeros()
-    own = approximate.poles() if kind == "p" else approximate.zeros()
-    lost, new = left_over(np.array(exact_roots, dtype=complex), np.array(own, dtype=complex))
-    return _named(kind, lost, exact_roots), _named(kind, new, own)
-
-
-def _named(kind: str, roots: Sequence[complex], among: Sequence[complex]) -> tuple[LostRoot, ...]:
-    """Each with its index, those of a multiple root one after the other."""
-    left = list(enumerate(among, start=1))
-    named = []
-    for root in roots:
-        index, _ = found = next(pair for pair in left if pair[1] == root)
-        left.remove(found)
-        named.append(LostRoot(f"{kind}{index}", abs(root) / (2 * np.pi)))
-    return tuple(named)
+    return lost_and_new(table.exact, approximate, quantity.name)
 
 
 def _shares(

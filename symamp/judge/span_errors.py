@@ -20,6 +20,7 @@ from symamp.span.search import compass_search, places_of
 
 # Shares need every set: they are looked at in all points while sets times points are no more than this.
 _ENOUGH = 1 << 21
+_WORST = 48  # of the worst places, at how many shares are looked at in any case
 _AT_ONCE = 1 << 20  # sets times bias points that are held at one time
 Where = Mapping[str, float] | Mapping[str, int]
 
@@ -201,7 +202,7 @@ class _Look:
 
     def shares_at_the_worst(self) -> None:
         """Shares where other figures are worst, if they have not been looked at everywhere."""
-        places = places_of(list(self._sweep.extremes.values()))
+        places = places_of(list(self._sweep.extremes.values()))[:_WORST]
         if self._skipped and places:
             for piece in self._pieces(np.array(places).T, self._sweep.sets):
                 self._sweep.take_shares(self._box.values(piece), piece)

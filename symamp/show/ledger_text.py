@@ -16,6 +16,7 @@ from symamp.show.words import error_words, value_words, where_words
 _NAME = 30  # characters of an assumption's name in a row; the list above has it whole
 _SHORT_NAME = 16  # the same where the page is narrow
 _SYMBOLS = 4  # symbols of a bias point in a row
+_ROUNDING = 1e-9  # a difference between the least and the greatest of a figure that is none
 _CANCELLED = 10  # how many times the error its largest term must be for the others to nearly cancel it
 _ERROR_LINES = 12  # lines of an error's formula
 
@@ -171,7 +172,7 @@ def _table(page: Page, account: Account, ledger: Ledger) -> None:
     if account.span is not None:
         units = _units(ledger)
         worst = _sides(_worst(account.span), units)
-        if len(worst) > _SYMBOLS and account.span.least != account.span.greatest:
+        if len(worst) > _SYMBOLS and not _constant(account.span):
             page.prose(f"the worst of all lies at {where_words(worst, units, most=len(worst))}", indent=2)
 
 
@@ -237,6 +238,11 @@ def _worst(figure: SpanFigure) -> Where:
     return figure.where_greatest if abs(figure.greatest) >= abs(figure.least) else figure.where_least
 
 
+def _constant(figure: SpanFigure) -> bool:
+    """Whether the figure is the same, but for rounding, all over the span."""
+    return figure.greatest - figure.least <= _ROUNDING * abs(figure.greatest)
+
+
 def _sides(where: Where, units: Mapping[str, str]) -> dict[str, float]:
     """The sides' symbols, or the row: what follows a side says nothing that the side does not."""
     return {name: value for name, value in where.items() if name in units or name == "row"}
@@ -256,7 +262,9 @@ def _over(figure: SpanFigure | None, account: Account, units: dict[str, str]) ->
     if figure is None:
         return ["none", "none", ""]
     where = _sides(_worst(figure), units)
-    place = "" if figure.least == figure.greatest == 0 else where_words(where, units, _SYMBOLS)
+    place = where_words(where, units, _SYMBOLS)
+    if _constant(figure):
+        place = "anywhere" if figure.greatest else ""
     if figure.missing:
         place += f" (no value at {figure.missing} points)"
     ends = (figure.least, figure.greatest)

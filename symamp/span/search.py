@@ -15,7 +15,7 @@ from symamp.span.extremes import Extremes
 _FIRST_STEP = 0.25
 _HALVINGS = 8
 _REPEATS = 4  # rounds with one step before it is halved all the same
-_STARTS = 48  # different points from which a round searches
+_STARTS = 24  # places from which a round searches
 Take = Callable[[np.ndarray], None]
 
 
@@ -36,7 +36,7 @@ def compass_search(extremes: list[Extremes], take: Take, dimensions: int) -> int
 
 
 def places_of(extremes: list[Extremes]) -> list[np.ndarray]:
-    """The places of the extremes, _STARTS at most and each once; those of the errors of all, row 0, come first."""
+    """The places of the extremes, each once; those of the errors of all, row 0, come first."""
     found: dict[bytes, np.ndarray] = {}
     for row in range(max((e.rows for e in extremes), default=0)):
         for each in extremes:
@@ -45,13 +45,18 @@ def places_of(extremes: list[Extremes]) -> list[np.ndarray]:
                     place = each.place(kind, row)
                     if place is not None:
                         found.setdefault(np.round(place, 6).tobytes(), place)
-    return list(found.values())[:_STARTS]
+    return list(found.values())
 
 
 def _around(starts: list[np.ndarray], step: float, dimensions: int, seen: set[bytes]) -> np.ndarray:
-    """Points one step away along each side, within the box, not tried before: (d, P)."""
-    found = []
+    """Points one step away along each side, within the box, not tried before: (d, P).
+
+    No more than around _STARTS places; one around which all has been tried leaves its turn to the next.
+    """
+    found: list[np.ndarray] = []
     for start in starts:
+        if len(found) >= 2 * _STARTS * dimensions:
+            break
         inside = np.clip(start, 0.0, 1.0)
         for axis in range(dimensions):
             for sign in (-1.0, 1.0):

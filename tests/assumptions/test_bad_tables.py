@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import pytest
-from refused_tables import FILE, FIRST, refused
+from refused_tables import FILE, FIRST, refused, stage_with
 
+from symamp.assumptions.read import read_assumptions
 from symamp.errors import ReadError, StageError
 
 # table → (line within it, from 1 for [[assumption]]; key; part of the problem; part of the remedy)
@@ -289,3 +290,23 @@ def test_refused(case):
     assert remedy in error.remedy
     assert error.remedy or case in ("set that cannot be read", "set with unlike terms")
     assert str(error).startswith(f"{FILE}:{error.line}: {error.key}: ")
+
+
+@pytest.mark.parametrize(
+    ("small", "against", "units"),
+    [
+        ("gds", "RL", "small is in S and against in ohm"),
+        ("1", "gm1", "small is in a pure number and against in S"),
+        ("cgd1*RL", "CC", "small is in s and against in F"),
+    ],
+)
+def test_what_cannot_be_compared_is_refused(small: str, against: str, units: str) -> None:
+    error = refused(f'name = "it"\nsmall = ["{small}"]\nagainst = ["{against}"]')
+    assert units in error.problem
+    assert error.line == FIRST + 3
+
+
+def test_what_can_be_compared_in_part_is_taken() -> None:
+    """Of two lists some have one unit: the others say nothing of each other."""
+    (made,) = read_assumptions(stage_with('name = "it"\nsmall = ["gds1", "cgd1"]\nagainst = ["gm1", "1/RL"]'))
+    assert len(made.pairs) == 4

@@ -332,4 +332,51 @@ def test_a_value_beyond_the_range_of_numbers_is_none_with_a_why() -> None:
     assert account.exact is None
     assert account.error is None
     assert account.why == "the value is beyond the range of numbers"
-    assert all(why.startswith("the exact bandwidth has no value") for why in account.assumptions[0].why.values())
+    assert all(
+        why.startswith("the exact bandwidth has no value") for why in account.assumptions[0].why.values()
+    )
+
+
+CANCELLING = """\
+title = "Two ways that cancel"
+[mosfet]
+M1 = { gate = "in", drain = "x", source = "gnd" }
+M2 = { gate = "in", drain = "out", source = "gnd" }
+M3 = { gate = "x", drain = "out", source = "gnd" }
+[resistor]
+R1 = ["x", "gnd"]
+R2 = ["out", "gnd"]
+[voltage_source]
+VIN = ["in", "gnd"]
+[response]
+gain = { from = "VIN", to = "out" }
+[bias]
+M1 = { gm = "1 mS", gds = "1 uS" }
+M2 = { gm = "0.98 mS", gds = "1 uS" }
+M3 = { gm = "1 mS", gds = "1 uS" }
+R1 = "1 kohm"
+R2 = "1 kohm"
+[[assumption]]
+name = "resistors load more than the devices"
+small = ["gds"]
+against = ["gm", "1/R1", "1/R2"]
+"""
+
+EQUAL = """
+[[assumption]]
+name = "M1 and M2 are one"
+equal = ["M1", "M2"]
+"""
+
+
+def test_a_warning_of_some_sets_alone_says_of_which() -> None:
+    """With M1 and M2 one the two ways cancel more, so that is a warning of both; without, of the first alone."""
+    (warning,) = ledger(CANCELLING, quantities=("gain.dc",)).warnings
+    assert warning.endswith("the dropped term -gm2*gds1*R1*R2 may matter")
+    far = CANCELLING.replace('gm = "0.98 mS"', 'gm = "0.5 mS"')
+    assert ledger(far, quantities=("gain.dc",)).warnings == ()
+    (warning,) = ledger(far, EQUAL, quantities=("gain.dc",)).warnings
+    assert warning.endswith("may matter")  # under all: then M2 is as M1
+    neglecting = '\n[[assumption]]\nname = "M3 is off"\nneglect = ["gm3"]\n'
+    (warning,) = ledger(CANCELLING, neglecting, quantities=("gain.dc",)).warnings
+    assert warning.endswith("may matter (with 'resistors load more than the devices' alone)")

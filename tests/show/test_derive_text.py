@@ -92,7 +92,9 @@ def test_of_many_dropped_terms_the_largest_are_listed(
 def test_a_response_at_frequencies(tmp_path: Path) -> None:
     shown = derived(tmp_path, CASCODE, options=("--at", "10 MHz", "--at", "0"))
     number = r"[+−]?[\d.]+"
-    assert re.search(rf"  at 10 MHz: {number} [+−] j·[\d.]+, magnitude {number}, {number} dB, {number} deg\n", shown)
+    assert re.search(
+        rf"  at 10 MHz: {number} [+−] j·[\d.]+, magnitude {number}, {number} dB, {number} deg\n", shown
+    )
     assert "  at 0 Hz: −387.2, magnitude 387.2, 51.76 dB, 180 deg\n" in shown
 
 

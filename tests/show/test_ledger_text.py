@@ -224,3 +224,9 @@ def test_html_has_the_same_figures_and_escapes_names() -> None:
     assert page.count("<table>") == page.count("</table>") == 2
     moduli = ledger_html(ledger(COMPLEX, quantities=("gain.p1",)))
     assert "share over the span, modulus" in moduli
+
+
+def test_a_figure_that_is_the_same_all_over_the_span_is_worst_anywhere() -> None:
+    shown = text(ledger(CASCODE, '[span]\ngm1 = "20 %"\n', ASSUMPTIONS, quantities=("gain.dc",)), 120)
+    rows = re.findall(r"^  (\d|all).*?(anywhere|gm1 .*)?$", shown, re.MULTILINE)
+    assert [row for row in rows if row[1]] == [("1", "anywhere"), ("2", "anywhere"), ("all", "anywhere")]

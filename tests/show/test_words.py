@@ -98,7 +98,10 @@ def test_bias_points() -> None:
     [
         (Asked("g", {"VIN": Fraction(1)}, ("out", "gnd")), "V(out) / VIN"),
         (Asked("g", {"VIN": Fraction(1)}, ("a", "b"), over=("x", "gnd")), "V(a, b) / V(x), driven by VIN"),
-        (Asked("g", {"VP": Fraction(1, 2), "VN": Fraction(-1, 2)}, ("o", "gnd")), "V(o) for VP = 1/2, VN = −1/2"),
+        (
+            Asked("g", {"VP": Fraction(1, 2), "VN": Fraction(-1, 2)}, ("o", "gnd")),
+            "V(o) for VP = 1/2, VN = −1/2",
+        ),
         (Asked("g", {"VP": Fraction(-1), "VN": Fraction(1)}, ("o", "gnd")), "V(o) for VP = −1, VN = 1"),
         (Asked("g", {"VP": Fraction(1)}, to_source="VM"), "I(VM) / VP"),
         (Asked("z", looking_into=("out", "gnd")), "impedance at out"),

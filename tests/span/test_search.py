@@ -75,6 +75,17 @@ def test_least_and_greatest_of_every_figure_are_searched() -> None:
     assert one.least == pytest.approx(1 - 0.8**2 - 0.6**2)  # the far corner
 
 
+def test_figures_that_come_late_have_their_turn() -> None:
+    """Of 60 figures, each with a peak of its own, none is left where it was for the sake of the first."""
+    middles = np.random.default_rng(4).random((60, 2)) * 0.8 + 0.1
+    peaks = [peak_at(*middle) for middle in middles]
+    extremes, _ = searched(lambda u: np.concatenate([peak(u) for peak in peaks]), np.array([[0.5], [0.5]]))
+    for row in range(60):
+        found = extremes.result(row)
+        assert found is not None
+        assert found.greatest == pytest.approx(1.0, abs=1e-3)
+
+
 def test_a_start_outside_the_box_leads_into_it() -> None:
     extremes, _ = searched(peak_at(0.5), np.array([[-1.5]]))
     found = extremes.result(0)
