@@ -8,57 +8,15 @@ import time
 from fractions import Fraction
 from pathlib import Path
 
+from cascode_file import CASCODE, NO_BIAS, read
 from hypothesis import given
 from hypothesis import strategies as st
 
-from symamp.circuit.stage import Asked, Follow, Side, Stage
+from symamp.circuit.stage import Asked, Follow, Side
 from symamp.circuit.stagefile import locate, parse_stage
 from symamp.errors import InputError
 
-CASCODE = """\
-title = "Cascode into a capacitive load"
-
-[mosfet]
-M1 = { gate = "in",  drain = "x",   source = "gnd" }
-M2 = { gate = "gnd", drain = "out", source = "x", body = "gnd" }
-
-[capacitor]
-CL = ["out", "gnd"]
-
-[voltage_source]
-VIN = ["in", "gnd"]
-
-[response]
-gain = { from = "VIN", to = "out" }
-late = { from = "VIN", to = "out", over = "x" }
-rout = { looking_into = "out" }
-
-[bias]
-M1 = { gm = "4.1 mS", gds = "0.21 mS" }
-M2 = { gm = "3.9 mS", gds = "0.24 mS", gmb = "0.62 mS" }
-CL = "3.3 pF"
-
-[span]
-gm1  = ["2 mS", "8 mS"]
-gds1 = "30 %"
-gds2 = { follows = "gds1" }
-
-[[assumption]]
-name = "no body effect"
-neglect = ["gmb"]
-
-[[claim]]
-about = "gain.dc"
-formula = "-gm1*gm2*ro1*ro2"
-within = "10 %"
-"""
-
-NO_BIAS = CASCODE[: CASCODE.index("[bias]")]
 BIASED = CASCODE[: CASCODE.index("[span]")]
-
-
-def read(text: str, folder: Path = Path()) -> Stage:
-    return parse_stage(text.encode(), file="my.stage.toml", folder=folder)
 
 
 def line_with(text: str, piece: str) -> int:
