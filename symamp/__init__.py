@@ -15,6 +15,7 @@ from typing import Any
 __version__ = "0.1.0"
 
 _HOME = {
+    "ApproximateResponse": "symamp.api",
     "Stage": "symamp.api",
     "StageBuilder": "symamp.api",
     "StageLedger": "symamp.api",

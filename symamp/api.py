@@ -6,7 +6,7 @@ Thin objects over the rooms below: each method is one call into one of them.
 from __future__ import annotations
 
 import os
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from functools import cached_property
 from pathlib import Path
 from typing import Any
@@ -21,11 +21,12 @@ from symamp.errors import StageError
 from symamp.exact.derive import derive
 from symamp.exact.response import QuantityValue, Response
 from symamp.exact.time_constants import TimeConstant, time_constants
-from symamp.judge.ledger import POINTS, SEED, Ledger, make_ledger
+from symamp.judge.ledger import POINTS, SEED, Account, Ledger, make_ledger
 from symamp.show.html import ledger_html
 from symamp.show.json_parts import ledger_json
 from symamp.show.ledger_text import ledger_page
 from symamp.show.page import Page
+from symamp.values import read_frequency
 
 
 def load(path: str | os.PathLike[str]) -> Stage:
@@ -74,11 +75,12 @@ class Stage:
         return self._responses[name]
 
     def ledger(
-        self, quantities: Sequence[str] = (), *, points: int = POINTS, seed: int = SEED
+        self, quantities: str | Sequence[str] = (), *, points: int = POINTS, seed: int = SEED
     ) -> StageLedger:
         """The errors that the assumptions add, at the bias point and over the span (see `make_ledger`)."""
+        wanted = [quantities] if isinstance(quantities, str) else quantities
         made = make_ledger(
-            self.data, quantities=quantities, assumptions=self.assumptions, points=points, seed=seed
+            self.data, quantities=wanted, assumptions=self.assumptions, points=points, seed=seed
         )
         return StageLedger(made)
 
@@ -90,7 +92,52 @@ class Stage:
         return f"<stage {self.title!r}: responses {', '.join(self.responses)}>"
 
 
-class StageResponse:
+class _Answering:
+    """What an exact and an approximate response answer alike."""
+
+    def _response(self) -> Response:
+        raise NotImplementedError
+
+    @property
+    def numerator(self) -> list[Any] | None:
+        """Coefficients of s, ascending, as SymPy expressions; None while nested."""
+        return self._response().numerator
+
+    @property
+    def denominator(self) -> list[Any] | None:
+        """Coefficients of s, ascending, as SymPy expressions; None while nested."""
+        return self._response().denominator
+
+    @property
+    def unit(self) -> str:
+        return self._response().unit
+
+    @property
+    def terms(self) -> int:
+        """Terms written out, or the product terms that a nested response stands for."""
+        return self._response().terms
+
+    def at(self, hz: Any, bias: dict[str, Any] | None = None) -> Any:
+        """The complex response at a frequency in Hz, as text such as "10 MHz" too, or an array (see `Response.at`)."""
+        return self._response().at(float(read_frequency(hz)) if isinstance(hz, str) else hz, bias)
+
+    def poles(self) -> list[complex]:
+        """Poles at the bias point in rad/s, by increasing magnitude."""
+        return self._response().poles()
+
+    def zeros(self) -> list[complex]:
+        """Zeros at the bias point in rad/s, by increasing magnitude."""
+        return self._response().zeros()
+
+    def quantity(self, name: str) -> QuantityValue:
+        """A quantity with its value at the bias point and its formula."""
+        return self._response().quantity(name)
+
+    def _repr_latex_(self) -> str | None:
+        return self._response()._repr_latex_()
+
+
+class StageResponse(_Answering):
     """An exact response of a stage."""
 
     def __init__(self, stage: Stage, exact: Response) -> None:
@@ -98,54 +145,47 @@ class StageResponse:
         self.exact = exact
         self._engine = Approximator(exact)
 
-    @property
-    def numerator(self) -> list[Any] | None:
-        """Coefficients of s, ascending, as SymPy expressions; None while nested."""
-        return self.exact.numerator
-
-    @property
-    def denominator(self) -> list[Any] | None:
-        """Coefficients of s, ascending, as SymPy expressions; None while nested."""
-        return self.exact.denominator
-
-    @property
-    def unit(self) -> str:
-        return self.exact.unit
-
-    @property
-    def terms(self) -> int:
-        """Terms written out, or the product terms that a nested response stands for."""
-        return self.exact.terms
-
-    def at(self, hz: Any, bias: dict[str, Any] | None = None) -> Any:
-        """The complex response at a frequency in Hz or an array of them (see `Response.at`)."""
-        return self.exact.at(hz, bias)
-
-    def poles(self) -> list[complex]:
-        """Poles at the bias point in rad/s, by increasing magnitude."""
-        return self.exact.poles()
-
-    def zeros(self) -> list[complex]:
-        """Zeros at the bias point in rad/s, by increasing magnitude."""
-        return self.exact.zeros()
-
-    def quantity(self, name: str) -> QuantityValue:
-        """A quantity with its value at the bias point and its formula."""
-        return self.exact.quantity(name)
+    def _response(self) -> Response:
+        return self.exact
 
     def time_constants(self) -> tuple[TimeConstant, ...]:
         """The open-circuit time constants of the capacitors and inductors."""
         return time_constants(self.stage.data, self.exact.asked)
 
-    def under(self, *names: str) -> Approximation:
+    def under(self, *names: str) -> ApproximateResponse:
         """The approximate response under the assumptions of these names ("all" for every one), as a set."""
-        return self._engine.under(chosen(self.stage.assumptions, names))
-
-    def _repr_latex_(self) -> str | None:
-        return self.exact._repr_latex_()
+        return ApproximateResponse(self._engine.under(chosen(self.stage.assumptions, names)))
 
     def __repr__(self) -> str:
         return f"<response {self.exact.name!r} of {self.stage.title!r}>"
+
+
+class ApproximateResponse(_Answering):
+    """A response under a set of assumptions, with what was dropped.
+
+    It answers as an exact one does. Where the assumptions leave no response, `response` is None, `why` says so, and
+    asking raises StageError with those words.
+    """
+
+    def __init__(self, made: Approximation) -> None:
+        self.response = made.response
+        self.assumptions = made.assumptions
+        self.why = made.why
+        self.dropped = made.dropped
+        self.kept = made.kept
+        self.warnings = made.warnings
+        self.remarks = made.remarks
+
+    def _response(self) -> Response:
+        if self.response is None:
+            raise StageError(f"these assumptions leave no response: {self.why}", "leave one of them out")
+        return self.response
+
+    def __repr__(self) -> str:
+        names = ", ".join(repr(name) for name in self.assumptions)
+        return (
+            f"<{'response' if self.response is not None else 'no response'} under {names or 'no assumption'}>"
+        )
 
 
 class StageLedger:
@@ -155,12 +195,18 @@ class StageLedger:
         self.plain = plain
 
     @property
-    def accounts(self) -> tuple[Any, ...]:
+    def accounts(self) -> tuple[Account, ...]:
         """The accounts, one a quantity."""
         return self.plain.accounts
 
-    def __getitem__(self, name: str) -> Any:
+    def __getitem__(self, name: str) -> Account:
         return self.plain[name]
+
+    def __iter__(self) -> Iterator[Account]:
+        return iter(self.plain.accounts)
+
+    def __len__(self) -> int:
+        return len(self.plain.accounts)
 
     def json(self) -> dict[str, Any]:
         """The object that `symamp ledger --json` prints."""

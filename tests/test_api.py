@@ -149,6 +149,29 @@ def test_a_response_under_assumptions(stage: symamp.Stage) -> None:
     assert gain.quantity("dc").value == pytest.approx(GAIN)  # the exact one is as it was
 
 
+def test_an_approximate_response_answers_as_an_exact_one_does(stage: symamp.Stage) -> None:
+    gain = stage.response("gain")
+    every = gain.under("all")
+    assert every.quantity("dc").value == pytest.approx(GAIN * 3.9 / 4.76)
+    assert [str(c) for c in every.numerator or ()] == ["-gm1*gm2"]
+    assert every.response is not None
+    assert every.poles() == every.response.poles()
+    assert abs(every.at(1e6)) < abs(every.quantity("dc").value)
+    assert every._repr_latex_()
+    assert "no body effect" in repr(every)
+
+
+def test_where_nothing_is_left_asking_says_why(stage: symamp.Stage, tmp_path: Path) -> None:
+    text = CASCODE + '[[assumption]]\nname = "no loss"\nneglect = ["gds"]\n'
+    path = tmp_path / "lossless.stage.toml"
+    path.write_text(text + '[[assumption]]\nname = "no load"\nopen = ["CL"]\n', encoding="utf-8")
+    nothing = symamp.load(path).response("gain").under("no loss", "no load")
+    assert nothing.response is None
+    assert nothing.why
+    with pytest.raises(symamp.StageError, match="leave no response"):
+        nothing.poles()
+
+
 @pytest.mark.parametrize("name", ["no boy effect", ""])
 def test_an_unknown_assumption_is_refused(stage: symamp.Stage, name: str) -> None:
     with pytest.raises(symamp.InputError, match="no assumption named"):
@@ -238,3 +261,15 @@ def test_a_stage_reads_its_assumptions_when_they_are_first_asked_for(path: Path)
     assert stage.response("gain").poles()
     with pytest.raises(symamp.InputError, match="CLL"):
         _ = stage.assumptions
+
+
+def test_text_will_do_for_one_quantity_and_for_a_frequency(stage: symamp.Stage) -> None:
+    made = stage.ledger("gain.dc")
+    assert [account.name for account in made] == ["gain.dc"]
+    assert len(made) == 1
+    with pytest.raises(KeyError, match="this ledger has gain"):
+        made["gain.p1"]
+    gain = stage.response("gain")
+    assert gain.at("1 MHz") == gain.at(1e6)
+    with pytest.raises(symamp.InputError):
+        gain.at("1 mH")

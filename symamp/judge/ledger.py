@@ -96,7 +96,8 @@ class Ledger:
         for account in self.accounts:
             if account.name == name:
                 return account
-        raise KeyError(name)
+        known = ", ".join(account.name for account in self.accounts)
+        raise KeyError(f"{name}: this ledger has {known}")
 
 
 @dataclass
