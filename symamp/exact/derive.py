@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import random
 
-from symamp.circuit.checks import check_asked, check_network
+from symamp.circuit.checks import check_asked
 from symamp.circuit.kinds import CAPACITANCE, INDUCTANCE
 from symamp.circuit.stage import Asked, Stage
 from symamp.circuit.stagefile import locate
-from symamp.errors import NetworkError, StageError
+from symamp.errors import InputError, NetworkError, StageError
 from symamp.exact.cofactors import Ratio, entry_symbols, ratio_of
 from symamp.exact.forms import EXPAND_LIMIT, Expanded, Nested, write_out_small
 from symamp.exact.modular import PRIME, residue, vanishes
@@ -18,7 +18,6 @@ from symamp.exact.system import System, build_system
 
 def derive(stage: Stage, asked: Asked) -> Response:
     """The exact response. Raises StageError where it is identically zero or infinite, or cannot be had."""
-    check_network(stage, asked.without)
     check_asked(stage, asked)
     system = build_system(stage, asked.without)
     ratio = ratio_of(system, asked)
@@ -42,34 +41,39 @@ def nested_of(stage: Stage, ratio: Ratio) -> Nested:
 
 
 def _refuse_vanishing(stage: Stage, asked: Asked, system: System, ratio: Ratio) -> None:
-    place = locate(stage, ("response", asked.name))
-    zero, infinite = vanishes(ratio.graph)
+    """StageError, with its place in the file, where the response is zero or infinite whatever the values."""
+    error = _vanishing(asked, system, ratio)
+    if error is not None:  # the place is looked up for this alone: it takes a parser of its own
+        place = locate(stage, ("response", asked.name))
+        raise error.at(file=place["file"], line=place["line"], key=place["key"])
+
+
+def _vanishing(asked: Asked, system: System, ratio: Ratio) -> InputError | None:
+    name = f"response {asked.name!r}"
     free = undetermined(system)
     if free:
-        raise NetworkError(
-            f"response {asked.name!r} is identically infinite: nothing sets {' or '.join(free[:4])}",
+        return NetworkError(
+            f"{name} is identically infinite: nothing sets {' or '.join(free[:4])}",
             "give it a path to ground: a conductance (gds, go), a resistor or a source",
-            **place,
         )
+    zero, infinite = vanishes(ratio.graph)
     if infinite:
         what = "what it is divided by" if asked.over else "the current of the source that is looked from"
-        raise StageError(
-            f"response {asked.name!r} is identically infinite: {what} is zero whatever the values",
+        return StageError(
+            f"{name} is identically infinite: {what} is zero whatever the values",
             "ask for another node, or join it to the drive",
-            **place,
         )
     if zero and not asked.drive:
-        raise StageError(
-            f"response {asked.name!r} is identically zero: no current raises a voltage there",
+        return StageError(
+            f"{name} is identically zero: no current raises a voltage there",
             "a source, an op amp or a transformer holds it at 0: ask for another node, or take that part off",
-            **place,
         )
     if zero:
-        raise StageError(
-            f"response {asked.name!r} is identically zero: nothing carries {', '.join(asked.drive)} to its output",
+        return StageError(
+            f"{name} is identically zero: nothing carries {', '.join(asked.drive)} to its output",
             "ask for a node that the drive reaches, or mend the connection",
-            **place,
         )
+    return None
 
 
 def undetermined(system: System) -> list[str]:

@@ -18,7 +18,7 @@ from symamp.exact.ends import ends_cancel
 from symamp.exact.graded import Coefficients, exact_in_limit, scaled_entries, walk_in_powers
 from symamp.exact.hidden import without_hidden
 from symamp.exact.minors import MinorGraph
-from symamp.exact.polys import S, coefficients_of_s, factors_in_s, inverted, lowest_terms, ring_of
+from symamp.exact.polys import S, coefficients_of_s, factors_in_s, held, inverted, lowest_terms, ring_of
 from symamp.exact.skeleton import Skeleton, skeleton_of
 from symamp.exact.tape import Tape, term_dict
 
@@ -57,11 +57,7 @@ class Expanded:
     @cached_property
     def symbols(self) -> frozenset[str]:
         """The symbols that the written-out form holds."""
-        names = self.context.names()
-        held: set[str] = set()
-        for polynomial in (*self.numerator, *self.denominator):
-            held.update(name for name, degree in zip(names, polynomial.degrees(), strict=True) if degree > 0)
-        return frozenset(held)
+        return frozenset(held(*self.numerator, *self.denominator))
 
     def coefficients(self, values: Values, points: int) -> Coefficients:
         """Coefficients of s at `points` points."""
@@ -125,12 +121,12 @@ class Nested:
     @cached_property
     def symbols(self) -> frozenset[str]:
         """The symbols whose values are needed: of computed ones those that their rules need."""
-        held = set(entry_symbols(self.graph))
+        needed = set(entry_symbols(self.graph))
         for name, rule in self.computed:
-            if name in held:
-                held.discard(name)
-                held.update(getattr(rule, "needs", ()))
-        return frozenset(held)
+            if name in needed:
+                needed.discard(name)
+                needed.update(getattr(rule, "needs", ()))
+        return frozenset(needed)
 
     def full_values(self, values: Mapping[str, Any]) -> dict[str, Any]:
         """The values with all computed symbols worked out."""

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from math import pi
-from typing import Any, Protocol
+from typing import Protocol
 
 import numpy as np
 from flint import Ordering, fmpz_mpoly, fmpz_mpoly_ctx
@@ -19,7 +19,7 @@ from symamp.exact.polys import (
     ring_of,
 )
 from symamp.exact.shape import QuadraticRoot, Shape, shape_of
-from symamp.exact.tape import term_dict
+from symamp.exact.tape import polynomial_value
 
 Formula = Shape | QuadraticRoot
 PolyRatio = tuple[fmpz_mpoly, fmpz_mpoly]
@@ -181,7 +181,7 @@ def _apart_index(response: Formed, coefficients: tuple[fmpz_mpoly, ...], index: 
     """Which ratio of neighbours is the index-th by magnitude at the bias point (in order where there is none)."""
     if response.missing:
         return index
-    values = [float(_value(c, response)) for c in coefficients]
+    values = [polynomial_value(c, response.bias_values) for c in coefficients]
     sizes = []
     for k in range(1, len(values)):
         if values[k]:
@@ -204,7 +204,7 @@ def _quadratic_root(response: Formed, quantity: Quantity) -> QuadraticRoot | Non
     second = QuadraticRoot.of(a, b, c, -1, weights)
     smaller = second if _sign(b) < 0 else first
     if weights is not None and not response.missing:
-        values = [float(_value(p, response)) for p in (a, b, c)]
+        values = [polynomial_value(p, response.bias_values) for p in (a, b, c)]
         roots = _quadratic_values(*values)
         if roots[0].imag:
             smaller = first if roots[0].imag > 0 else second
@@ -238,7 +238,7 @@ def _factor_of_root(
         return None
     places: list[tuple[float, int, tuple[fmpz_mpoly, ...]]] = []
     for factor in factors:
-        values = [complex(_value(c, response)) for c in factor]
+        values = [polynomial_value(c, response.bias_values) for c in factor]
         sizes = sorted(abs(r) for r in np.roots(values[::-1]))
         places.extend((size, i, factor) for i, size in enumerate(sizes))
     places.sort(key=lambda place: place[0])
@@ -246,13 +246,3 @@ def _factor_of_root(
         return None
     _, which, factor = places[index - 1]
     return factor, which
-
-
-def _value(polynomial: fmpz_mpoly, response: Formed) -> Any:
-    total = 0.0
-    for monomial, coefficient in term_dict(polynomial).items():
-        product = float(coefficient)
-        for name, exponent in monomial:
-            product *= response.bias_values[name] ** exponent
-        total += product
-    return total

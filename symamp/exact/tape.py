@@ -30,6 +30,19 @@ def term_dict(polynomial: fmpz_mpoly) -> _Terms:
     }
 
 
+def term_value(monomial: Monomial, coefficient: int, values: Mapping[str, float]) -> float:
+    """A term's value at one bias point."""
+    product = float(coefficient)
+    for name, exponent in monomial:
+        product *= values[name] ** exponent
+    return product
+
+
+def polynomial_value(polynomial: fmpz_mpoly, values: Mapping[str, float]) -> float:
+    """A polynomial's value at one bias point, term by term: for one point a tape would not pay."""
+    return sum((term_value(m, c, values) for m, c in term_dict(polynomial).items()), start=0.0)
+
+
 class Tape:
     """Compiled polynomials. `tape(values)` gives one float64 array of shape (P,) for each of them."""
 

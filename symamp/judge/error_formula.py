@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections import defaultdict
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -12,7 +14,7 @@ from symamp.exact.formulas import formula_of, rational_of
 from symamp.exact.polys import held, into_ring, lowest_terms, ring_of
 from symamp.exact.response import Response
 from symamp.exact.shape import Shape, shape_of
-from symamp.exact.tape import Monomial, term_dict
+from symamp.exact.tape import polynomial_value, term_dict, term_value
 from symamp.judge.pairing import partners
 
 _TERM_LIMIT = 4000  # terms above which the difference is not multiplied out
@@ -49,8 +51,9 @@ def error_formula(exact: Response, approximate: Response, quantity: Quantity) ->
         return ErrorFormula(shape_of(above), None)
     above, below = lowest_terms(above, below)
     weights = exact.bias_values or None
-    largest = lowest_terms(_largest(above, exact), _largest(below, exact))
-    sizes = [_value(polynomial, exact) for polynomial in largest]
+    values = defaultdict(lambda: 1.0, exact.bias_values)  # a symbol without a value counts as 1
+    largest = lowest_terms(_largest(above, values), _largest(below, values))
+    sizes = [polynomial_value(polynomial, values) for polynomial in largest]
     value = None if exact.missing or not sizes[1] else sizes[0] / sizes[1]
     return ErrorFormula(shape_of(above, below, weights=weights), shape_of(*largest, weights=weights), value)
 
@@ -73,28 +76,13 @@ def _partner(
     return rational_of(approximate, Quantity(quantity.name, index=place + 1))
 
 
-def _largest(polynomial: fmpz_mpoly, exact: Response) -> fmpz_mpoly:
+def _largest(polynomial: fmpz_mpoly, values: Mapping[str, float]) -> fmpz_mpoly:
     """The term that is largest in magnitude at the bias point."""
-
     terms = term_dict(polynomial).items()
-    monomial, coefficient = max(terms, key=lambda item: abs(_product(item[0], item[1], exact)))
+    monomial, coefficient = max(terms, key=lambda item: abs(term_value(item[0], item[1], values)))
     context = polynomial.context()
     place = {name: i for i, name in enumerate(context.names())}
     exponents = [0] * context.nvars()
     for name, exponent in monomial:
         exponents[place[name]] = exponent
     return context.from_dict({tuple(exponents): coefficient})
-
-
-def _value(polynomial: fmpz_mpoly, exact: Response) -> float:
-    return sum(
-        _product(monomial, coefficient, exact) for monomial, coefficient in term_dict(polynomial).items()
-    )
-
-
-def _product(monomial: Monomial, coefficient: int, exact: Response) -> float:
-    """A term's value at the bias point, a symbol without one counted as 1."""
-    product = float(coefficient)
-    for name, exponent in monomial:
-        product *= exact.bias_values.get(name, 1.0) ** exponent
-    return product

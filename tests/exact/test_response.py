@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+import subprocess
+import sys
+from pathlib import Path
+
 import pytest
 
 from symamp.circuit.builder import StageBuilder
@@ -71,3 +75,19 @@ def test_another_bias_may_be_given_by_alias() -> None:
         gain.at(0, {"beta1": 50, "rpi1": 1000})
     with pytest.raises(StageError, match="'ro2' is no symbol"):
         gain.at(0, {"ro2": 1e3})
+
+
+def test_a_good_stage_is_derived_without_the_parser_that_finds_lines(tmp_path: Path) -> None:
+    """Lines are looked up for messages alone; the parser for it would cost every start its time."""
+    path = tmp_path / "one.stage.toml"
+    path.write_text(
+        '[resistor]\nR1 = ["in", "out"]\n[capacitor]\nC1 = ["out", "gnd"]\n[voltage_source]\nVIN = ["in", "gnd"]\n'
+        '[response]\ngain = { from = "VIN", to = "out" }\n',
+        encoding="utf-8",
+    )
+    code = (
+        "import sys, symamp; symamp.load(sys.argv[1]).response('gain'); "
+        "print([name for name in sys.modules if name.startswith('tree_sitter')])"
+    )
+    done = subprocess.run([sys.executable, "-c", code, str(path)], capture_output=True, text=True, check=True)
+    assert done.stdout == "[]\n"
