@@ -9,7 +9,6 @@ from symamp.assumptions.bridge import Half, dc_words, gain_across, split_stage
 from symamp.assumptions.merge import Pooled, trimmed
 from symamp.assumptions.record import Miller
 from symamp.assumptions.rewrite import INFINITE, NOTHING_LEFT, depends_words, symbol_value
-from symamp.assumptions.roots import powers_of
 from symamp.assumptions.rules import GainRule, Rule, ValueRule
 from symamp.assumptions.written import DC_LOST, ZERO, Settled, WrittenEngine, struck_ratio, zero_form
 from symamp.circuit.kinds import CAPACITANCE
@@ -188,7 +187,7 @@ class NestedEngine:
         found = engine.under(ask, ())
         if found.form is None:
             return f"Miller across {half.bridge.symbol}: {found.why}"
-        words = dc_words(half.bridge, *(0 not in powers for powers in powers_of(found.form)))
+        words = dc_words(half.bridge, *(0 not in powers for powers in found.form.powers))
         if words:
             return words
         stage = self._exact.stage

@@ -12,11 +12,10 @@ from flint import fmpz_mpoly
 from symamp.assumptions.merge import Pooled
 from symamp.assumptions.rewrite import tidy
 from symamp.circuit.stage import Stage
-from symamp.exact.forms import Expanded, Nested, expanded_of
+from symamp.exact.forms import Expanded, Nested, Powers, expanded_of
 from symamp.exact.polys import from_coefficients, lowest_terms
 from symamp.exact.response import Response
 
-Powers = tuple[list[int], list[int]]
 Outcome = tuple[Response | None, str, list[str]]
 
 
@@ -26,7 +25,7 @@ def step_on_roots(response: Response, ask: Pooled) -> Outcome:
         return _banded(response, float(ask.band))
     if not (ask.dominant_pole or ask.poles_far_apart):
         return response, "", []
-    powers = powers_of(response.form)
+    powers = response.form.powers
     why = (ask.dominant_pole and _no_dominant_pole(*powers)) or (ask.poles_far_apart and _not_apart(*powers))
     if why:
         return None, why, []
@@ -34,20 +33,6 @@ def step_on_roots(response: Response, ask: Pooled) -> Outcome:
         # With a dominant pole too: every root from its neighbours, the bandwidth from the lowest pole alone.
         return replace(response, apart=True, single_pole=ask.dominant_pole), "", []
     return _one_pole(response, powers), "", []
-
-
-def powers_of(form: Expanded | Nested) -> Powers:
-    """The powers of s that numerator and denominator have, whatever the values."""
-    if isinstance(form, Nested):
-        above, below = (
-            [k for k in powers if keep is None or k in keep]
-            for powers, keep in zip(form.skeleton.powers, form.keep, strict=True)
-        )
-    else:
-        above, below = (
-            [k for k, c in enumerate(row) if not c.is_zero()] for row in (form.numerator, form.denominator)
-        )
-    return above, below
 
 
 def _no_dominant_pole(above: Sequence[int], below: Sequence[int]) -> str:

@@ -61,7 +61,7 @@ class GainRule:
             above, below = images_with(gain, {n: int(v) for n, v in gain.full_values(values).items()})
             return above[gain.skeleton.low], below[gain.skeleton.low]
         if isinstance(sample, Fraction):
-            # In lowest terms at this point, so that nothing common is left at s = 0.
+            # What both share whatever the values is gone, so that nothing common is left at s = 0.
             exact = gain.exact_coefficients(values)
             return tuple(Fraction(int(p[0].p), int(p[0].q)) for p in exact)  # type: ignore[return-value]
         points = max((v.size for v in values.values() if isinstance(v, np.ndarray) and v.ndim), default=1)

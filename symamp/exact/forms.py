@@ -23,6 +23,7 @@ from symamp.exact.skeleton import Skeleton, skeleton_of
 from symamp.exact.tape import Tape, term_dict
 
 Values = Mapping[str, np.ndarray | float]
+Powers = tuple[tuple[int, ...], tuple[int, ...]]
 EXPAND_LIMIT = 100_000  # product terms up to which a response is written out
 WRITTEN_LIMIT = 12_000  # terms above which what was written out helps nobody, and the graph is quicker
 _NESTED_BLOCK = 1024
@@ -44,6 +45,15 @@ class Expanded:
     def terms(self) -> int:
         """How many product terms are written out in all."""
         return sum(len(c) for c in (*self.numerator, *self.denominator))
+
+    @cached_property
+    def powers(self) -> Powers:
+        """The powers of s that numerator and denominator have, whatever the values."""
+        above, below = (
+            tuple(k for k, c in enumerate(row) if not c.is_zero())
+            for row in (self.numerator, self.denominator)
+        )
+        return above, below
 
     @cached_property
     def _tape(self) -> Tape:
@@ -114,6 +124,15 @@ class Nested:
         return skeleton_of(self)
 
     @cached_property
+    def powers(self) -> Powers:
+        """The powers of s that numerator and denominator have, whatever the values."""
+        above, below = (
+            tuple(k for k in powers if keep is None or k in keep)
+            for powers, keep in zip(self.skeleton.powers, self.keep, strict=True)
+        )
+        return above, below
+
+    @cached_property
     def ends_cancel(self) -> bool:
         """Whether the lowest or highest power of s in numerator or denominator vanishes by cancelling."""
         return ends_cancel(self.graph, self.skeleton)
@@ -151,10 +170,7 @@ class Nested:
         denominator = np.concatenate(blocks_d, axis=1)
         numerator, denominator = without_hidden(numerator, denominator, self.skeleton)
         # A coefficient that vanishes by cancelling comes from the graph as rounding noise, which would be a root.
-        above, below = (
-            frozenset(powers) if keep is None else keep
-            for powers, keep in zip(self.skeleton.powers, self.keep, strict=True)
-        )
+        above, below = self.powers
         return Coefficients(_kept(numerator, above), _kept(denominator, below), omega)
 
     def at(self, s: np.ndarray, values: Values) -> np.ndarray:
@@ -226,7 +242,7 @@ def _rational_entry(entry: Any, values: Mapping[str, Fraction]) -> fmpq_poly:
     return fmpq_poly([fmpq(p.numerator, p.denominator) for p in powers])
 
 
-def _kept(coefficients: np.ndarray, powers: frozenset[int]) -> np.ndarray:
+def _kept(coefficients: np.ndarray, powers: tuple[int, ...]) -> np.ndarray:
     """The coefficients with all powers but these made zero, and no more rows than needed."""
     rows = [k in powers for k in range(coefficients.shape[0])]
     kept = np.where(np.array(rows)[:, None], coefficients, 0.0)

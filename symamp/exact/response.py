@@ -182,7 +182,10 @@ class Response:
 
         With `apart` those of the roots' product; with a single pole too, a0 and b0 + b1·s.
         """
-        given = self.form.coefficients(values, points)
+        return self._levels(self.form.coefficients(values, points))
+
+    def _levels(self, given: Coefficients) -> Coefficients:
+        """The coefficients from which all but the roots come."""
         if not self.apart:
             return given
         numerator, denominator = without_common_s(given.numerator, given.denominator)
@@ -192,14 +195,14 @@ class Response:
 
     def figures(self, values: Values, points: int) -> Figures:
         """All quantities at `points` bias points (without `first_zero`, which `value` minds)."""
-        given = self.coefficients(values, points)
+        raw = self.form.coefficients(values, points)
+        given = self._levels(raw)
         found = Figures(given.numerator, given.denominator, self.unit, given.omega)
         if self.apart:
-            raw = self.form.coefficients(values, points)
-            zeros, poles = (_ratios(c) * raw.omega for c in without_common_s(raw.numerator, raw.denominator))
-            found.set_roots(zeros, poles)
+            above, below = without_common_s(raw.numerator, raw.denominator)
+            found.set_roots(_ratios(above) * raw.omega, _ratios(below) * raw.omega)
             if not self.single_pole:  # a_k and b_k stay those from whose ratios the roots are taken
-                found.set_coefficients(*without_common_s(raw.numerator, raw.denominator))
+                found.set_coefficients(above, below)
         return found
 
     def zero_figures(self, values: Values, points: int) -> Figures | None:
@@ -220,7 +223,7 @@ class Response:
 
     @cached_property
     def exact_coefficients(self) -> tuple[fmpq_poly, fmpq_poly]:
-        """Numerator and denominator in s at the bias point, exactly; in lowest terms at that point."""
+        """Numerator and denominator in s at the bias point, exactly."""
         return self.form.exact_coefficients(self.stage.bias)
 
     def poles(self) -> list[complex]:
@@ -239,13 +242,7 @@ class Response:
     @cached_property
     def _first_power(self) -> int:
         """The lowest power of s in the denominator, numerator and denominator sharing none."""
-        form = self.form
-        if isinstance(form, Expanded):
-            rows = (form.numerator, form.denominator)
-            above, below = ([k for k, c in enumerate(row) if not c.is_zero()] for row in rows)
-        else:
-            kept = zip(form.skeleton.powers, form.keep, strict=True)
-            above, below = ([k for k in powers if keep is None or k in keep] for powers, keep in kept)
+        above, below = self.form.powers
         return below[0] - min(above[0], below[0]) if above and below else 0
 
     def quantity(self, name: str) -> QuantityValue:

@@ -225,11 +225,12 @@ def _table(
 
 def _new_root_words(name: str, table: ErrorTable) -> list[str]:
     """Roots that the assumptions bring and the exact response does not have, where no account names them."""
-    words = []
+    words: list[str] = []
+    approximate = table.approximations[table.plan.masks[-1]].response
     for letter, word in (("p", "pole"), ("z", "zero")):
-        if any(quantity.name == letter for quantity in table.quantities):
+        if approximate is None or any(quantity.name == letter for quantity in table.quantities):
             continue  # the accounts of such roots name new ones
-        for root in _left_over(table, Quantity(letter, index=1))[1]:
+        for root in lost_and_new(table.exact, approximate, letter)[1]:
             words.append(f"{name}: under all assumptions a new {word} appears at {show_value(root.hz, 'Hz')}")
     return words
 
