@@ -18,6 +18,8 @@ _HOME = {
     "ApproximateResponse": "symamp.api",
     "Stage": "symamp.api",
     "StageBuilder": "symamp.api",
+    "StageCheck": "symamp.api",
+    "StageFrontier": "symamp.api",
     "StageLedger": "symamp.api",
     "StageResponse": "symamp.api",
     "load": "symamp.api",

@@ -21,11 +21,22 @@ from symamp.errors import StageError
 from symamp.exact.derive import derive
 from symamp.exact.response import QuantityValue, Response
 from symamp.exact.time_constants import TimeConstant, time_constants
+from symamp.judge.check import make_check
+from symamp.judge.claim import Claim
+from symamp.judge.claim_reading import WITHIN, claim_of
+from symamp.judge.frontier import ClaimFrontier, make_frontiers
 from symamp.judge.ledger import POINTS, SEED, Account, Ledger, make_ledger
+from symamp.judge.verdict import Check, Judged
+from symamp.show.check_html import check_html, frontier_html
+from symamp.show.check_text import check_page
+from symamp.show.claims_json import check_json, frontier_json
+from symamp.show.frontier_text import frontier_page
 from symamp.show.html import ledger_html
 from symamp.show.json_parts import ledger_json
 from symamp.show.ledger_text import ledger_page
+from symamp.show.note_files import write_note
 from symamp.show.page import Page
+from symamp.show.run_note import document_of
 from symamp.values import read_frequency
 
 
@@ -83,6 +94,33 @@ class Stage:
             self.data, quantities=wanted, assumptions=self.assumptions, points=points, seed=seed
         )
         return StageLedger(made)
+
+    def check(
+        self,
+        claim: str | Sequence[str] = (),
+        *,
+        within: str = WITHIN,
+        points: int = POINTS,
+        seed: int = SEED,
+    ) -> StageCheck:
+        """A verdict on each claim of the stage, or on those given, such as "gain.dc = -gm1*ro1" (see `make_check`)."""
+        found = make_check(self.data, claims=self._claims(claim, within), points=points, seed=seed)
+        return StageCheck(found)
+
+    def frontier(self, claim: str | Sequence[str] = (), *, within: str = WITHIN) -> StageFrontier:
+        """Where each claim stops holding: the ratios at which its error reaches what it is allowed."""
+        return StageFrontier(self.data, make_frontiers(self.data, self._claims(claim, within)))
+
+    def _claims(self, claim: str | Sequence[str], within: str) -> tuple[Claim, ...] | None:
+        texts = [claim] if isinstance(claim, str) else list(claim)
+        return tuple(claim_of(self.data, text, within) for text in texts) if texts else None
+
+    def note(self, path: str | os.PathLike[str], *, points: int = POINTS, seed: int = SEED) -> Path:
+        """Write a design note by the ending of `path`: .tex, .html or .md; the path.
+
+        Raises InputError for another ending and where nothing can be written.
+        """
+        return write_note(document_of(self.data, points=points, seed=seed), Path(path))[0]
 
     def save(self, path: str | os.PathLike[str]) -> Path:
         """Save as a stage file that reads back to the same stage."""
@@ -219,6 +257,81 @@ class StageLedger:
 
     def _repr_html_(self) -> str:
         return ledger_html(self.plain)
+
+
+class StageCheck:
+    """Verdicts: `check["gain.dc"]` is the first about that quantity; prints as in the terminal, and in a notebook."""
+
+    def __init__(self, plain: Check) -> None:
+        self.plain = plain
+
+    @property
+    def claims(self) -> tuple[Judged, ...]:
+        """The verdicts, one a claim, in listed order."""
+        return self.plain.claims
+
+    @property
+    def all_hold(self) -> bool:
+        """Whether every claim holds over the whole span."""
+        return self.plain.all_hold
+
+    def __getitem__(self, about: str) -> Judged:
+        for judged in self.claims:
+            if judged.claim.about == about:
+                return judged
+        known = ", ".join(judged.claim.about for judged in self.claims)
+        raise KeyError(f"{about}: these claims are about {known}")
+
+    def __iter__(self) -> Iterator[Judged]:
+        return iter(self.claims)
+
+    def __len__(self) -> int:
+        return len(self.claims)
+
+    def json(self) -> dict[str, Any]:
+        """The object that `symamp check --json` prints."""
+        return check_json(self.plain)
+
+    def __str__(self) -> str:
+        page = Page()
+        check_page(page, self.plain)
+        return page.text()
+
+    def _repr_html_(self) -> str:
+        return check_html(self.plain)
+
+
+class StageFrontier:
+    """Frontiers of claims, one a claim in listed order; prints as in the terminal, and in a notebook."""
+
+    def __init__(self, stage: StageData, plain: tuple[ClaimFrontier, ...]) -> None:
+        self._stage = stage
+        self.claims = plain
+
+    def __getitem__(self, about: str) -> ClaimFrontier:
+        for each in self.claims:
+            if each.claim.about == about:
+                return each
+        known = ", ".join(each.claim.about for each in self.claims)
+        raise KeyError(f"{about}: these claims are about {known}")
+
+    def __iter__(self) -> Iterator[ClaimFrontier]:
+        return iter(self.claims)
+
+    def __len__(self) -> int:
+        return len(self.claims)
+
+    def json(self) -> dict[str, Any]:
+        """The object that `symamp frontier --json` prints."""
+        return frontier_json(self._stage, self.claims)
+
+    def __str__(self) -> str:
+        page = Page()
+        frontier_page(page, self._stage, self.claims)
+        return page.text()
+
+    def _repr_html_(self) -> str:
+        return frontier_html(self._stage.title, self.claims)
 
 
 class StageBuilder(PlainBuilder):

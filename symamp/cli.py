@@ -19,8 +19,32 @@ import click
 from symamp import __version__
 from symamp.errors import SymampError
 
+_CLAIMS = "symamp.show.run_claims"
 _CONTROL = re.compile(r"[\x00-\x09\x0b-\x1f\x7f-\x9f]")  # all but the line's end: a terminal would obey them
 _FILE = click.argument("file", metavar="FILE")
+_CLAIM = click.option(
+    "--claim",
+    "claims",
+    metavar="RESPONSE.QUANTITY=FORMULA",
+    multiple=True,
+    help="Judge this formula in place of the stage file's claims (repeatable).",
+)
+_WITHIN = click.option(
+    "--within", metavar="ERROR", help="The error that --claim is allowed; 5% unless given."
+)
+_ABOUT = click.option(
+    "--about", metavar="RESPONSE.QUANTITY", multiple=True, help="Only the claims about this quantity."
+)
+_POINTS = click.option(
+    "--points",
+    type=click.IntRange(0, 100_000_000),
+    default=4096,
+    show_default=True,
+    help="Points sampled from a box.",
+)
+_SEED = click.option(
+    "--seed", type=click.IntRange(0), default=1, show_default=True, help="Seed of the sampling."
+)
 _JSON = click.option("--json", "as_json", is_flag=True, help="Print one JSON object and nothing else.")
 
 
@@ -46,6 +70,7 @@ def cli() -> None:
 @click.option(
     "--second-opinion", is_flag=True, help="Derive it again by lcapy, with random values, and compare."
 )
+@click.option("--latex", "as_latex", is_flag=True, help="Print the expressions alone, as LaTeX to be pasted.")
 @_JSON
 def derive(
     file: str,
@@ -54,10 +79,11 @@ def derive(
     responses: tuple[str, ...],
     resistances: bool,
     second_opinion: bool,
+    as_latex: bool,
     as_json: bool,
 ) -> None:
     """Exact expressions of every response, their quantities and time constants."""
-    _run("derive", file, assume, frequencies, responses, resistances, second_opinion, as_json)
+    _run("derive", file, assume, frequencies, responses, resistances, second_opinion, as_latex, as_json)
 
 
 @cli.command(short_help="The error that each assumption adds.")
@@ -69,18 +95,76 @@ def derive(
     multiple=True,
     help="Which quantity, such as gain.p1 (repeatable); without any: dc, poles, zeros, bandwidth, unity gain.",
 )
-@click.option(
-    "--points",
-    type=click.IntRange(0, 100_000_000),
-    default=4096,
-    show_default=True,
-    help="Points sampled from a box.",
-)
-@click.option("--seed", type=click.IntRange(0), default=1, show_default=True, help="Seed of the sampling.")
+@_POINTS
+@_SEED
 @_JSON
 def ledger(file: str, quantities: tuple[str, ...], points: int, seed: int, as_json: bool) -> None:
     """The error that each assumption adds, at the bias point and over the span."""
     _run("ledger", file, quantities, points, seed, as_json)
+
+
+@cli.command(short_help="A verdict on each claim, with its tacit conditions.")
+@_FILE
+@_CLAIM
+@_WITHIN
+@_ABOUT
+@_POINTS
+@_SEED
+@_JSON
+def check(
+    file: str,
+    claims: tuple[str, ...],
+    within: str | None,
+    about: tuple[str, ...],
+    points: int,
+    seed: int,
+    as_json: bool,
+) -> None:
+    """A verdict on each claim: its error, what it silently takes to be small, and what it follows from.
+
+    The exit code is 1 where a claim does not hold all over the span.
+    """
+    _run("check", file, claims, within, about, points, seed, as_json, module=_CLAIMS)
+
+
+@cli.command(short_help="Where a claim stops holding.")
+@_FILE
+@_CLAIM
+@_WITHIN
+@_ABOUT
+@click.option(
+    "--map", "over", metavar="X,Y", help="Draw the error over two symbols, with the frontier in it."
+)
+@click.option("-o", "--output", metavar="FILE", help="Where the map goes: .svg, .png or .pdf by its ending.")
+@_JSON
+def frontier(
+    file: str,
+    claims: tuple[str, ...],
+    within: str | None,
+    about: tuple[str, ...],
+    over: str | None,
+    output: str | None,
+    as_json: bool,
+) -> None:
+    """For each tacit condition of a claim the ratio at which the error reaches what it is allowed."""
+    _run("frontier", file, claims, within, about, over, output, as_json, module=_CLAIMS)
+
+
+@cli.command(short_help="A design note in LaTeX, HTML or Markdown.")
+@_FILE
+@click.option(
+    "-o",
+    "--output",
+    metavar="FILE",
+    required=True,
+    help="Where the note goes: .tex, .html or .md by its ending.",
+)
+@_POINTS
+@_SEED
+@_JSON
+def note(file: str, output: str, points: int, seed: int, as_json: bool) -> None:
+    """The stage, its exact and simplified expressions, the errors, the verdicts and plots, ready to hand in."""
+    _run("note", file, output, points, seed, as_json, module="symamp.show.run_note")
 
 
 @cli.command(short_help="The JSON Schema of stage files.")
@@ -92,10 +176,10 @@ def start(schema: bool) -> None:
     _run("print_schema")
 
 
-def _run(command: str, *arguments: Any) -> None:
+def _run(command: str, *arguments: Any, module: str = "symamp.show.run") -> None:
     """Bring the command in and run it; what the user got wrong is said in one message, exit 2."""
     try:
-        code = getattr(_brought_in("symamp.show.run"), command)(*arguments)
+        code = getattr(_brought_in(module), command)(*arguments)
         sys.stdout.flush()
     except SymampError as error:
         click.echo(_CONTROL.sub("�", str(error)), err=True)

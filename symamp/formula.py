@@ -7,8 +7,7 @@ Text that a user wrote goes nowhere but here: the tree is all that the rest of t
 
 from __future__ import annotations
 
-import re
-from collections.abc import Iterator
+from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 
@@ -22,6 +21,7 @@ from symamp.formula_algebras import (
     evaluate,
     write,
 )
+from symamp.formula_scan import Token, error_at, scan
 from symamp.formula_tree import (
     Algebra,
     Binary,
@@ -38,7 +38,7 @@ from symamp.formula_tree import (
     operands,
     walk,
 )
-from symamp.values import quoted, read_value, split_unit
+from symamp.values import quoted
 
 __all__ = [
     "FUNCTIONS",
@@ -60,6 +60,7 @@ __all__ = [
     "fold",
     "names",
     "parse",
+    "parse_tokens",
     "walk",
     "write",
 ]
@@ -76,33 +77,15 @@ def parse(text: str) -> Node:
         raise ReadError(f"{quoted(text)} is no formula", 'write it as text, such as "-gm1*(ro1 || RL)"')
     if len(text) > LONGEST:
         raise ReadError(f"a formula of {len(text)} characters", f"at most {LONGEST} can be read")
-    return _Parser(text).whole()
+    return parse_tokens(text, list(scan(text)))
 
 
-def error_at(text: str, column: int, problem: str, remedy: str = "") -> ReadError:
-    """An error about a place in a formula (column from 1), with the text and a caret below the message."""
-    start = max(column - 40, 0) if len(text) > 76 else 0
-    shown = "".join(c if c.isprintable() else " " for c in text[start : start + 76])
-    caret = f"\n    {shown}\n    {' ' * (column - 1 - start)}^"
-    return ReadError(problem, remedy + caret) if remedy else ReadError(problem + caret)
+def parse_tokens(text: str, tokens: Sequence[Token]) -> Node:
+    """The tree of what has been scanned already; errors show `text`, to which the tokens' columns belong."""
+    return _Parser(text, tokens).whole()
 
 
-_TOKEN = re.compile(
-    r"(?P<space>[ \t\r\n\u00a0]+)"
-    r"|(?P<number>(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?)"
-    r"(?:[ \u00a0]?(?P<unit>[^\W\d_][\w\u2126]*))?"
-    r"|(?P<name>[^\W\d][\w\u2126]*)"
-    r"|(?P<op>\*\*|\|\||[-+*/^()])"
-)
 _BINDING = {"+": 1, "-": 1, "*": 2, "/": 2, "||": 3}
-
-
-@dataclass(frozen=True)
-class _Token:
-    what: str  # number, name, op or end
-    text: str
-    column: int
-    number: Number | None = None
 
 
 @dataclass
@@ -110,13 +93,13 @@ class _Level:
     """What stands in one pair of brackets: where `||` was met, and where any other operator was."""
 
     parallel: int = 0
-    other: int = 0
+    other: str = ""
 
 
 class _Parser:
-    def __init__(self, text: str) -> None:
+    def __init__(self, text: str, tokens: Sequence[Token]) -> None:
         self.text = text
-        self.tokens = list(_scan(text))
+        self.tokens = tokens
         self.position = 0
         self.depth = 0
         self.level = _Level()
@@ -130,10 +113,10 @@ class _Parser:
         return node
 
     @property
-    def next(self) -> _Token:
+    def next(self) -> Token:
         return self.tokens[self.position]
 
-    def take(self) -> _Token:
+    def take(self) -> Token:
         token = self.next
         self.position += 1
         return token
@@ -154,14 +137,14 @@ class _Parser:
             node = Parallel(node, right) if token.text == "||" else Binary(token.text, node, right)
         return node
 
-    def mind_mixing(self, token: _Token) -> None:
+    def mind_mixing(self, token: Token) -> None:
         """`a*b || c` reads two ways, so `||` shares its brackets with no other operator."""
         if token.text == "||":
             self.level.parallel = self.level.parallel or token.column
         else:
-            self.level.other = self.level.other or token.column
+            self.level.other = self.level.other or token.text
         if self.level.parallel and self.level.other:
-            sign = token.text if token.text != "||" else self.text[self.level.other - 1]
+            sign = token.text if token.text != "||" else self.level.other
             raise error_at(
                 self.text,
                 token.column,
@@ -271,47 +254,6 @@ class _Parser:
         return error_at(
             self.text, token.column, f"{token.text} cannot stand here", "a name or a number is missing"
         )
-
-
-def _scan(text: str) -> Iterator[_Token]:
-    position = 0
-    while position < len(text):
-        match = _TOKEN.match(text, position)
-        column = position + 1
-        if match is None:
-            raise error_at(text, column, f"{quoted(text[position])} has no meaning in a formula", _MEANT)
-        position = match.end()
-        if match["number"]:
-            yield _number(text, match, column)
-        elif match["name"]:
-            if not match["name"].isascii():
-                raise error_at(
-                    text, column, f"{quoted(match['name'])} is no name", "names are of ASCII letters"
-                )
-            yield _Token("name", match["name"], column)
-        elif match["op"]:
-            yield _Token("op", match["op"], column)
-    yield _Token("end", "", len(text) + 1)
-
-
-_MEANT = "the signs are + - * / ^ ** ( ) and ||"
-
-
-def _number(text: str, match: re.Match[str], column: int) -> _Token:
-    word = match["unit"] or ""
-    found = split_unit(word)
-    if found is None:
-        raise error_at(
-            text,
-            match.start("unit") + 1,
-            f"{quoted(word)} after a number is no SI prefix and unit",
-            "a product needs *; a value reads like 5 kohm or 3.3 pF",
-        )
-    try:
-        value = read_value(match["number"] + word, found[1])
-    except ReadError as error:
-        raise error_at(text, column, error.problem, error.remedy) from None
-    return _Token("number", match[0], column, Number(value, found[1]))
 
 
 def _growth(node: Node) -> Fraction:

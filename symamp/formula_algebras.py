@@ -94,6 +94,8 @@ _OF_UNIT = {
     "rad/s": _dimension(0, -1),
     "V": _dimension(0, 0, 1),
     "A": _dimension(1, 0, 1),
+    "dB": _dimension(0),
+    "deg": _dimension(0),
 }
 
 _Sized = tuple[Dimension, Node]  # with the formula so far, for messages
@@ -246,6 +248,9 @@ class _Writer:
     """Text in the grammar of formulas. Firmness: 1 a sum, 2 a product or sign, 5 a power, 6 an atom."""
 
     def number(self, value: Fraction, unit: str) -> _Written:
+        if unit in ("dB", "deg", "rad/s"):  # units that are written without a prefix
+            text, firmness = self.number(value, "")
+            return f"{text} {unit}", firmness
         try:
             return write_value(value, unit), 6 if value >= 0 else 2
         except ValueError:

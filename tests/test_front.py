@@ -36,7 +36,7 @@ def commands() -> dict[str, click.Command]:
 
 
 def options(command: click.Command) -> set[str]:
-    return {o for p in command.params if isinstance(p, click.Option) for o in p.opts}
+    return {o for p in command.params if isinstance(p, click.Option) for o in p.opts if o.startswith("--")}
 
 
 def test_public_names_are_those_of_the_readme() -> None:

@@ -14,17 +14,35 @@ ROOT = Path(__file__).resolve().parent.parent
 PACKAGE = ROOT / "symamp"
 
 # Lowest first; a module imports from its own layer and from those before it.
-GROUND_FLOOR = ("errors", "values", "formula_tree", "formula_algebras", "formula")
+GROUND_FLOOR = (
+    "errors",
+    "values",
+    "formula_tree",
+    "formula_algebras",
+    "formula_arrays",
+    "formula_scan",
+    "formula_latex",
+    "formula",
+)
 ROOMS = ("circuit", "exact", "assumptions", "span", "judge", "show", "testing")
 ROOF = ("api", "cli", "__init__", "__main__")
 
 # What may be brought in inside a function: libraries that cost a tenth of a second and more, and the modules of
 # ours that are nothing but a door to one of them.
-HEAVY = ("sympy", "scipy", "lcapy", "tree_sitter", "tree_sitter_toml")
+HEAVY = (
+    "sympy",
+    "scipy",
+    "matplotlib",
+    "contourpy",
+    "lcapy",
+    "tree_sitter",
+    "tree_sitter_toml",
+    "latex2mathml",
+)
 DOORS = ("symamp.exact.sympy_form",)
 
 # Names are brought in by text at the front alone, where start-up time is felt.
-BY_TEXT = ("symamp", "symamp.cli")
+BY_TEXT = ("symamp", "symamp.cli", "symamp.testing")
 
 EVALUATORS = ("eval", "exec", "sympify", "parse_expr", "lambdify", "__import__")
 LONGEST_FILE = 400

@@ -21,7 +21,7 @@ def test_the_page_says_what_comes_of_it(tmp_path: Path) -> None:
 
 
 def test_examples_are_counted() -> None:
-    assert counted(PAGE) == {"console": 5, "pycon": 20}
+    assert counted(PAGE) == {"console": 7, "pycon": 22}
 
 
 def test_the_worked_example_is_the_recipe(tmp_path: Path) -> None:

@@ -15,6 +15,10 @@ RECIPES = ROOT / "recipes"
 COUNTS = {
     "bias-resistor-and-coupling-capacitor": {"console": 4, "pycon": 0},
     "cascode-neglects": {"console": 4, "pycon": 0},
+    "does-my-formula-hold": {"console": 3, "pycon": 0},
+    "keep-a-derivation-true": {"console": 5, "pycon": 0},
+    "latex-for-a-design-note": {"console": 3, "pycon": 0},
+    "what-my-formula-assumes": {"console": 3, "pycon": 0},
 }
 
 
@@ -41,7 +45,7 @@ def test_the_page_shows_the_stage_file_itself(name: str) -> None:
 @pytest.mark.parametrize("path", sorted(RECIPES.rglob("*.stage.toml")), ids=lambda path: path.name)
 def test_stage_files_read_without_a_warning(path: Path) -> None:
     stage = symamp.load(path)
-    assert stage.assumptions
+    assert stage.assumptions or stage.data.claims
     assert stage.warnings == ()
 
 

@@ -7,7 +7,7 @@ from math import pi
 from typing import Protocol
 
 import numpy as np
-from flint import Ordering, fmpz_mpoly, fmpz_mpoly_ctx
+from flint import fmpz_mpoly
 
 from symamp.circuit.stage import Stage
 from symamp.exact.asked_quantity import Quantity
@@ -17,6 +17,7 @@ from symamp.exact.polys import (
     into_ring,
     lowest_terms,
     ring_of,
+    with_pi,
 )
 from symamp.exact.shape import QuadraticRoot, Shape, shape_of
 from symamp.exact.tape import polynomial_value
@@ -55,9 +56,8 @@ def formula_of(response: Formed, quantity: Quantity) -> Formula | None:
         return shape_of(*ratio, weights=response.bias_values or None)
     if quantity.name in ("p", "z") and isinstance(response.form, Expanded):
         return _quadratic_root(response, quantity)
-    if quantity.name in ("bandwidth", "gain_bandwidth"):
-        return _one_pole_band(response, quantity)
-    return None
+    band = band_ratio(response, quantity)
+    return None if band is None else _with_pi_shape(response, band)
 
 
 def _face_formula(response: Formed, quantity: Quantity) -> Formula | None:
@@ -77,14 +77,19 @@ def _face_formula(response: Formed, quantity: Quantity) -> Formula | None:
     if not sign or response.negative_ok & held(above, below):
         return None
     if quantity.face == "hz":
-        return _over_two_pi(response, above * sign, below)
+        return _with_pi_shape(response, _over_two_pi(response, above * sign, below))
     return shape_of(above * sign, below, weights=response.bias_values or None)
 
 
-def _one_pole_band(response: Formed, quantity: Quantity) -> Formula | None:
-    """b0/(2π·b1), or |a0|/(2π·b1), of a response with one pole and no zero whose coefficients have one sign each."""
+def band_ratio(response: Formed, quantity: Quantity) -> PolyRatio | None:
+    """b0/(2π·b1), or |a0|/(2π·b1), of a response with one pole and no zero whose coefficients have one sign each.
+
+    The ring has pi first. None for any other response, or quantity than bandwidth and gain-bandwidth.
+    """
     form = _levels(response)
-    if form is None or len(form.denominator) != 2 or len(form.numerator) != 1:
+    if quantity.name not in ("bandwidth", "gain_bandwidth") or form is None:
+        return None
+    if len(form.denominator) != 2 or len(form.numerator) != 1:
         return None
     b0, b1 = form.denominator
     above = form.numerator[0] if quantity.name == "gain_bandwidth" else b0
@@ -93,14 +98,16 @@ def _one_pole_band(response: Formed, quantity: Quantity) -> Formula | None:
     return _over_two_pi(response, above * _sign(above), b1)
 
 
-def _over_two_pi(response: Formed, above: fmpz_mpoly, below: fmpz_mpoly) -> Formula:
-    """above/(2π·below)."""
-    names = ring_of(response.stage.symbols, held(above, below)).names()
-    context = fmpz_mpoly_ctx.get(("pi", *names), Ordering.lex)
+def _over_two_pi(response: Formed, above: fmpz_mpoly, below: fmpz_mpoly) -> PolyRatio:
+    """above/(2π·below), in lowest terms."""
+    context = with_pi(ring_of(response.stage.symbols, held(above, below)))
     above, below = (into_ring(p, context) for p in (above, 2 * below))
-    below *= context.gens()[0]
+    return lowest_terms(above, below * context.gens()[0])
+
+
+def _with_pi_shape(response: Formed, ratio: PolyRatio) -> Shape:
     weights = {**response.bias_values, "pi": pi} if response.bias_values else None
-    return shape_of(*lowest_terms(above, below), weights=weights)
+    return shape_of(*ratio, weights=weights)
 
 
 def _sign(polynomial: fmpz_mpoly) -> int:
@@ -161,6 +168,17 @@ def _root_form(response: Formed, quantity: Quantity) -> Expanded:
 def _root_coefficients(response: Formed, quantity: Quantity) -> tuple[fmpz_mpoly, ...]:
     form = _root_form(response, quantity)
     return form.denominator if quantity.name == "p" else form.numerator
+
+
+def root_factor(response: Formed, quantity: Quantity) -> tuple[fmpz_mpoly, ...] | None:
+    """The irreducible factor in s that has a pole or zero, coefficients ascending; None where none is written out."""
+    if not isinstance(response.form, Expanded):
+        return None
+    coefficients = _root_coefficients(response, quantity)
+    if len(coefficients) <= (quantity.index or 1):
+        return None
+    found = _factor_of_root(response, quantity, coefficients)
+    return None if found is None else found[0]
 
 
 def _rational_root(response: Formed, quantity: Quantity) -> PolyRatio | None:

@@ -26,7 +26,8 @@ class MinorGraph:
     """Minors as nodes, in an order in which each comes after those it is made of; node 0 is the number 1.
 
     `edges[v]` lists (child, entry, sign): the minor v is the sum of sign · entries[entry] · child. `levels`
-    holds, for each row count, the first node of that level; `entry_rows` the matrix row of each entry.
+    holds, for each row count, the first node of that level; `entry_rows` and `entry_columns` the matrix row and
+    column of each entry. Rows stand in the order in which `entry_rows` first names them, and that settles signs.
     `numerator` and `denominator` are sums of (integer, node).
     """
 
@@ -36,6 +37,7 @@ class MinorGraph:
     levels: tuple[int, ...]
     numerator: tuple[tuple[int, int], ...]
     denominator: tuple[tuple[int, int], ...]
+    entry_columns: tuple[int, ...] = ()
 
     @property
     def minors(self) -> int:
@@ -215,6 +217,7 @@ def _number(
     """Number the minors from below, leaving out those that are zero by structure."""
     entries: list[Entry] = []
     entry_rows: list[int] = []
+    entry_columns: list[int] = []
     all_edges: list[tuple[tuple[int, int, int], ...]] = [()]
     starts = [0]
     known = {0: 0} if 0 in levels[0] else {}
@@ -222,6 +225,7 @@ def _number(
         entry_of = {column: len(entries) + i for i, column in enumerate(rows[k - 1])}
         entries.extend(rows[k - 1].values())
         entry_rows.extend([order[k - 1]] * len(rows[k - 1]))
+        entry_columns.extend(rows[k - 1])
         starts.append(len(all_edges))
         numbered: dict[int, int] = {}
         for mask, edges in levels[k].items():
@@ -237,4 +241,5 @@ def _number(
         tuple(starts),
         tuple((factor, known[mask]) for factor, mask in numerator if mask in known),
         tuple((factor, known[mask]) for factor, mask in denominator if mask in known),
+        tuple(entry_columns),
     )

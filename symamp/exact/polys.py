@@ -44,6 +44,11 @@ def ring_of(symbols: Mapping[str, Symbol], names: Iterable[str], extra: Sequence
     return fmpz_mpoly_ctx.get((*ordered, *extra, S), Ordering.lex)
 
 
+def with_pi(context: fmpz_mpoly_ctx) -> fmpz_mpoly_ctx:
+    """The ring with pi before all else."""
+    return fmpz_mpoly_ctx.get(("pi", *context.names()), Ordering.lex)
+
+
 def into_ring(polynomial: fmpz_mpoly, context: fmpz_mpoly_ctx) -> fmpz_mpoly:
     """The same polynomial in a ring that has all the generators it holds. KeyError where it lacks one."""
     own = polynomial.context()
@@ -148,10 +153,12 @@ def inverted(
     return flip(numerator), flip(denominator)
 
 
-def lowest_terms(numerator: fmpz_mpoly, denominator: fmpz_mpoly) -> tuple[fmpz_mpoly, fmpz_mpoly]:
+def lowest_terms(
+    numerator: fmpz_mpoly, denominator: fmpz_mpoly, *, apart: bool = False
+) -> tuple[fmpz_mpoly, fmpz_mpoly]:
     """The same ratio with nothing common left, and most terms of the denominator positive.
 
-    ZeroDivisionError where the denominator is zero.
+    `apart` says that both are known to share no more than a monomial and an integer. ZeroDivisionError where the denominator is zero.
     """
     context = denominator.context()
     if denominator.is_zero():
@@ -162,7 +169,8 @@ def lowest_terms(numerator: fmpz_mpoly, denominator: fmpz_mpoly) -> tuple[fmpz_m
     if any(shared):
         monomial = context.from_dict({tuple(shared): 1})
         numerator, denominator = numerator / monomial, denominator / monomial
-    if len(numerator) + len(denominator) <= _GCD_AT_ONCE or _may_share(numerator, denominator):
+    small = len(numerator) + len(denominator) <= _GCD_AT_ONCE
+    if not apart and (small or _may_share(numerator, denominator)):
         common = numerator.gcd(denominator)
         numerator, denominator = numerator / common, denominator / common
     else:

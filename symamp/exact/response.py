@@ -134,7 +134,7 @@ class Response:
         )
         shape = arrays[0].shape
         s = 2j * np.pi * arrays[0].ravel()
-        values = self._replaced(dict(zip(given, (array.ravel() for array in arrays[1:]), strict=True)))
+        values = self.with_values(dict(zip(given, (array.ravel() for array in arrays[1:]), strict=True)))
         lacking = [name for name in self.missing if name not in values]
         if lacking:
             raise StageError(f"{', '.join(lacking)} has no value", "give it in [bias], or pass bias={...}")
@@ -142,7 +142,7 @@ class Response:
             result = self._at(s, values).reshape(shape)
         return complex(result) if shape == () else result
 
-    def _replaced(self, given: Mapping[str, np.ndarray]) -> dict[str, Any]:
+    def with_values(self, given: Mapping[str, np.ndarray]) -> dict[str, Any]:
         """The bias values with those given in their place, symbols before the aliases that may need them."""
         known = {
             name: powers for name, powers in self.stage.aliases.items() if name not in self.stage.symbols

@@ -43,6 +43,19 @@ def polynomial_value(polynomial: fmpz_mpoly, values: Mapping[str, float]) -> flo
     return sum((term_value(m, c, values) for m, c in term_dict(polynomial).items()), start=0.0)
 
 
+def largest_term(polynomial: fmpz_mpoly, values: Mapping[str, float]) -> fmpz_mpoly:
+    """The term that is largest in magnitude at a bias point."""
+    context = polynomial.context()
+    names = context.names()
+    powers, coefficient = max(
+        polynomial.terms(),
+        key=lambda term: abs(
+            term_value(tuple((names[i], int(e)) for i, e in enumerate(term[0]) if e), int(term[1]), values)
+        ),
+    )
+    return context.from_dict({powers: coefficient})
+
+
 class Tape:
     """Compiled polynomials. `tape(values)` gives one float64 array of shape (P,) for each of them."""
 

@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
-from symamp.exact.latex_names import latex_name
+from symamp.circuit.latex_names import latex_name
 from symamp.exact.terms import Factor, Product, Root, Term
 
 

@@ -20,7 +20,9 @@ from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.response import Response
 from symamp.judge.error_formula import ErrorFormula, error_formula
 from symamp.judge.errors_at import ErrorTable, Progress
+from symamp.judge.ledger_proofs import with_proofs
 from symamp.judge.lost_roots import LostRoot, lost_and_new
+from symamp.judge.proving import Prover
 from symamp.judge.sets import FIGURES, names_of
 from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
 from symamp.values import show_value
@@ -113,12 +115,14 @@ def make_ledger(
     assumptions: Sequence[Assumption] | None = None,
     points: int = POINTS,
     seed: int = SEED,
+    prove: bool = True,
     progress: Progress | None = None,
 ) -> Ledger:
     """The ledger of a stage: all its assumptions, or those given.
 
     `quantities` such as "gain.p1"; without any, those of `default_quantities` of every response. `points` Sobol
-    points are drawn from a box with that seed. Raises StageError where a bias value is missing or a name unknown.
+    points are drawn from a box with that seed; with `prove` errors are then proved where a proof ends within its
+    budget. Raises StageError where a bias value is missing or a name unknown.
     """
     made = tuple(read_assumptions(stage) if assumptions is None else assumptions)
     if not made:
@@ -132,6 +136,9 @@ def make_ledger(
     notes = _Notes(list(stage.warnings), list(stage.remarks))
     tables = {name: _table(stage, name, made, wanted, notes, progress) for name, wanted in asked.items()}
     swept = span_errors(stage, list(tables.values()), points, seed, progress)
+    prover = Prover.of(stage) if prove else None
+    if swept is not None and prover is not None:
+        swept = with_proofs(swept, list(tables.values()), prover)
     accounts: list[Account] = []
     for name, table in tables.items():
         accounts.extend(_accounts(name, table, swept))

@@ -31,6 +31,8 @@ class SpanFigure:
 
     `where_*` is {symbol: value} of the symbols that the span sets, or {"row": n} counted from 1. With `modulus`
     the values are those of the modulus. `points` were looked at, and at `missing` of them it has no value.
+    `proved` says that no point of the span lies outside, and `method` how; a sampled figure is never proved.
+    `bounds` are the bounds that a proof reached, also where it did not finish: no point lies outside them.
     """
 
     least: float
@@ -40,6 +42,9 @@ class SpanFigure:
     modulus: bool
     points: int
     missing: int = 0
+    proved: bool = False
+    method: str = ""
+    bounds: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True)
@@ -121,14 +126,16 @@ class _Sweep:
         for key, extremes in self.extremes.items():
             modulus = extremes.any_complex
             found[key] = tuple(
-                _figure(extremes.result(row, modulus), extremes, row, where) for row in range(extremes.rows)
+                span_figure(extremes.result(row, modulus), extremes, row, where)
+                for row in range(extremes.rows)
             )
         return found
 
 
-def _figure(
+def span_figure(
     extreme: Extreme | None, among: Extremes, row: int, where: Callable[[np.ndarray], Where]
 ) -> SpanFigure | None:
+    """An extreme in its final form; None where there is none."""
     if extreme is None:
         return None
     return SpanFigure(
@@ -165,13 +172,17 @@ def _by_sampling(
     compass_search(list(sweep.extremes.values()), look.around, box.dimensions)
     look.shares_at_the_worst()
 
+    return SpanErrors(sweep.figures(where_in_box(box)), look.done, seed, box.method)
+
+
+def where_in_box(box: Box) -> Callable[[np.ndarray], Where]:
+    """What gives a point of the box as {symbol: value} of the symbols that the span sets."""
+
     def where(u: np.ndarray) -> Where:
         values = box.values(u.reshape(-1, 1))
         return {name: float(np.ravel(values[name])[0]) for name in box.varied}
 
-    corners = "corners" if box.all_corners else "a draw of corners"
-    method = f"sampled: scrambled Sobol points, {corners}, the bias point, and a local search from the worst"
-    return SpanErrors(sweep.figures(where), look.done, seed, method)
+    return where
 
 
 class _Look:

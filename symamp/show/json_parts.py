@@ -270,16 +270,19 @@ def _share_json(share: Share, ledger: Ledger) -> dict[str, Any]:
 
 
 def span_json(figure: SpanFigure, ledger: Ledger) -> dict[str, Any]:
-    """A figure over the span; what is sampled is never proved."""
+    """A figure over the span; what is sampled is never proved. `bounds` are those that a proof reached."""
     fewer = figure.points < ledger.points
     result: dict[str, Any] = {
         "min": figure.least,
         "max": figure.greatest,
         "where_min": dict(figure.where_least),
         "where_max": dict(figure.where_greatest),
-        "proved": False,
-        "method": f"{ledger.method}; at {figure.points} of the points" if fewer else ledger.method,
+        "proved": figure.proved,
+        "method": figure.method
+        or (f"{ledger.method}; at {figure.points} of the points" if fewer else ledger.method),
     }
+    if figure.bounds is not None:
+        result["bounds"] = list(figure.bounds)
     if figure.missing:
         result["missing"] = figure.missing
     return result

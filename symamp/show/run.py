@@ -2,22 +2,18 @@
 
 from __future__ import annotations
 
-import json
 import sys
-import time
-from collections.abc import Iterator, Mapping, Sequence
-from contextlib import contextmanager
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
 from rich.console import Console
-from rich.progress import BarColumn, Progress, TextColumn, TimeRemainingColumn
 
 from symamp.assumptions.apply import Approximation, Approximator
 from symamp.assumptions.read import Assumption, chosen, read_assumptions
 from symamp.circuit.schema import stage_schema
 from symamp.circuit.stage import Stage
-from symamp.circuit.stagefile import locate, read_stage
+from symamp.circuit.stagefile import read_stage
 from symamp.errors import InputError, StageError
 from symamp.exact.derive import derive as derive_response
 from symamp.exact.opinion import Opinion, second_opinion
@@ -25,13 +21,13 @@ from symamp.exact.resistive import in_resistances, resistance_names
 from symamp.exact.response import Response
 from symamp.exact.time_constants import TimeConstant, time_constants
 from symamp.judge.ledger import make_ledger
+from symamp.show.derive_latex import Shown, latex_page
 from symamp.show.derive_text import approximation_page, response_page
 from symamp.show.json_parts import approximation_json, head, ledger_json, response_json
 from symamp.show.ledger_text import ledger_page
 from symamp.show.page import Page, console_width
+from symamp.show.running import Bar, placed, print_json
 from symamp.values import read_frequency
-
-_PATIENCE = 2.0  # seconds before a progress bar appears
 
 
 @dataclass(frozen=True)
@@ -51,19 +47,24 @@ def derive(
     responses: Sequence[str],
     resistances: bool,
     with_opinion: bool,
+    as_latex: bool,
     as_json: bool,
 ) -> int:
     """`symamp derive`."""
+    if as_latex and as_json:
+        raise InputError("--latex and --json print different things", "give one of them", key="--latex")
     stage = read_stage(file)
     hertz = [_frequency(text) for text in frequencies]
     assumptions = read_assumptions(stage)
     made = chosen(assumptions, assume, "--assume") if assume else None
     rename = resistance_names(stage) if resistances else {}
     wanted = _wanted(stage, responses)
-    with _placed(stage):
+    with placed(stage):
         found = {name: _derived(stage, name, made, rename, with_opinion) for name in wanted}
     if as_json:
-        _print_json(_derive_json(stage, found, hertz))
+        print_json(_derive_json(stage, found, hertz))
+    elif as_latex:
+        sys.stdout.write(latex_page([Shown(each.exact, each.approximation) for each in found.values()]))
     else:
         _show_derived(stage, found, hertz)
     return 1 if any(each.opinion and each.opinion.agrees is False for each in found.values()) else 0
@@ -119,10 +120,10 @@ def _derive_json(stage: Stage, found: Mapping[str, _Derived], hertz: Sequence[fl
 def ledger(file: str, quantities: Sequence[str], points: int, seed: int, as_json: bool) -> int:
     """`symamp ledger`."""
     stage = read_stage(file)
-    with _placed(stage), _Bar() as bar:
+    with placed(stage), Bar() as bar:
         made = make_ledger(stage, quantities=quantities, points=points, seed=seed, progress=bar.advance)
     if as_json:
-        _print_json(ledger_json(made))
+        print_json(ledger_json(made))
         return 0
     console = Console(highlight=False)
     page = Page(console_width(console))
@@ -133,7 +134,7 @@ def ledger(file: str, quantities: Sequence[str], points: int, seed: int, as_json
 
 def print_schema() -> int:
     """`symamp start --schema`."""
-    _print_json(stage_schema())
+    print_json(stage_schema())
     return 0
 
 
@@ -143,18 +144,6 @@ def _wanted(stage: Stage, responses: Sequence[str]) -> list[str]:
             known = ", ".join(stage.asked)
             raise StageError(f"there is no response {name!r}", f"this stage has {known}", key="--response")
     return list(dict.fromkeys(responses)) or list(stage.asked)
-
-
-@contextmanager
-def _placed(stage: Stage) -> Iterator[None]:
-    """Errors that name a key of the stage file alone get its file and line."""
-    try:
-        yield
-    except InputError as error:
-        if error.line is not None or error.key is None or error.key.startswith("--"):
-            raise
-        place = locate(stage, tuple(error.key.split(".")))
-        raise error.at(file=place["file"], line=place["line"]) from None
 
 
 def _frequency(text: str) -> float:
@@ -171,43 +160,3 @@ def _notes(page: Page, stage: Stage) -> None:
     if stage.warnings or stage.remarks:
         page.line()
         page.notes(stage.warnings, stage.remarks)
-
-
-def _print_json(found: dict[str, Any]) -> None:
-    # Whole before any of it is printed, so that a mistake leaves nothing on standard output.
-    narrow = (sys.stdout.encoding or "").lower().replace("-", "") != "utf8"
-    sys.stdout.write(json.dumps(found, indent=1, ensure_ascii=narrow, allow_nan=False) + "\n")
-
-
-class _Bar:
-    """A progress bar that appears after a while, and only where a person watches."""
-
-    def __init__(self) -> None:
-        self._watched = sys.stdout.isatty() and sys.stderr.isatty()
-        self._start = time.monotonic()
-        self._bar: Progress | None = None
-        self._task: Any = None
-
-    def __enter__(self) -> _Bar:
-        return self
-
-    def __exit__(self, *_: object) -> None:
-        if self._bar is not None:
-            self._bar.stop()
-
-    def advance(self, what: str, done: int, total: int) -> None:
-        """So many of so many bias points, or sets of assumptions, are done."""
-        if not self._watched or time.monotonic() - self._start < _PATIENCE:
-            return
-        if self._bar is None:
-            columns = (
-                TextColumn("{task.description}"),
-                BarColumn(),
-                TextColumn("{task.completed:,}/{task.total:,}"),
-            )
-            self._bar = Progress(
-                *columns, TimeRemainingColumn(), console=Console(stderr=True), transient=True
-            )
-            self._task = self._bar.add_task(what, total=total)
-            self._bar.start()
-        self._bar.update(self._task, description=what, completed=done, total=total)

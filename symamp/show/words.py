@@ -58,6 +58,13 @@ def error_words(value: complex | float | None, unit: str, *, absolute: bool, mod
     return f"{sign}{_three(abs(scaled))}{tail}"
 
 
+def ratio_words(ratio: float | None) -> str:
+    """A pure ratio to three significant digits: "0.0615", "16.3"."""
+    if ratio is None or math.isnan(ratio):
+        return "none"
+    return "0" if ratio == 0 else f"{MINUS if ratio < 0 else ''}{_three(abs(ratio))}"
+
+
 def percent_words(ratio: float) -> str:
     """A ratio in percent: "6.15 %"."""
     sign = MINUS if ratio < 0 else ""

@@ -24,6 +24,38 @@ class Extreme:
     modulus: bool
 
 
+@dataclass(frozen=True)
+class Summary:
+    """What figures (rows, P) at P points come to: all that `Extremes` needs of them, whatever their number.
+
+    `best` and `at` are (4, rows): least and greatest signed, least and greatest modulus, and at which of the points;
+    not finite for a figure without any value. `missing` counts the points without a value; `complex` says of each
+    row whether it was complex anywhere, None where the figures are real numbers.
+    """
+
+    best: np.ndarray
+    at: np.ndarray
+    missing: np.ndarray
+    complex: np.ndarray | None
+
+    @classmethod
+    def of(cls, figures: np.ndarray) -> Summary:
+        """Of figures (rows, P), real or complex."""
+        nan = ~np.isfinite(figures)
+        whole, signed, size = None, figures, np.abs(figures)
+        if np.iscomplexobj(figures):
+            whole = (np.where(nan, 0.0, figures).imag != 0).any(axis=1)
+            signed = figures.real
+        rows = np.arange(figures.shape[0])
+        best, places = np.empty((4, len(rows))), np.empty((4, len(rows)), dtype=np.intp)
+        for kind, data in enumerate((signed, signed, size, size)):
+            least = kind % 2 == 0
+            filled = np.where(nan, np.inf if least else -np.inf, data)
+            places[kind] = filled.argmin(axis=1) if least else filled.argmax(axis=1)
+            best[kind] = filled[rows, places[kind]]
+        return cls(best, places, nan.sum(axis=1), whole)
+
+
 class Extremes:
     """Running extremes of `rows` figures."""
 
@@ -40,23 +72,22 @@ class Extremes:
 
     def take(self, figures: np.ndarray, places: np.ndarray, rows: np.ndarray | None = None) -> None:
         """Take in figures (rows, P) at places (d, P): of all rows, or of those whose numbers are given."""
+        self.merge(Summary.of(figures), places, rows)
+
+    def merge(self, found: Summary, places: np.ndarray, rows: np.ndarray | None = None) -> None:
+        """The same with the figures summed up beforehand, wherever that was done.
+
+        Summaries that are merged in the order in which their figures would be taken leave the same bits behind.
+        """
         rows = np.arange(self.rows) if rows is None else rows
-        nan = ~np.isfinite(figures)
-        self.seen[rows] += figures.shape[1]
-        self.missing[rows] += nan.sum(axis=1)
-        if np.iscomplexobj(figures):
-            self._complex[rows] |= (np.where(nan, 0.0, figures).imag != 0).any(axis=1)
-            signed, size = figures.real, np.abs(figures)
-        else:
-            signed, size = figures, np.abs(figures)
-        for kind, data in enumerate((signed, signed, size, size)):
-            least = kind % 2 == 0
-            filled = np.where(nan, np.inf if least else -np.inf, data)
-            at = filled.argmin(axis=1) if least else filled.argmax(axis=1)
-            best = filled[np.arange(len(rows)), at]
+        self.seen[rows] += places.shape[1]
+        self.missing[rows] += found.missing
+        if found.complex is not None:
+            self._complex[rows] |= found.complex
+        for kind, (best, at) in enumerate(zip(found.best, found.at, strict=True)):
             known = self._value[kind, rows]
             margin = _ROUNDING * np.abs(known)
-            beats = best < known - margin if least else best > known + margin
+            beats = best < known - margin if kind % 2 == 0 else best > known + margin
             gain = np.isfinite(best) & (np.isnan(known) | beats)
             for k in np.flatnonzero(gain):
                 self._value[kind, rows[k]] = best[k]

@@ -110,6 +110,14 @@ class Box:
     def all_corners(self) -> bool:
         return self.dimensions <= CORNER_LIMIT.bit_length() - 1
 
+    @property
+    def method(self) -> str:
+        """How a box is looked at, in words."""
+        corners = "corners" if self.all_corners else "a draw of corners"
+        return (
+            f"sampled: scrambled Sobol points, {corners}, the bias point, and a local search from the worst"
+        )
+
     def blocks(self, points: int, seed: int) -> Iterator[np.ndarray]:
         """The bias point and corners, then `points` scrambled Sobol points, in blocks (sides, ≤ BLOCK)."""
         fixed = np.concatenate([self.bias_point, self.corners(seed)], axis=1)

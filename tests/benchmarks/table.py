@@ -7,7 +7,7 @@ from collections.abc import Callable, Iterable
 from rich.console import Console
 from rich.table import Table
 
-from . import deriving, graphs, ledgers, rooting, starting
+from . import deriving, graphs, ledgers, proving, rooting, starting
 from .record import Row, Sizes
 
 BENCHMARKS: dict[str, Callable[[Sizes], list[Row]]] = {
@@ -17,6 +17,7 @@ BENCHMARKS: dict[str, Callable[[Sizes], list[Row]]] = {
     "coefficients": deriving.coefficients,
     "ledger": ledgers.ledger,
     "memory": ledgers.memory,
+    "proofs": proving.proofs,
     "start": starting.cold_start,
     "roots": rooting.batches,
 }

@@ -11,7 +11,7 @@ from flint import Ordering, fmpz_mpoly_ctx
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from symamp.exact.latex_names import latex_name
+from symamp.circuit.latex_names import latex_name
 from symamp.exact.shape import (
     FACTOR_LIMIT,
     Factor,

@@ -183,8 +183,12 @@ def test_what_is_sampled_is_never_called_proved(answers: dict[str, Any]) -> None
     for found in answers.values():
         for _, parent, key in walk(found):
             if key == "proved":
-                assert parent[key] is False
-                assert "sampled" in parent["method"] or "every row" in parent["method"]
+                method = parent["method"]
+                assert parent[key] is method.startswith("proved")
+                assert "sampled" in method or "every row" in method or parent[key]
+                if parent[key]:
+                    low, high = parent["bounds"]
+                    assert low <= parent["min"] <= parent["max"] <= high
 
 
 def test_complex_numbers_are_re_and_im(answers: dict[str, Any]) -> None:

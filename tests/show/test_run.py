@@ -8,7 +8,7 @@ from pathlib import Path
 import pytest
 from shown import ASSUMPTIONS, CASCODE, SPAN, saved
 
-from symamp.show import run
+from symamp.show import run, running
 
 
 class Terminal(io.StringIO):
@@ -35,7 +35,7 @@ class Clock:
 @pytest.fixture
 def clock(monkeypatch: pytest.MonkeyPatch) -> Clock:
     hand = Clock()
-    monkeypatch.setattr(run, "time", hand)
+    monkeypatch.setattr(running, "time", hand)
     return hand
 
 
@@ -49,7 +49,7 @@ def watch(monkeypatch: pytest.MonkeyPatch, out: bool, err: bool) -> tuple[Termin
 
 def test_a_bar_appears_after_two_seconds(monkeypatch: pytest.MonkeyPatch, clock: Clock) -> None:
     out, err = watch(monkeypatch, True, True)
-    with run._Bar() as bar:
+    with running.Bar() as bar:
         bar.advance("bias points", 1000, 100_000)
         clock.now += 1.9
         bar.advance("bias points", 2000, 100_000)
@@ -70,7 +70,7 @@ def test_no_bar_where_nobody_watches(
     monkeypatch: pytest.MonkeyPatch, clock: Clock, out: bool, err: bool
 ) -> None:
     terminals = watch(monkeypatch, out, err)
-    with run._Bar() as bar:
+    with running.Bar() as bar:
         clock.now += 60
         bar.advance("bias points", 30_000, 100_000)
     assert [terminal.getvalue() for terminal in terminals] == ["", ""]
@@ -78,7 +78,7 @@ def test_no_bar_where_nobody_watches(
 
 def test_a_bar_is_taken_away_when_the_run_fails(monkeypatch: pytest.MonkeyPatch, clock: Clock) -> None:
     watch(monkeypatch, True, True)
-    bar = run._Bar()
+    bar = running.Bar()
 
     def interrupted() -> None:
         with bar:
@@ -108,5 +108,5 @@ def test_colour_only_where_a_person_watches(monkeypatch: pytest.MonkeyPatch, tmp
 def test_nothing_is_printed_of_json_that_cannot_be_written(monkeypatch: pytest.MonkeyPatch) -> None:
     out, _ = watch(monkeypatch, False, False)
     with pytest.raises(ValueError, match="JSON"):
-        run._print_json({"stage": "x", "value": float("nan")})
+        running.print_json({"stage": "x", "value": float("nan")})
     assert out.getvalue() == ""

@@ -1,4 +1,4 @@
-"""Names of symbols in LaTeX (room: exact): `gm1` is g_{m1}, `cgd1` C_{gd1}, `CL` C_L."""
+"""Names of symbols in LaTeX (room: circuit): `gm1` is g_{m1}, `cgd1` C_{gd1}, `CL` C_L."""
 
 from __future__ import annotations
 
