@@ -37,6 +37,7 @@ from symamp.show.ledger_text import ledger_page
 from symamp.show.note_files import write_note
 from symamp.show.page import Page
 from symamp.show.run_note import document_of
+from symamp.span.workers import workers_of
 from symamp.values import read_frequency
 
 
@@ -86,14 +87,18 @@ class Stage:
         return self._responses[name]
 
     def ledger(
-        self, quantities: str | Sequence[str] = (), *, points: int = POINTS, seed: int = SEED
+        self,
+        quantities: str | Sequence[str] = (),
+        *,
+        points: int = POINTS,
+        seed: int = SEED,
+        workers: int = 1,
     ) -> StageLedger:
         """The errors that the assumptions add, at the bias point and over the span (see `make_ledger`)."""
         wanted = [quantities] if isinstance(quantities, str) else quantities
-        made = make_ledger(
-            self.data, quantities=wanted, assumptions=self.assumptions, points=points, seed=seed
-        )
-        return StageLedger(made)
+        given: dict[str, Any] = {"quantities": wanted, "assumptions": self.assumptions}
+        with workers_of(workers) as engine:
+            return StageLedger(make_ledger(self.data, **given, points=points, seed=seed, executor=engine))
 
     def check(
         self,
@@ -102,10 +107,12 @@ class Stage:
         within: str = WITHIN,
         points: int = POINTS,
         seed: int = SEED,
+        workers: int = 1,
     ) -> StageCheck:
         """A verdict on each claim of the stage, or on those given, such as "gain.dc = -gm1*ro1" (see `make_check`)."""
-        found = make_check(self.data, claims=self._claims(claim, within), points=points, seed=seed)
-        return StageCheck(found)
+        claims = self._claims(claim, within)
+        with workers_of(workers) as engine:
+            return StageCheck(make_check(self.data, claims=claims, points=points, seed=seed, executor=engine))
 
     def frontier(self, claim: str | Sequence[str] = (), *, within: str = WITHIN) -> StageFrontier:
         """Where each claim stops holding: the ratios at which its error reaches what it is allowed."""

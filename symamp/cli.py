@@ -45,6 +45,15 @@ _POINTS = click.option(
 _SEED = click.option(
     "--seed", type=click.IntRange(0), default=1, show_default=True, help="Seed of the sampling."
 )
+_WORKERS = click.option(
+    "--workers",
+    type=click.IntRange(1, 256),
+    metavar="N",
+    help="Look at the points in N processes; the figures stay the same to the last bit.",
+)
+_SCHEDULER = click.option(
+    "--scheduler", metavar="ADDRESS", help="Look at the points on a running dask cluster; the same figures."
+)
 _JSON = click.option("--json", "as_json", is_flag=True, help="Print one JSON object and nothing else.")
 
 
@@ -97,10 +106,20 @@ def derive(
 )
 @_POINTS
 @_SEED
+@_WORKERS
+@_SCHEDULER
 @_JSON
-def ledger(file: str, quantities: tuple[str, ...], points: int, seed: int, as_json: bool) -> None:
+def ledger(
+    file: str,
+    quantities: tuple[str, ...],
+    points: int,
+    seed: int,
+    workers: int | None,
+    scheduler: str | None,
+    as_json: bool,
+) -> None:
     """The error that each assumption adds, at the bias point and over the span."""
-    _run("ledger", file, quantities, points, seed, as_json)
+    _run("ledger", file, quantities, points, seed, as_json, workers, scheduler)
 
 
 @cli.command(short_help="A verdict on each claim, with its tacit conditions.")
@@ -110,6 +129,8 @@ def ledger(file: str, quantities: tuple[str, ...], points: int, seed: int, as_js
 @_ABOUT
 @_POINTS
 @_SEED
+@_WORKERS
+@_SCHEDULER
 @_JSON
 def check(
     file: str,
@@ -118,13 +139,15 @@ def check(
     about: tuple[str, ...],
     points: int,
     seed: int,
+    workers: int | None,
+    scheduler: str | None,
     as_json: bool,
 ) -> None:
     """A verdict on each claim: its error, what it silently takes to be small, and what it follows from.
 
     The exit code is 1 where a claim does not hold all over the span.
     """
-    _run("check", file, claims, within, about, points, seed, as_json, module=_CLAIMS)
+    _run("check", file, claims, within, about, points, seed, as_json, workers, scheduler, module=_CLAIMS)
 
 
 @cli.command(short_help="Where a claim stops holding.")
@@ -161,10 +184,20 @@ def frontier(
 )
 @_POINTS
 @_SEED
+@_WORKERS
+@_SCHEDULER
 @_JSON
-def note(file: str, output: str, points: int, seed: int, as_json: bool) -> None:
+def note(
+    file: str,
+    output: str,
+    points: int,
+    seed: int,
+    workers: int | None,
+    scheduler: str | None,
+    as_json: bool,
+) -> None:
     """The stage, its exact and simplified expressions, the errors, the verdicts and plots, ready to hand in."""
-    _run("note", file, output, points, seed, as_json, module="symamp.show.run_note")
+    _run("note", file, output, points, seed, as_json, workers, scheduler, module="symamp.show.run_note")
 
 
 @cli.command(short_help="The JSON Schema of stage files.")
@@ -184,8 +217,9 @@ def _run(command: str, *arguments: Any, module: str = "symamp.show.run") -> None
     except SymampError as error:
         click.echo(_CONTROL.sub("�", str(error)), err=True)
         sys.exit(2)
-    except KeyboardInterrupt:
-        click.echo("interrupted", err=True)
+    except KeyboardInterrupt as interrupt:
+        had = _CONTROL.sub("�", str(interrupt))
+        click.echo(f"interrupted: {had}" if had else "interrupted", err=True)
         sys.exit(130)
     except BrokenPipeError:
         # Whoever reads has had enough.

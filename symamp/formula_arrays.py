@@ -48,7 +48,8 @@ class _Arrays:
     def power(self, base: Any, exponent: Fraction) -> Any:
         if exponent.denominator == 1:
             return np.power(base, float(exponent.numerator))
-        return np.power(base, float(exponent))
+        # C's pow has a value for a root of -inf; here no negative number has one.
+        return np.power(np.where(np.less(base, 0), math.nan, base), float(exponent))[()]
 
     def parallel(self, a: Any, b: Any) -> Any:
         return 1.0 / (1.0 / np.asarray(a) + 1.0 / np.asarray(b))  # right for 0 and infinity too

@@ -1,54 +1,54 @@
 r"""Formulas as people paste them from LaTeX, scanned into the same words and signs: below all rooms of the house.
 
 `-g_{m1} r_{o1}`, `\frac{g_{m1}}{C_L}`, `r_{o1} \parallel R_L`: what stands side by side is a product. Every word keeps
-the column at which it stands in the text as pasted.
+the column at which it stands in the text as pasted. What reads two ways on paper is refused, never guessed at.
 """
 
 from __future__ import annotations
 
 import re
-from collections.abc import Callable
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 
 from symamp.errors import ReadError
-from symamp.formula_scan import Token, error_at, named, number_token
+from symamp.formula_latex_names import GREEK_LETTERS, SPACES, WORD, NameReader, Remedy, Resolve
+from symamp.formula_scan import (
+    PRINTED,
+    RAISED,
+    UPRIGHT,
+    Token,
+    latex_unit,
+    named,
+    number_token,
+    raised_tokens,
+)
 from symamp.values import quoted
 
-Resolve = Callable[[str, str], "str | None"]  # a letter and its subscript -> the name of a symbol
-Remedy = Callable[[str], str]  # an unknown name as written -> what to propose
-
-_DEEPEST = 64  # groups within one another
-_OPERATORS = {
-    "cdot": "*", "times": "*", "ast": "*", "div": "/", "parallel": "||", "|": "||", "Vert": "||", "pm": "", "mp": "",
-}  # fmt: skip
-_SKIPPED = {
-    ",", ";", ":", "!", " ", "quad", "qquad", "thinspace", "left", "right", "big", "Big", "bigg", "Bigg", "bigl",
-    "bigr", "Bigl", "Bigr", "biggl", "biggr", "Biggl", "Biggr", "displaystyle", "textstyle", "limits", "nolimits", "\\",
-    "(", ")", "[", "]", "mathstrut", "strut", "allowbreak",
-}  # fmt: skip
+_OPERATORS = {"cdot": "*", "times": "*", "ast": "*", "div": "/", "parallel": "||", "|": "||", "Vert": "||"}
 _FRACTIONS = {"frac", "dfrac", "tfrac", "cfrac"}
-_WORDS = {
-    "mathrm",
-    "text",
-    "textrm",
-    "mathit",
-    "operatorname",
-    "mathsf",
-    "mathbf",
-    "rm",
-    "textit",
-    "mbox",
-    "mathnormal",
-}
 _GREEK = {
     "alpha", "beta", "gamma", "delta", "mu", "pi", "lambda", "rho", "sigma", "tau", "omega", "Omega", "eta", "theta",
     "chi", "phi", "varphi", "kappa", "nu", "xi", "zeta", "epsilon", "varepsilon",
 }  # fmt: skip
-_BARS = {"lvert": True, "rvert": False}
 _NUMBER = re.compile(r"(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
-_COMMAND = re.compile(r"\\([A-Za-z]+|.)", re.DOTALL)
-_WORD = re.compile(r"[A-Za-z][A-Za-z0-9]*")
-_SIGNS = {"+": "+", "-": "-", "−": "-", "*": "*", "/": "/", "·": "*", "×": "*", "∥": "||"}
+_ROOT = re.compile(r"\s*\[\s*([1-9][0-9]?)\s*\]")
+_DISPLAY = re.compile(r"\{(?:equation|align|aligned|split|gather|gathered|multline|displaymath|math)\*?\}")
+_MIXED = re.compile(r"[0-9]+\*\(\([0-9]+\)/\([0-9]+\)\)")  # as 2½ is written: \frac{1}{2} after 2
+_SIGNS = {"+": "+", "-": "-", "*": "*", "/": "/", **PRINTED}
+
+_BRACE = re.compile(r"\}")
+_ROUND = re.compile(r"\)")
+_SQUARE = re.compile(r"\]")
+_CURLY = re.compile(r"\\(?:\}|rbrace(?![A-Za-z]))")
+_BAR = re.compile(r"\|(?!\|)")
+# Where a size ends that began with \left| or \bigl|, and with \lvert or \vert.
+_SIZED = re.compile(r"\\(?:right|[bB]igg?r)\s*(?:\||\\r?vert(?![A-Za-z]))")
+_VERT = {
+    "lvert": (re.compile(r"\\rvert(?![A-Za-z])"), r"\rvert"),
+    "vert": (re.compile(r"\\vert(?![A-Za-z])"), r"\vert"),
+}
+_SIZED_OPENING = re.compile(r"\\(?:left|[bB]igg?l)\s*(?:\||\\l?vert(?![A-Za-z]))")
 
 
 def is_latex(text: str) -> bool:
@@ -66,77 +66,91 @@ def scan_latex(text: str, resolve: Resolve, remedy: Remedy) -> list[Token]:
 
 
 @dataclass
-class _Open:
-    """What a closing sign must close: its sign, and where it was opened."""
+class _Group:
+    """One group: what closes it and how that is written, where it was opened, and whether a `/` awaits its end."""
 
+    closes: re.Pattern[str] | None
     closing: str
     column: int
+    divided: bool = False
 
 
-class _Scanner:
+class _Scanner(NameReader):
     def __init__(self, text: str, resolve: Resolve, remedy: Remedy) -> None:
-        self.text, self.resolve, self.remedy = text, resolve, remedy
-        self.at = 0
-        self.depth = 0
+        super().__init__(text, resolve, remedy)
+        self.groups: list[_Group] = []
         self.tokens: list[Token] = []
+        self.broken = False  # whether a new line has begun since the last word or sign
 
     def whole(self) -> list[Token]:
-        self.group(None)
+        self.group(_Group(None, "", 1))
         self.tokens.append(Token("end", "", len(self.text) + 1))
         return self.tokens
 
     # Tokens
 
     def put(self, what: str, text: str, column: int) -> None:
-        """A word or sign; side by side is a product."""
-        starts = what in ("name", "number") or text == "("
+        """A word, a number or an opening bracket; side by side is a product."""
         last = self.tokens[-1] if self.tokens else None
-        if starts and last is not None and self._ends(last):
+        if last is not None and _ends(last):
+            if what == "number" and last.what == "number":
+                raise self.error(
+                    column, "two numbers stand side by side", r"write 10000 without a space, or \cdot"
+                )
+            if self.broken:
+                remedy = r"begin it with an operator, such as \times"
+                raise self.error(column, "a new line that begins without an operator reads two ways", remedy)
+            if self.groups[-1].divided:
+                remedy = r"put brackets around what is divided by, such as a/(b c), or write \cdot"
+                raise self.error(column, "a product without a sign after / reads two ways", remedy)
             self.tokens.append(Token("op", "*", column))
+        self.broken = False
         self.tokens.append(Token(what, text, column))
-
-    @staticmethod
-    def _ends(last: Token) -> bool:
-        if last.what == "name":
-            return last.text not in ("sqrt", "abs")
-        return last.what == "number" or last.text == ")"
 
     def put_number(self, token: Token) -> None:
         self.put("number", token.text, token.column)
         self.tokens[-1] = token
 
-    def error(self, column: int, problem: str, remedy: str = "") -> ReadError:
-        return error_at(self.text, column, problem, remedy)
+    def put_operator(self, sign: str, column: int) -> None:
+        self.broken = False
+        joins = bool(self.tokens) and _ends(self.tokens[-1])
+        if sign == "/":
+            self.groups[-1].divided = True
+        elif joins:  # a sign before a factor ends no division
+            self.groups[-1].divided = False
+        self.tokens.append(Token("op", sign, column))
+
+    # Groups
+
+    @contextmanager
+    def within(self, group: _Group) -> Iterator[None]:
+        with self.deeper(group.column):
+            self.groups.append(group)
+            yield
+            self.groups.pop()
+
+    def group(self, opened: _Group) -> None:
+        """All up to the sign that closes the group, or to the end of the text."""
+        with self.within(opened):
+            while self.at < len(self.text):
+                found = opened.closes.match(self.text, self.at) if opened.closes is not None else None
+                if found is not None:
+                    self.at = found.end()
+                    return
+                self.piece(self.text[self.at])
+            if opened.closes is not None:
+                raise self.error(opened.column, "this group is not closed", f"add {opened.closing}")
+
+    def bracketed(self, closes: re.Pattern[str], closing: str, column: int) -> None:
+        self.put("op", "(", column)
+        self.group(_Group(closes, closing, column))
+        self.tokens.append(Token("op", ")", self.at))
+
+    def size(self, closes: re.Pattern[str], closing: str, column: int) -> None:
+        self.put("name", "abs", column)
+        self.bracketed(closes, closing, column)
 
     # Reading
-
-    def group(self, opened: _Open | None) -> None:
-        """All up to the sign that closes the group, or to the end of the text."""
-        self.depth += 1
-        if self.depth > _DEEPEST:
-            raise self.error(self.at + 1, f"more than {_DEEPEST} groups within one another")
-        while self.at < len(self.text):
-            character = self.text[self.at]
-            if opened is not None and self._closes(opened):
-                self.depth -= 1
-                return
-            if character in "}" or (character == "]" and opened is None):
-                raise self.error(self.at + 1, f"{character} closes what was not opened", "remove it")
-            self.piece(character)
-        if opened is not None:
-            raise self.error(opened.column, "this group is not closed", f"add {opened.closing}")
-        self.depth -= 1
-
-    def _closes(self, opened: _Open) -> bool:
-        """Whether the group's end stands here; it is passed over."""
-        for closing in (opened.closing, f"\\right{opened.closing}", f"\\right {opened.closing}"):
-            if self.text.startswith(closing, self.at):
-                self.at += len(closing)
-                return True
-        if opened.closing == "|" and self.text.startswith("\\rvert", self.at):
-            self.at += len("\\rvert")
-            return True
-        return False
 
     def piece(self, character: str) -> None:
         column = self.at + 1
@@ -144,244 +158,212 @@ class _Scanner:
             self.at += 1
         elif character == "\\":
             self.command()
-        elif character == "{":
+        elif character in "{([":
             self.at += 1
-            self.bracketed("}", column)
-        elif character in "([":
-            self.at += 1
-            self.bracketed(")" if character == "(" else "]", column)
+            self.opening(character, column)
+        elif character in "})]":
+            raise self.unopened(character, column)
         elif character == "|":
             self.bar(column)
         elif character == "^":
             self.raised(column)
-        elif (character.isdigit() and character.isascii()) or character == ".":
+        elif character in "0123456789.":
             self.number(column)
         elif character in _SIGNS:
             self.at += 1
             self.sign(_SIGNS[character], column)
         elif character.isascii() and character.isalpha():
-            self.symbol(column)
+            self.put("name", self.symbol(column), column)
         else:
-            raise self.error(column, f"{named(character)} has no meaning in a formula")
+            self.printed(character, column)
+
+    def opening(self, character: str, column: int) -> None:
+        if character == "{":
+            self.skip_spaces()
+            if self.text.startswith("}", self.at):  # {} holds nothing but a place
+                self.at += 1
+            else:
+                self.bracketed(_BRACE, "}", column)
+        elif character == "(":
+            self.bracketed(_ROUND, ")", column)
+        else:
+            self.bracketed(_SQUARE, "]", column)
+
+    def unopened(self, character: str, column: int) -> ReadError:
+        due = self.groups[-1].closing
+        remedy = f"add {due} before it" if due else "remove it"
+        return self.error(column, f"{character} closes what was not opened", remedy)
 
     def sign(self, sign: str, column: int) -> None:
         """An operator; `**` and `//` are read as one."""
-        if sign in "*/" and self.text[self.at : self.at + 1] == sign:
+        if sign in "*/" and self.text[self.at - 1 : self.at + 1] == 2 * sign:
             self.at += 1
-            self.tokens.append(Token("op", "^" if sign == "*" else "||", column))
+            if sign == "/":
+                self.put_operator("||", column)
+            else:
+                self.tokens.append(Token("op", "^", column))
             return
-        self.tokens.append(Token("op", sign, column))
-
-    def bracketed(self, closing: str, column: int) -> None:
-        self.put("op", "(", column)
-        self.group(_Open(closing, column))
-        self.tokens.append(Token("op", ")", self.at))
+        self.put_operator(sign, column)
 
     def bar(self, column: int) -> None:
         """`||` is parallel; a single bar begins a size."""
-        if self.text.startswith("||", self.at):
-            self.at += 2
-            self.tokens.append(Token("op", "||", column))
+        if not self.text.startswith("||", self.at):
+            self.at += 1
+            self.size(_BAR, "|", column)
             return
-        self.at += 1
-        self.size(column)
+        if self.groups[-1].closes is _BAR:
+            remedy = r"write \parallel, or \lvert and \rvert for sizes"
+            raise self.error(column, "|| between bars reads two ways", remedy)
+        self.at += 2
+        self.put_operator("||", column)
 
-    def size(self, column: int) -> None:
-        self.put("name", "abs", column)
-        self.tokens.append(Token("op", "(", column))
-        self.group(_Open("|", column))
-        self.tokens.append(Token("op", ")", self.at))
+    def printed(self, character: str, column: int) -> None:
+        """Signs of print that people paste among LaTeX: `π`, `√2`, `²`."""
+        high = RAISED.match(self.text, self.at)
+        if high is not None:
+            self.at = high.end()
+            self.tokens.append(Token("op", "^", column))
+            self.tokens.extend(raised_tokens(self.text, column, high[0]))
+        elif character == "√":
+            self.at += 1
+            self.put("name", "sqrt", column)
+            self.argument(column, "what stands under the root")
+        elif character in GREEK_LETTERS:
+            self.at += 1
+            self.put("name", self.named(GREEK_LETTERS[character], character, column), column)
+        else:
+            raise self.error(column, f"{named(character)} has no meaning in a formula")
 
     def raised(self, column: int) -> None:
+        base = self.tokens[-1].number if self.tokens else None
         self.at += 1
         self.tokens.append(Token("op", "^", column))
         self.argument(column, "an exponent")
+        after = self.text[self.at : self.at + 1]
+        if after and after in "0123456789." and self.text[self.at - 1].isdigit():
+            raise self.error(column, "an exponent of several digits needs braces", "write it as ^{10}")
+        if base is not None:  # 3 \times 10^{-3}\,\mathrm{S}
+            unit, place, end = self.unit(self.at)
+            if unit:
+                self.at = end
+                self.put_number(number_token(self.text, place, "1", unit, place))
 
     def argument(self, column: int, what: str) -> None:
         """A group in braces, or the one sign that follows, in brackets."""
-        self._skip_spaces()
+        self.skip_spaces()
         if self.at >= len(self.text):
             raise self.error(column, f"{what} is missing")
         here = self.at + 1
+        character = self.text[self.at]
         self.tokens.append(Token("op", "(", here))
-        if self.text[self.at] == "{":
+        if character == "{":
             self.at += 1
-            self.group(_Open("}", here))
-        elif self.text[self.at].isdigit():
-            self.put_number(number_token(self.text, here, self.text[self.at], "", here))
+            self.group(_Group(_BRACE, "}", here))
+        elif character in "0123456789":
             self.at += 1
+            self.tokens.append(number_token(self.text, here, character, "", here))
         else:
-            self.piece(self.text[self.at])
+            word = WORD.match(self.text, self.at)
+            follows = self.text[word.end() : word.end() + 1] if word is not None else ""
+            if character not in "\\([" and (word is None or len(word[0]) > 1 or follows == "_"):
+                raise self.error(here, f"{what} of several signs needs braces", "write it in { and }")
+            with self.within(_Group(None, "", here)):
+                self.piece(character)
         self.tokens.append(Token("op", ")", self.at))
-
-    def _skip_spaces(self) -> None:
-        while self.at < len(self.text) and self.text[self.at].isspace():
-            self.at += 1
 
     def number(self, column: int) -> None:
         match = _NUMBER.match(self.text, self.at)
         if match is None:
             raise self.error(column, f"{quoted(self.text[self.at])} has no meaning in a formula")
-        self.at = match.end()
-        unit, place = self._unit()
+        unit, place, self.at = self.unit(match.end())
         self.put_number(number_token(self.text, column, match[0], unit, place))
 
-    def _unit(self) -> tuple[str, int]:
-        r"""Prefix and unit after a number, in upright letters: `\,\mathrm{k}\Omega`, `\,\text{pF}`."""
-        unit, place, end = "", self.at + 1, self.at
-        position = self.at
-        while position < len(self.text):
-            space = re.compile(r"[\s~]+|\\[,;:! ]|\\(?:thinspace|quad)(?![A-Za-z])").match(
-                self.text, position
-            )
-            if space:
-                position = space.end()
-                continue
-            found = re.compile(
-                rf"\\(?:{'|'.join(sorted(_WORDS))})\s*\{{\s*([A-Za-z/°]*)\s*\}}|\\(Omega|mu|degree)(?![A-Za-z])"
-            ).match(self.text, position)
-            if found is None:
-                break
-            place = place if unit else position + 1
-            unit += {"Omega": "ohm", "mu": "u", "degree": "°", None: found[1]}[found[2]]
-            position = end = found.end()
-        self.at = end
-        return unit, place
+    def unit(self, position: int) -> tuple[str, int, int]:
+        return latex_unit(self.text, position, lambda word: self.resolve(word, "") is not None)
 
-    def symbol(self, column: int) -> None:
-        """A letter with its subscript, or a name in our own grammar."""
-        match = _WORD.match(self.text, self.at)
-        assert match is not None
-        word = match[0]
-        after = self.text[match.end() : match.end() + 1]
-        if word in ("sqrt", "abs", "pi") and self.resolve(word, "") is None:
-            self.at = match.end()
-            self.put("name", word, column)
-        elif after != "_" and self.resolve(word, "") is not None:
-            self.at = match.end()
-            self.put("name", str(self.resolve(word, "")), column)
-        elif len(word) > 1 and after == "_" and self.resolve(word, "") is None:
-            # gm_tail, or a letter before one with a subscript
-            if not self._whole_name(word, column):
-                self._letter(word[0], column)
-        else:
-            self._letter(word[0] if after == "_" and len(word) == 1 else word, column)
-
-    def _whole_name(self, word: str, column: int) -> bool:
-        found = re.compile(r"[A-Za-z][A-Za-z0-9_]*").match(self.text, self.at)
-        if found is None or self.resolve(found[0], "") is None:
-            return False
-        self.at = found.end()
-        self.put("name", str(self.resolve(found[0], "")), column)
-        return True
-
-    def _letter(self, letter: str, column: int) -> None:
-        self.at += len(letter)
-        self.named(letter, letter, column)
-
-    def named(self, letter: str, shown: str, column: int) -> None:
-        """The symbol of a letter and the subscript that follows it."""
-        start = column - 1
-        subscript = self.subscript()
-        name = self.resolve(letter, subscript)
-        if name is None:
-            written = self.text[start : self.at].strip() or shown
-            raise self.error(column, f"there is no symbol {quoted(written)}", self.remedy(letter + subscript))
-        self.put("name", name, column)
-
-    def subscript(self) -> str:
-        """The subscript, without braces, spaces and fonts; "" for none."""
-        self._skip_spaces()
-        if not self.text.startswith("_", self.at):
-            return ""
-        self.at += 1
-        self._skip_spaces()
-        if self.text.startswith("{", self.at):
-            return self._braced()
-        if self.text.startswith("\\", self.at):
-            return self._flat_command()
-        found = self.text[self.at : self.at + 1]
-        self.at += 1
-        return found
-
-    def _braced(self) -> str:
-        opened, found = self.at + 1, ""
-        self.depth += 1
-        if self.depth > _DEEPEST:
-            raise self.error(opened, f"more than {_DEEPEST} groups within one another")
-        self.at += 1
-        while self.at < len(self.text):
-            character = self.text[self.at]
-            if character == "}":
-                self.at += 1
-                self.depth -= 1
-                return found
-            if character == "{":
-                found += self._braced()
-            elif character == "\\":
-                found += self._flat_command()
-            else:
-                self.at += 1
-                found += "" if character.isspace() or character == "_" else character
-        raise self.error(opened, "this subscript is not closed", "add }")
-
-    def _flat_command(self) -> str:
-        match = _COMMAND.match(self.text, self.at)
-        if match is None:
-            raise self.error(self.at + 1, "a command is missing after the backslash")
-        self.at = match.end()
-        word = match[1]
-        if word in _GREEK:
-            return word
-        return "" if word in _WORDS or word in _SKIPPED else "_" if word == "_" else word
+    # Commands
 
     def command(self) -> None:
         column = self.at + 1
-        match = _COMMAND.match(self.text, self.at)
-        if match is None:
-            raise self.error(column, "a command is missing after the backslash")
-        word = match[1]
-        self.at = match.end()
-        if word in _SKIPPED:
+        sized = _SIZED_OPENING.match(self.text, self.at)
+        if sized is not None:
+            self.at = sized.end()
+            self.size(_SIZED, r"\right|" if "left" in sized[0] else r"\bigr|", column)
             return
-        if word in _FRACTIONS:
+        word = self.command_word()
+        if word in SPACES:
+            self.broken = self.broken or word == "\\"
+        elif word in _FRACTIONS:
             self.fraction(column)
         elif word == "sqrt":
-            self.put("name", "sqrt", column)
-            self.argument(column, "what stands under the root")
-        elif _OPERATORS.get(word):
-            self.tokens.append(Token("op", _OPERATORS[word], column))
-        elif word in ("lvert", "vert"):
-            self.size(column)
-        elif (
-            word == "pi"
-            and self.resolve("pi", "") is None
-            and not self.text[self.at :].lstrip().startswith("_")
-        ):
-            self.put("name", "pi", column)
+            self.root(column)
+        elif word in _OPERATORS:
+            self.put_operator(_OPERATORS[word], column)
+        elif word in _VERT:
+            self.size(*_VERT[word], column)
+        elif word in ("{", "lbrace"):
+            self.bracketed(_CURLY, r"\}", column)
         elif word in _GREEK:
-            self.named(word, "\\" + word, column)
-        elif word in _WORDS:
-            self.upright(column)
-        else:
-            raise self.error(
-                column, f"\\{word} has no meaning in a formula here", "write it with + - * / and brackets"
-            )
+            self.put("name", self.named(word, "\\" + word, column), column)
+        elif word in UPRIGHT:
+            self.put("name", self.upright(column), column)
+        elif not (word in ("begin", "end") and self.display()):
+            problem = f"\\{word} has no meaning in a formula here"
+            raise self.error(column, problem, "write it with + - * / and brackets")
+
+    def display(self) -> bool:
+        """Whether a display's name follows, as in \\begin{equation}; it is passed over."""
+        found = _DISPLAY.match(self.text, self.at)
+        self.at = found.end() if found is not None else self.at
+        return found is not None
 
     def fraction(self, column: int) -> None:
+        first = len(self.tokens)
         self.put("op", "(", column)
         self.argument(column, "what stands above the bar")
         self.tokens.append(Token("op", "/", column))
         self.argument(column, "what stands below the bar")
         self.tokens.append(Token("op", ")", column))
+        whole = "".join(token.text for token in self.tokens[max(first - 1, 0) :])
+        if first and _MIXED.fullmatch(whole):
+            remedy = r"write it as one fraction, or \cdot before it"
+            raise self.error(column, "a whole number before a fraction of numbers reads two ways", remedy)
 
-    def upright(self, column: int) -> None:
-        r"""A name in upright letters: `\mathrm{CL}`, `\mathrm{g}_{m1}`."""
-        self._skip_spaces()
-        if not self.text.startswith("{", self.at):
-            raise self.error(column, "a group in braces is missing after this command")
-        word = self._braced()
-        if word in ("sqrt", "abs", "pi") and self.resolve(word, "") is None:
-            self.put("name", word, column)
-        else:
-            self.named(word, word, column)
+    def root(self, column: int) -> None:
+        r"""`\sqrt{x}`; `\sqrt[3]{x}` is x to the power of 1/3."""
+        index = _ROOT.match(self.text, self.at)
+        if index is None:
+            self.put("name", "sqrt", column)
+            self.skip_spaces()
+            if self.text.startswith("[", self.at):
+                raise self.error(
+                    self.at + 1, "the index of a root is no whole number", r"such as \sqrt[3]{x}"
+                )
+            self.argument(column, "what stands under the root")
+            return
+        self.at = index.end()
+        self.put("op", "(", column)
+        self.argument(column, "what stands under the root")
+        power = (
+            ("op", "^"),
+            ("op", "("),
+            ("number", "1"),
+            ("op", "/"),
+            ("number", index[1]),
+            ("op", ")"),
+            ("op", ")"),
+        )
+        for what, sign in power:
+            made = (
+                number_token(self.text, column, sign, "", column)
+                if what == "number"
+                else Token(what, sign, column)
+            )
+            self.tokens.append(made)
+
+
+def _ends(last: Token) -> bool:
+    """Whether a factor ends with this word or sign."""
+    if last.what == "name":
+        return last.text not in ("sqrt", "abs")
+    return last.what == "number" or last.text == ")"

@@ -1,14 +1,14 @@
 """The words and signs of a formula, each with its place: a module below all rooms of the house.
 
-Besides the signs that are typed, those of print are read as well: `·`, `×`, `−`, `∥`, `π`, `√(`, `x²`.
+Besides the signs that are typed, those of print are read as well: `·`, `×`, `−`, `⁄`, `∥`, `π`, `√(`, `x²`.
 """
 
 from __future__ import annotations
 
 import re
 import unicodedata
-from collections.abc import Iterator
-from dataclasses import dataclass
+from collections.abc import Callable, Iterator
+from typing import NamedTuple
 
 from symamp.errors import ReadError
 from symamp.formula_tree import Number
@@ -26,14 +26,14 @@ _TOKEN = re.compile(
     rf"(?:[ \u00a0\u2009\u202f]?(?P<unit>[a-zA-Z\u00b5\u03bc]?rad/s(?![\w])|°|[^\W\d_{_HIGH}][^\W{_HIGH}]*))?"
     r"|(?P<raised>[⁺⁻]?[⁰¹²³⁴⁵⁶⁷⁸⁹]+)"
     rf"|(?P<name>[^\W\d{_HIGH}][^\W{_HIGH}]*)"
-    r"|(?P<op>\*\*|\|\||[-+*/^()·⋅×∙−∥√÷])"
+    r"|(?P<op>\*\*|\|\||[-+*/^()·⋅×∙−∥√÷⁄∕])"
 )
-_PRINTED = {"·": "*", "⋅": "*", "∙": "*", "×": "*", "÷": "/", "−": "-", "∥": "||"}
+PRINTED = {"·": "*", "⋅": "*", "∙": "*", "×": "*", "÷": "/", "⁄": "/", "∕": "/", "−": "-", "∥": "||"}
+RAISED = re.compile(r"[⁺⁻]?[⁰¹²³⁴⁵⁶⁷⁸⁹]+")
 _RAISED = str.maketrans("⁺⁻⁰¹²³⁴⁵⁶⁷⁸⁹", "+-0123456789")
 
 
-@dataclass(frozen=True)
-class Token:
+class Token(NamedTuple):
     """A word or sign: `what` is number, name, op or end; `column` counts from 1."""
 
     what: str
@@ -63,17 +63,18 @@ def scan(text: str) -> Iterator[Token]:
             yield number_token(text, column, match["number"], match["unit"] or "", match.start("unit") + 1)
         elif match["raised"]:
             yield Token("op", "^", column)
-            yield from _raised(text, column, match["raised"])
+            yield from raised_tokens(text, column, match["raised"])
         elif match["name"]:
             yield _name(text, column, match["name"])
         elif match["op"] == "√":
             yield Token("name", "sqrt", column)
         elif match["op"]:
-            yield Token("op", _PRINTED.get(match["op"], match["op"]), column)
+            yield Token("op", PRINTED.get(match["op"], match["op"]), column)
     yield Token("end", "", len(text) + 1)
 
 
-def _raised(text: str, column: int, raised: str) -> Iterator[Token]:
+def raised_tokens(text: str, column: int, raised: str) -> Iterator[Token]:
+    """An exponent in raised digits, such as `⁻²`: its sign and its number."""
     written = raised.translate(_RAISED)
     if written[0] in "+-":
         yield Token("op", written[0], column)
@@ -129,3 +130,57 @@ def named(character: str) -> str:
     name = unicodedata.name(character, "")
     shown = quoted(character) if character.isprintable() else '""'
     return f"{shown} (U+{ord(character):04X}{f', {name.lower()}' if name else ''})"
+
+
+# Units as LaTeX writes them
+
+UPRIGHT = (
+    "mathrm", "text", "textrm", "mathit", "operatorname", "mathsf", "mathbf", "textit", "mbox", "mathnormal",
+)  # fmt: skip
+_UNIT_WORDS = {
+    "Omega": "ohm", "upOmega": "ohm", "textohm": "ohm", "mu": "u", "upmu": "u", "textmu": "u", "degree": "°",
+    "textdegree": "°",
+}  # fmt: skip
+_PREFIX = "[afpnu\u00b5\u03bcmkMGT]"
+_SPACE = re.compile(r"(?:[\s~]|\\[,;:! ]|\\(?:thinspace|quad)(?![A-Za-z]))*")
+_PIECE = re.compile(
+    rf"\\(?:{'|'.join(UPRIGHT)})\s*\{{(?P<upright>(?:[^{{}}\\$]|\\[A-Za-z]+|\\[,;:! ])*)\}}"
+    r"|(?P<circle>\^\s*(?:\\circ(?![A-Za-z])|\{\s*\\circ\s*\}))"
+    rf"|\\(?P<word>{'|'.join(_UNIT_WORDS)})(?![A-Za-z])"
+    rf"|(?P<sign>{_PREFIX}?[\u03a9\u2126]|°|{_PREFIX}(?=\s*\\(?:up)?Omega(?![A-Za-z]))"
+    rf"|(?:{_PREFIX}?(?:ohm|Hz|[SFHVA])|{_PREFIX}s|dB|deg)(?![A-Za-z0-9]))"
+)
+_INSIDE = re.compile(r"\\([A-Za-z]+)|\\[,;:! ]|[\s~]+")
+_UNIT = re.compile(r"[A-Za-z/\u00b0\u00b5\u03bc\u03a9\u2126]+")
+
+
+def latex_unit(text: str, position: int, is_name: Callable[[str], bool]) -> tuple[str, int, int]:
+    r"""Prefix and unit after a number in LaTeX: `\,\mathrm{k}\Omega`, `\,\text{pF}`, `^\circ`.
+
+    The unit ("" for none), the column at which it begins, and the position after it. What has a subscript is no
+    unit, nor what `is_name` says is the name of a symbol.
+    """
+    unit, column = "", position + 1
+    while True:
+        start = _after_space(text, position)
+        found = _PIECE.match(text, start)
+        piece = _unit_piece(found) if found is not None else ""
+        if found is None or not _UNIT.fullmatch(piece) or (not unit and is_name(piece)):
+            return unit, column, position
+        if text.startswith("_", _after_space(text, found.end())):
+            return unit, column, position
+        column = column if unit else start + 1
+        unit, position = unit + piece, found.end()
+
+
+def _after_space(text: str, position: int) -> int:
+    found = _SPACE.match(text, position)
+    return found.end() if found is not None else position
+
+
+def _unit_piece(found: re.Match[str]) -> str:
+    if found["upright"] is not None:
+        return _INSIDE.sub(
+            lambda inner: _UNIT_WORDS.get(inner[1], f"\\{inner[1]}") if inner[1] else "", found["upright"]
+        )
+    return "°" if found["circle"] else _UNIT_WORDS[found["word"]] if found["word"] else found["sign"]

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import random
 import time
+import tracemalloc
 from pathlib import Path
 
 import pytest
@@ -68,12 +69,58 @@ def test_ten_thousand_random_texts_end_in_a_tree_or_a_clear_error(stage: Stage) 
     assert time.monotonic() - begun < 60
 
 
-@pytest.mark.parametrize(
-    "opening", ["(", "{", "-", "sqrt(", r"\frac{", r"\left(", "|", "g_{", r"\sqrt{", "abs(-"]
-)
-@pytest.mark.parametrize("many", [65, 3000])
+OPENINGS = [
+    "(", "{", "-", "sqrt(", r"\frac{", r"\left(", "|", "g_{", r"\sqrt{", "abs(-", r"\sqrt ", r"\frac", r"\frac1", "^",
+    "R_L^", r"\left|", r"\left\{", r"\bigl[", r"\lvert ", "√", r"\sqrt[3]", r"g_\text{", "g_\\",
+]  # fmt: skip
+
+
+@pytest.mark.parametrize("opening", OPENINGS)
+@pytest.mark.parametrize("many", [65, 1800])
 def test_deep_nesting_is_refused(stage: Stage, opening: str, many: int) -> None:
     assert outcome(stage, opening * many + "RL") == "error"
+    assert outcome(stage, "{}" + opening * many + "RL") == "error"  # as LaTeX
+
+
+def test_long_random_texts_take_bounded_time_and_memory(stage: Stage) -> None:
+    draw = random.Random(20261202)
+    tracemalloc.start()
+    for number in range(120):
+        few = draw.sample(PIECES, draw.randint(1, 3))  # the fewer, the further the reading goes
+        text = "".join(draw.choice(few) for _ in range(20_000))[: 19_990 - number]
+        begun = time.monotonic()
+        outcome(stage, text)
+        assert time.monotonic() - begun < 5, text[:60]
+    assert tracemalloc.get_traced_memory()[1] < 200e6
+    tracemalloc.stop()
+
+
+@pytest.mark.parametrize(
+    "unit",
+    [
+        "1 ",
+        r"1\,",
+        r"\pi ",
+        r"\pi",
+        "a_",
+        "aa_",
+        r"1\text{",
+        "g_m1 ",
+        "R_L2 ",
+        "1 k",
+        r"\frac12+",
+        "||",
+        "²",
+        "1e9",
+    ],
+)
+@pytest.mark.parametrize("after", ["", "{}"])
+def test_no_text_takes_time_by_the_square_of_its_length(stage: Stage, unit: str, after: str) -> None:
+    begun = time.monotonic()
+    outcome(stage, (unit * 19_000)[:19_990] + after)
+    outcome(stage, "1" + " " * 19_000 + after)
+    outcome(stage, "g_{" + "m" * 19_000 + "}")
+    assert time.monotonic() - begun < 5
 
 
 @pytest.mark.parametrize(

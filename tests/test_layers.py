@@ -21,6 +21,7 @@ GROUND_FLOOR = (
     "formula_algebras",
     "formula_arrays",
     "formula_scan",
+    "formula_latex_names",
     "formula_latex",
     "formula",
 )
@@ -34,6 +35,7 @@ HEAVY = (
     "scipy",
     "matplotlib",
     "contourpy",
+    "distributed",
     "lcapy",
     "tree_sitter",
     "tree_sitter_toml",

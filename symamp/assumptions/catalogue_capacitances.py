@@ -122,6 +122,7 @@ def _bypasses(view: View, name: str) -> bool:
 def _compared(view: View, names: list[str]) -> Iterator[Proposal]:
     """Capacitances against one another, the smaller at the bias point against the larger first."""
     few = len(names) <= _FEW
+    yield from _against_all(view, names)
     later = []
     for one, other in permutations(names, 2):
         if not few and not _meet(view.capacitances[one], view.capacitances[other]):
@@ -132,6 +133,18 @@ def _compared(view: View, names: list[str]) -> Iterator[Proposal]:
         else:
             later.append(is_small(one, other))
     yield from later
+
+
+def _against_all(view: View, names: list[str]) -> Iterator[Proposal]:
+    """All those of devices against one that is a part; one against all others that it meets."""
+    bare = [parameter.name for parameter in _device_parameters(view)]
+    for name in names if bare else ():
+        if view.own(name):
+            yield is_small(bare, name, f"the capacitances of the devices are small against {name}")
+    for name in names if len(names) > 2 else ():
+        others = [n for n in names if n != name and _meet(view.capacitances[name], view.capacitances[n])]
+        if len(others) > 1:
+            yield is_small(name, others)
 
 
 def _meet(one: Ends, other: Ends) -> bool:

@@ -16,7 +16,7 @@ _FEW = 4  # devices up to which any two may be a pair; beyond, they share a gate
 _COMPARED = (
     ("gds", "gm", "gds is small against gm"),
     ("gmb", "gm", "gmb is small against gm"),
-    ("gpi", "gm", "gpi is small against gm: beta is large"),
+    ("gpi", "gm", "beta is large"),
     ("go", "gm", "go is small against gm"),
     ("go", "gpi", "go is small against gpi"),
     ("gds", "gmb", "gds is small against gmb"),

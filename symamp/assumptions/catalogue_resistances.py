@@ -45,18 +45,19 @@ def _both_ways(view: View, one: str, other: str, worth: list[str]) -> Iterator[P
 def _times_gm(view: View) -> Iterator[Proposal]:
     """gm·R at every terminal of a device: large, or small; of a resistor between source and ground: degeneration."""
     for gm in view.transconductors:
+        loads = [r for r in view.resistors if r.meets(gm.control) or r.meets(gm.out)]
+        if len(loads) > 1:
+            products = [f"{gm.symbol}*{r.text}" for r in loads]
+            yield is_small("1", products, f"{' and '.join(products)} are large")
+    for gm in view.transconductors:
         for resistor in view.resistors:
             if not any(resistor.meets(node) for node in (gm.control, gm.common, gm.out)):
                 continue
             product = f"{gm.symbol}*{resistor.text}"
             at_source = resistor.meets(gm.common) and gm.common not in view.shorts
-            words = f"degeneration by {resistor.text}" if at_source else product
-            yield is_small(
-                "1", product, f"{words} is large" + (f": {product} against 1" if at_source else "")
-            )
-            yield is_small(
-                product, "1", f"{words} is small" + (f": {product} against 1" if at_source else "")
-            )
+            words = f"degeneration of {gm.label} by {resistor.text}" if at_source else product
+            yield is_small("1", product, f"{words} is large")
+            yield is_small(product, "1", f"{words} is small")
 
 
 def _limits(view: View) -> Iterator[Proposal]:

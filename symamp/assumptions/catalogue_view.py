@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from fractions import Fraction
 from functools import cached_property
 from math import isfinite, pi
@@ -61,7 +61,6 @@ class View:
     concerned: frozenset[str]
     exact: Response | None = None
     without: tuple[str, ...] = ()
-    _seen: dict[Ends, float | None] = field(default_factory=dict, compare=False, repr=False)
 
     @classmethod
     def of(cls, stage: Stage, exact: Response | None) -> View:
@@ -170,7 +169,7 @@ class View:
     def reactance_over(self, name: str) -> float | None:
         """|Z| of a capacitance over that of what stands in series with it, where the response peaks; infinite at DC."""
         value = self.value(name)
-        if value is None or self._middle is None or self.exact is None:
+        if value is None or self._middle is None or self.peak is None:
             return None
         if not self.peak:
             return float("inf")
@@ -180,13 +179,13 @@ class View:
         return float(abs(own * (1 / seen - 1 / own)))
 
     @cached_property
-    def peak(self) -> float:
-        """The frequency in Hz at which the response is largest; 0 where it is not known."""
-        if self.exact is None or self.exact.missing:
-            return 0.0
+    def peak(self) -> float | None:
+        """The frequency in Hz at which the response is largest; None where it is not known."""
+        if self.exact is None or self.exact.missing or not self.exact.expanded:
+            return None
         with np.errstate(all="ignore"):
             found = float(np.real(self.exact.bias_figures.peak_frequency[0]))
-        return found if isfinite(found) else 0.0
+        return found if isfinite(found) else None
 
     @cached_property
     def time_constants(self) -> dict[str, float]:

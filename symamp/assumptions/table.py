@@ -18,6 +18,7 @@ from symamp.formula import (
     Call,
     Dimension,
     Node,
+    Number,
     Pi,
     Power,
     dimension_of,
@@ -159,6 +160,9 @@ class TableReader:
             if any(isinstance(step, Call | Pi) or _fractional(step) for step in walk(node)):
                 remedy = "set takes + - * / || and whole powers of symbols and numbers"
                 raise StageError(f"{quoted(text)} is not rational", remedy)
+            if any(isinstance(step, Number) and step.unit in ("dB", "deg") for step in walk(node)):
+                problem = f"{quoted(text)} is in decibels or degrees, and a symbol's value never is"
+                raise StageError(problem, f"write a plain factor, such as set = {{ {name} = 2 }}")
             found = dimension_of(node, lambda used: unit_of(self.stage, used))
         except InputError as error:
             raise error.at(key=f"set.{name}") from None

@@ -30,6 +30,9 @@ def read_formula(stage: Stage, text: str) -> Node:
         raise ReadError(f"{quoted(text)} is no formula", 'write it as text, such as "-gm1*(ro1 || RL)"')
     if len(text) > LONGEST:
         raise ReadError(f"a formula of {len(text)} characters", f"at most {LONGEST} can be read")
+    if "=" in text:
+        problem = '"=" has no meaning in a formula'
+        raise error_at(text, text.index("=") + 1, problem, "write what stands on its right alone")
     known = _Names(stage)
     if is_latex(text):
         return parse_tokens(text, scan_latex(text, known.of_latex, known.remedy))

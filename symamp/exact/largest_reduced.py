@@ -8,7 +8,7 @@ quantities at all reference points, and not by what was dropped.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -78,11 +78,7 @@ def reduced_response(
     """
     _refuse_shared(nested, quotients)
     search = Search(nested, values, points, quotients, rename)
-    if not (np.isfinite(search.exact).all() and search.exact.all()):
-        raise StageError(
-            "a quotient of coefficients is zero or infinite at one of the reference points",
-            "ask for coefficients that the response has, at points at which they do not vanish",
-        )
+    _refuse_no_value(search)
     apart = search.error({})
     if not apart <= within:
         raise StageError(
@@ -107,6 +103,56 @@ def reduced_response(
         assert trouble is not None
         raise trouble
     return best
+
+
+def reduced_over(
+    nested: Nested,
+    symbols: Mapping[str, Symbol],
+    values: Mapping[str, Any],
+    points: int,
+    quotients: Sequence[Quotient] = (AT_DC,),
+    *,
+    within: float,
+    rename: Mapping[str, str] | None = None,
+    keep: frozenset[str] = frozenset(),
+    rounds: int = 8,
+) -> Reduced:
+    """The same at many points: a form is found at few of them, and those at which it is worst are added.
+
+    The errors are those over all `points`; they are larger than `within` where that was not reached in so many
+    rounds. The first point is the first reference.
+    """
+    all_points = Search(nested, values, points, quotients, rename)
+    _refuse_no_value(all_points)
+    references = [0]
+    best: Reduced | None = None
+    for _ in range(rounds):
+        here = {
+            name: np.asarray(value)[references] if np.ndim(value) else value for name, value in values.items()
+        }
+        found = reduced_response(
+            nested, symbols, here, len(references), quotients, within=within, rename=rename, keep=keep
+        )
+        off = _Reduction(nested, symbols, all_points, rename).off(found.form)
+        errors = off.max(axis=1)
+        found = replace(found, error=float(errors.max()), errors=tuple(map(float, errors)))
+        if best is None or found.error < best.error:
+            best = found
+        if found.error <= within:
+            break
+        for row in off:
+            references.append(int(row.argmax()))
+        references = list(dict.fromkeys([*references, int(off.max(axis=0).argmax())]))
+    assert best is not None
+    return best
+
+
+def _refuse_no_value(search: Search) -> None:
+    if not (np.isfinite(search.exact).all() and search.exact.all()):
+        raise StageError(
+            "a quotient of coefficients is zero or infinite at one of the reference points",
+            "ask for coefficients that the response has, at points at which they do not vanish",
+        )
 
 
 def _refuse_shared(nested: Nested, quotients: Sequence[Quotient]) -> None:
@@ -218,15 +264,22 @@ class _Reduction:
                 totals[SIDES[i], power] = total
         return terms, totals
 
-    def _errors(self, totals: Mapping[Coefficient, Any]) -> np.ndarray:
-        """The worst error of each quotient over the points; infinite where it has no value."""
+    def off(self, form: Expanded) -> np.ndarray:
+        """The error of each quotient at each point; infinite where it has no value."""
+        return self._off(self._values(form)[1])
+
+    def _off(self, totals: Mapping[Coefficient, Any]) -> np.ndarray:
         found = []
         for q, exact in zip(self.search.quotients, self.search.exact, strict=True):
             scale = float(self.nested.scale) ** ((q.above[0] == SIDES[0]) - (q.below[0] == SIDES[0]))
             with np.errstate(all="ignore"):
                 error = np.abs(totals.get(q.above, 0.0) / totals.get(q.below, np.nan) / (exact * scale) - 1)
-            found.append(np.max(np.where(np.isnan(error), np.inf, error)))
+            found.append(np.where(np.isnan(error), np.inf, error))
         return np.array(found)
+
+    def _errors(self, totals: Mapping[Coefficient, Any]) -> np.ndarray:
+        """The worst error of each quotient over the points."""
+        return np.asarray(self._off(totals).max(axis=1))
 
     def _shortened(self, form: Expanded, within: float) -> tuple[list[list[fmpz_mpoly]], int]:
         """The coefficients without the terms that may go, the least first; and how many went."""

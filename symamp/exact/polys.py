@@ -158,7 +158,8 @@ def lowest_terms(
 ) -> tuple[fmpz_mpoly, fmpz_mpoly]:
     """The same ratio with nothing common left, and most terms of the denominator positive.
 
-    `apart` says that both are known to share no more than a monomial and an integer. ZeroDivisionError where the denominator is zero.
+    `apart` says that both are known to share no more than a monomial and an integer. ZeroDivisionError where the
+    denominator is zero.
     """
     context = denominator.context()
     if denominator.is_zero():

@@ -12,6 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 from functools import cached_property, reduce
 
 from flint import fmpz_mpoly, fmpz_mpoly_ctx
@@ -109,6 +110,12 @@ class Comparison:
             *_ratios(self.left_above, self.common, ABOVE),
             *_ratios(self.left_below, self.common, BELOW),
         )
+
+    @property
+    def work(self) -> int:
+        """How many terms are gone through when the ratios are listed: of what is common, for each left over."""
+        left = sum(len(p) for side in (self.left_above, self.left_below) for p in side.values())
+        return left * len(self.common)
 
     @property
     def identity(self) -> bool:
@@ -219,12 +226,33 @@ def _ratios(left: ByPower, common: fmpz_mpoly, side: str) -> Iterable[Tacit]:
     sign = -1 if _mostly_negative(below) else 1
     context = common.context()
     terms = _by_monomial({k: p / shared for k, p in left.items()})
+    whole = {tuple(int(e) for e in m): int(c) for m, c in below.terms()}
+    multiple = _multiple(terms, whole)
+    if multiple:  # all that is common once more: a factor that is wrong, of whatever many terms
+        one = context.constant(1)
+        yield Tacit(one * multiple.numerator, one * multiple.denominator, side, {})
     for monomial, powers in sorted(terms.items(), reverse=True):
-        total = sum(powers.values())
+        total = sum(powers.values()) - multiple * whole.get(monomial, 0)
+        if multiple and not total:
+            continue
         if not total:  # of two signs at two powers, alike in size: a term at x = 1 it is not
-            total = max(powers.values())
-        shares = {k: c / total for k, c in powers.items()}
-        yield Tacit(*lowest_terms(context.from_dict({monomial: sign * total}), sign * below), side, shares)
+            total = Fraction(max(powers.values()))
+        shares = {k: float(c / total) for k, c in powers.items()}
+        numerator = context.from_dict({monomial: sign * Fraction(total).numerator})
+        yield Tacit(*lowest_terms(numerator, sign * Fraction(total).denominator * below), side, shares)
+
+
+def _multiple(terms: _Terms, common: Mapping[tuple[int, ...], int]) -> Fraction:
+    """The largest r for which r·common, term by term, is part of these terms; 0 where there is none."""
+    if len(common) > len(terms):
+        return Fraction(0)
+    ratios = []
+    for monomial, coefficient in common.items():
+        powers = terms.get(monomial)
+        if powers is None:
+            return Fraction(0)
+        ratios.append(Fraction(sum(powers.values()), coefficient))
+    return max(Fraction(0), min(ratios))
 
 
 def _mostly_negative(polynomial: fmpz_mpoly) -> bool:

@@ -42,6 +42,10 @@ class Bank:
         self._given_exactly: Any = None
         self._fractions: list[fmpq] = []
 
+    def __getstate__(self) -> dict[str, Any]:
+        """What travels to another process: how values are worked out, without the last points' values."""
+        return {**Bank().__dict__, "_worth": self._worth}
+
     def place(self, polynomial: fmpz_mpoly) -> int:
         """The number of a polynomial in the bank; equal ones have one number."""
         key = poly_key(polynomial)

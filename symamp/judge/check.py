@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from concurrent.futures import Executor
 
 import numpy as np
 
@@ -25,6 +26,7 @@ from symamp.judge.proving import Prover
 from symamp.judge.span_errors import SpanFigure
 from symamp.judge.verdict import WRONG, Check, Condition, Judged, Way
 from symamp.judge.verdict_words import verdict_of
+from symamp.span.executing import Engine
 
 _Figures = Sequence[SpanFigure | None]
 
@@ -37,16 +39,18 @@ def make_check(
     seed: int = SEED,
     prove: bool = True,
     progress: Progress | None = None,
+    executor: Executor | Engine | None = None,
 ) -> Check:
     """The verdicts on all claims of a stage, or on those given.
 
     `points` Sobol points are drawn from a box with that seed; with `prove` errors are then proved where a proof ends
-    within its budget. Raises StageError where there is no claim, or a
-    bias value is missing; ReadError where a formula joins unlike units.
+    within its budget. An executor, or an engine of `span.workers`, looks at the points, with the same bits. Raises
+    StageError where there is no claim, or a bias value is missing; ReadError where a formula joins unlike units; and
+    as `claims_over_span`.
     """
     examined = examine(stage, claims)
     alike = [each for each in examined if not each.mismatch]
-    span = claims_over_span(stage, [each.table for each in alike], points, seed, progress)
+    span = claims_over_span(stage, [each.table for each in alike], points, seed, progress, executor)
     prover = Prover.of(stage) if prove else None
     figures: dict[int, _Figures] = {}
     for each, found in zip(alike, span.figures if span else (), strict=False):
@@ -101,6 +105,7 @@ def judged(claim: Examined, figures: _Figures = ()) -> Judged:
         modulus=isinstance(claim.error, complex) or (over is not None and over.modulus),
         why_not=claim.why_missing,
         remarks=(*claim.remarks, *_cancelling(claim, conditions)),
+        symbols=claim.symbols,
     )
 
 

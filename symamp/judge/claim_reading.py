@@ -47,7 +47,7 @@ def claim_of(stage: Stage, text: str, within: str) -> Claim:
     try:
         response, quantity = _about(stage, about.strip())
         node = read_formula(stage, formula.strip())
-        decibels = _in_decibels(quantity, node)
+        decibels = _in_decibels(response, quantity, node)
     except InputError as error:
         raise error.at(key="--claim") from None
     amount, unit = read_within(within, quantity, "--within")
@@ -106,7 +106,7 @@ def _from_table(stage: Stage, raw: Mapping[str, Any], key: str) -> Claim:
         raise StageError(f"formula is {quoted(formula)}", "write it as text", key="formula")
     try:
         node = read_formula(stage, str(formula))
-        decibels = _in_decibels(quantity, node)
+        decibels = _in_decibels(response, quantity, node)
     except InputError as error:
         raise error.at(key="formula") from None
     amount, unit = read_within(raw["within"], quantity)
@@ -129,11 +129,11 @@ def _about(stage: Stage, raw: Any) -> tuple[str, Quantity]:
     return response, parse_quantity(rest)
 
 
-def _in_decibels(quantity: Quantity, node: Node) -> bool:
+def _in_decibels(response: str, quantity: Quantity, node: Node) -> bool:
     """Whether the formula of a quantity in dB is in dB itself; a bare number would read both ways."""
     numbers = [step for step in walk(node) if isinstance(step, Number)]
     other = next((step.unit for step in numbers if step.unit in ("dB", "deg")), "")
-    if quantity.face == "db" or quantity.name == "gain_margin":
+    if (quantity.face == "db" or quantity.name == "gain_margin") and other != "deg":
         if any(step.unit == "dB" for step in numbers):
             return True
         if quantity.face == "db" and all(isinstance(step, Number) or _joins(step) for step in walk(node)):
@@ -142,9 +142,20 @@ def _in_decibels(quantity: Quantity, node: Node) -> bool:
                 'write "40 dB"; a number without dB is the size itself, so claim that without .db',
             )
         return quantity.name == "gain_margin"
-    if other == "dB" or (other == "deg" and not in_decibels_or_degrees(quantity)):
-        raise ReadError(f"{quantity.text} is not in {other}", f"claim {quantity.text}.{other.lower()[:3]}")
+    own = unit_of(quantity, "") if in_decibels_or_degrees(quantity) else ""
+    if other and other != own:
+        raise ReadError(f"{quantity.text} is not in {other}", _with_face(response, quantity, own, other))
     return False
+
+
+def _with_face(response: str, quantity: Quantity, own: str, other: str) -> str:
+    """The way out for a formula in dB or degrees of a quantity that is not in them."""
+    if own or quantity.face is not None:
+        return f"write it in {own}" if own else f"write it in the unit of {quantity.text}"
+    try:
+        return f"claim {response}.{parse_quantity(f'{quantity.text}.{other.lower()[:3]}').text}"
+    except InputError:
+        return f"write it in the unit of {quantity.text}"
 
 
 def _joins(step: Node) -> bool:

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
+from concurrent.futures import Executor
 from dataclasses import dataclass
 
 import numpy as np
@@ -10,10 +11,15 @@ import numpy as np
 from symamp.circuit.stage import Stage
 from symamp.judge.claim_errors import ClaimTable, each_at
 from symamp.judge.errors_at import Progress
-from symamp.judge.span_errors import SpanFigure, Where, span_figure, where_in_box
-from symamp.span.extremes import Extremes
-from symamp.span.points import Box, Rows, Values
+from symamp.judge.interrupted import ErrorSoFar, SoFar, interruptible
+from symamp.judge.span_errors import SpanFigure, Where, row_chunks, row_of, span_figure, where_in_box
+from symamp.span.chunks import Chunk, cut, looked_at
+from symamp.span.executing import Engine
+from symamp.span.extremes import Extremes, Summary
+from symamp.span.points import BLOCK, Box, Rows
 from symamp.span.search import compass_search
+
+_NESTED = 1024  # bias points in a chunk where nested responses make each of them costly
 
 
 @dataclass(frozen=True)
@@ -27,52 +33,83 @@ class ClaimSpan:
 
 
 def claims_over_span(
-    stage: Stage, tables: Sequence[ClaimTable], points: int, seed: int, progress: Progress | None = None
+    stage: Stage,
+    tables: Sequence[ClaimTable],
+    points: int,
+    seed: int,
+    progress: Progress | None = None,
+    executor: Executor | Engine | None = None,
 ) -> ClaimSpan | None:
-    """The figures of all claims over the stage's span; None where it has none."""
+    """The figures of all claims over the stage's span; None where it has none.
+
+    With an executor the points are looked at through it, and the figures are the same to the last bit. Raises
+    Interrupted, which says what it had, where the run is interrupted; WorkerError where workers die again and again.
+    """
     if stage.span.empty or not tables:
         return None
-    look = _Look(tables)
-    if stage.span.table is not None:
-        total = len(stage.span.table.rows)
-        for count, values in Rows(stage).blocks():
-            look.take(values, np.arange(look.done, look.done + count, dtype=float).reshape(1, -1))
-            if progress:
-                progress("bias points", look.done, total)
-        figures = look.figures(lambda place: {"row": int(place[0]) + 1})
-        return ClaimSpan(figures, total, None, "every row of the table")
-    box = Box.of(stage)
-
-    def around(u: np.ndarray) -> None:
-        look.take(box.values(u), u)
-
-    for u in box.blocks(points, seed):
-        around(u)
-        if progress:
-            progress("bias points", look.done, max(look.done, box.count(points)))
-    compass_search([extremes for extremes, _ in look.errors()], around, box.dimensions)
-    return ClaimSpan(look.figures(where_in_box(box)), look.done, seed, box.method)
+    box = None if stage.span.table is not None else Box.of(stage)
+    size = _NESTED if any(not table.exact.expanded for table in tables) else BLOCK
+    sweep = _Sweep(_Figures(tuple(tables), box), progress)
+    with interruptible(sweep.so_far):
+        if box is None:
+            rows = Rows(stage, size)
+            sweep.total = rows.count
+            sweep.take(row_chunks(rows), executor)
+            return ClaimSpan(sweep.figures(row_of), sweep.total, None, "every row of the table")
+        sweep.total = box.count(points)
+        sweep.take((chunk for u in box.blocks(points, seed) for chunk in cut("", u, size)), executor)
+        # The search takes a few points at a time, each of which waits for those before it.
+        compass_search(sweep.errors, lambda u: sweep.take([Chunk("", u)]), box.dimensions)
+    return ClaimSpan(sweep.figures(where_in_box(box)), sweep.done, seed, box.method)
 
 
-class _Look:
+@dataclass(frozen=True)
+class _Figures:
+    """Works out the rows of every table, at points of the box or at values that are given."""
+
+    tables: tuple[ClaimTable, ...]
+    box: Box | None
+
+    def at(self, chunk: Chunk) -> list[Summary]:
+        """For each table a summary of its error, and one of its ratios (see `Look`)."""
+        values = chunk.values
+        if values is None:
+            assert self.box is not None
+            values = self.box.values(chunk.places)
+        return [
+            Summary.of(part)
+            for _, figures in each_at(self.tables, values, chunk.points)
+            for part in (figures[:1], figures[1:].real)
+        ]
+
+
+class _Sweep:
     """Takes in bias points, and keeps the extremes of every row of every table."""
 
-    def __init__(self, tables: Sequence[ClaimTable]) -> None:
-        self.tables = tables
-        self._errors = [Extremes(1) for _ in tables]
-        self._ratios = [Extremes(table.rows - 1) for table in tables]
-        self.done = 0
+    def __init__(self, look: _Figures, progress: Progress | None) -> None:
+        self._look, self._progress = look, progress
+        self.errors = [Extremes(1) for _ in look.tables]
+        self._ratios = [Extremes(table.rows - 1) for table in look.tables]
+        self.done, self.total = 0, 0
 
-    def errors(self) -> list[tuple[Extremes, ClaimTable]]:
-        """The extremes of the errors, from which a search goes on."""
-        return list(zip(self._errors, self.tables, strict=True))
+    def take(self, chunks: Iterable[Chunk], executor: Executor | Engine | None = None) -> None:
+        parts = [part for both in zip(self.errors, self._ratios, strict=True) for part in both]
+        for chunk, summaries in looked_at(self._look, chunks, executor):
+            for extremes, summary in zip(parts, summaries, strict=True):
+                extremes.merge(summary, chunk.places)
+            self.done += chunk.points
+            if self._progress:
+                self._progress("bias points", self.done, max(self.done, self.total))
 
-    def take(self, values: Values, places: np.ndarray) -> None:
-        self.done += places.shape[1]
-        for number, figures in each_at(self.tables, values, places.shape[1]):
-            self._errors[number].take(figures[:1], places)
-            if figures.shape[0] > 1:
-                self._ratios[number].take(figures[1:].real, places)
+    def so_far(self) -> SoFar:
+        """What there is so far: the errors."""
+        found = []
+        for extremes, table in zip(self.errors, self._look.tables, strict=True):
+            extreme = extremes.result(0)
+            if extreme is not None:
+                about, quantity = table.claim.about, table.claim.quantity
+                found.append(ErrorSoFar(about, quantity, extreme.least, extreme.greatest))
+        return SoFar(self.done, self.total, tuple(found))
 
     def figures(self, where: Callable[[np.ndarray], Where]) -> tuple[tuple[SpanFigure | None, ...], ...]:
         return tuple(
@@ -81,5 +118,5 @@ class _Look:
                 for extremes in (errors, ratios)
                 for row in range(extremes.rows)
             )
-            for errors, ratios in zip(self._errors, self._ratios, strict=True)
+            for errors, ratios in zip(self.errors, self._ratios, strict=True)
         )

@@ -27,6 +27,7 @@ from symamp.judge.claimed import NotRational, claimed_ratio, claimed_symbols, cl
 
 _RATIONAL = ("dc", "hf", "a", "b")
 _BANDS = ("bandwidth", "gain_bandwidth", "unity_gain_frequency")
+_MOST_WORK = 200_000  # terms gone through for the list of ratios; about a second
 _LARGEST = 6000  # terms of a balance above which it is not multiplied out
 
 NO_FORMULA = "this quantity has no formula that could be compared term by term"
@@ -144,6 +145,8 @@ class _Balancer:
         return Balanced(None, why, self.taken, tuple(self.remarks))
 
     def _some(self, balance: Balance, whole: bool = True) -> Balanced:
+        if balance.comparison.work > _MOST_WORK:
+            raise NotRational("too many terms are left over to list them")
         return Balanced(balance, "", self.taken, tuple(self.remarks), whole)
 
     def _sign(self, ratio: PolyRatio) -> int:

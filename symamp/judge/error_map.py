@@ -46,12 +46,14 @@ def error_map(claim: Examined, x: str, y: str, steps: int = STEPS) -> ErrorMap:
     """The map over two symbols or aliases: over the sides of the span that they have, else a decade either way.
 
     Followers of the two keep their ratio; all else stays at the bias point. Raises StageError for an unknown
-    name, for two names of one symbol, for one without a positive bias value and no side, and for a wrong claim.
+    name, for two names of one symbol or of one that follows the other, for one without a positive bias value and
+    no side, and for a wrong claim.
     """
     stage = claim.known.stage
     if claim.mismatch:
         raise StageError(f"the claim is wrong: {claim.mismatch}", "there is no error to map", key="--map")
     axes = [_axis(stage, name, steps) for name in (x, y)]
+    _apart(stage, x, y)
     grid = np.meshgrid(axes[0].values, axes[1].values)
     given = {axis.name: values.ravel() for axis, values in zip(axes, grid, strict=True)}
     try:
@@ -63,6 +65,25 @@ def error_map(claim: Examined, x: str, y: str, steps: int = STEPS) -> ErrorMap:
     modulus = bool(np.iscomplexobj(found) and (np.nan_to_num(found).imag != 0).any())
     shown = np.asarray(np.abs(found) if modulus else found.real, dtype=float)
     return ErrorMap(claim.claim, axes[0], axes[1], shown.reshape(steps, steps), modulus)
+
+
+def _apart(stage: Stage, x: str, y: str) -> None:
+    """Raises StageError for two axes that cannot move each by itself."""
+    if x == y:
+        raise StageError(f"both axes are {x}", "name two symbols, such as --map gm1 gds1", key="--map")
+    leader = {follow.symbol: follow.leader for follow in stage.span.follows}
+    for one, other in ((x, y), (y, x)):
+        moved = set(stage.aliases.get(other, {other: 1}))
+        for symbol in stage.aliases.get(one, {one: 1}):
+            above = symbol
+            while above in leader:
+                above = leader[above]
+                if above in moved:
+                    raise StageError(
+                        f"{symbol} follows {above}, so {x} and {y} do not move each by itself",
+                        "map two symbols of which neither follows the other",
+                        key="--map",
+                    )
 
 
 def _axis(stage: Stage, name: str, steps: int) -> Axis:

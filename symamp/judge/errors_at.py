@@ -100,6 +100,21 @@ class ErrorTable:
         table._number_variants()
         return table
 
+    def bare(self, with_few: bool = False) -> ErrorTable:
+        """A copy that works out errors and is good for nothing else: small, to be sent elsewhere.
+
+        `with_few` gives it `without_shares` too.
+        """
+        base = self._variant_of[0]
+        assert base is not None
+        table = copy(self)
+        table.__dict__.pop("without_shares", None)
+        table.exact, table.approximations, table._told = self._banked[base], {}, {}
+        table.assumptions, table.variants = (), list(self._banked)
+        if with_few:
+            table.__dict__["without_shares"] = self.without_shares.bare()
+        return table
+
     def response(self, mask: int) -> Response | None:
         """The response under a set."""
         return self.approximations[mask].response

@@ -29,7 +29,7 @@ from symamp.judge.claimed import (
     claims_ring,
     wanted_dimension,
 )
-from symamp.judge.conditions import Balanced, balanced
+from symamp.judge.conditions import Balanced, balanced, symbols_of
 from symamp.judge.error_formula import ErrorFormula, error_of_ratios
 from symamp.judge.errors_at import error_of
 from symamp.judge.off import Off, unit_words, what_is_off
@@ -105,7 +105,8 @@ class Examined:
         """The words for a formula of another unit than the quantity's, or ""."""
         claimed = claimed_dimension(self.known.stage, self.claim.node)
         wanted = wanted_dimension(self.quantity, self.unit, self.exact.unit, self.claim.decibels)
-        return "" if claimed == wanted else unit_words(claimed, wanted)
+        own = "" if in_decibels_or_degrees(self.quantity) else self.unit
+        return "" if claimed == wanted else unit_words(claimed, wanted, own)
 
     @cached_property
     def claimed(self) -> float:
@@ -194,6 +195,12 @@ class Examined:
             return None
         one = balance.context.constant(1)
         return error_of_ratios(self.exact, (balance.above[0], one), (balance.below[1], one))
+
+    @cached_property
+    def symbols(self) -> frozenset[str]:
+        """The symbols that the error depends on; empty where the balance does not say."""
+        balance = self.plain.balance
+        return frozenset(symbols_of(balance)) if balance is not None and self.plain.whole else frozenset()
 
     @cached_property
     def error_ratio(self) -> PolyRatio | None:

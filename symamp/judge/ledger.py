@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from concurrent.futures import Executor
 from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Any
@@ -25,6 +26,7 @@ from symamp.judge.lost_roots import LostRoot, lost_and_new
 from symamp.judge.proving import Prover
 from symamp.judge.sets import FIGURES, names_of
 from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
+from symamp.span.executing import Engine
 from symamp.values import show_value
 
 POINTS = 4096
@@ -117,12 +119,14 @@ def make_ledger(
     seed: int = SEED,
     prove: bool = True,
     progress: Progress | None = None,
+    executor: Executor | Engine | None = None,
 ) -> Ledger:
     """The ledger of a stage: all its assumptions, or those given.
 
     `quantities` such as "gain.p1"; without any, those of `default_quantities` of every response. `points` Sobol
     points are drawn from a box with that seed; with `prove` errors are then proved where a proof ends within its
-    budget. Raises StageError where a bias value is missing or a name unknown.
+    budget. An executor, or an engine of `span.workers`, looks at the points, with the same bits. Raises StageError
+    where a bias value is missing or a name unknown, and as `span_errors`.
     """
     made = tuple(read_assumptions(stage) if assumptions is None else assumptions)
     if not made:
@@ -135,7 +139,7 @@ def make_ledger(
     asked = _asked(stage, quantities)
     notes = _Notes(list(stage.warnings), list(stage.remarks))
     tables = {name: _table(stage, name, made, wanted, notes, progress) for name, wanted in asked.items()}
-    swept = span_errors(stage, list(tables.values()), points, seed, progress)
+    swept = span_errors(stage, list(tables.values()), points, seed, progress, executor)
     prover = Prover.of(stage) if prove else None
     if swept is not None and prover is not None:
         swept = with_proofs(swept, list(tables.values()), prover)

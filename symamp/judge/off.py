@@ -158,16 +158,41 @@ def _constant_text(constant: float) -> str:
     return str(Fraction(constant).limit_denominator(1000)) if constant < 1000 else f"{constant:.6g}"
 
 
-def unit_words(claimed: Dimension, wanted: Dimension) -> str:
-    """The words for a formula of another unit than the quantity's, and what kind of factor lies between them."""
-    missing = wanted.times(claimed, -1).unit
-    have, want = (_unit_name(d) for d in (claimed, wanted))
+def unit_words(claimed: Dimension, wanted: Dimension, unit: str = "") -> str:
+    """The words for a formula of another unit than the quantity's, and what kind of factor lies between them.
+
+    `unit` is the quantity's own where it has one: rad/s and Hz are one dimension, and a reader must see which.
+    """
+    missing = _unit_name(wanted.times(claimed, -1))
+    have, want = _in_words(_unit_name(claimed)), _in_words(unit or _unit_name(wanted))
     hint = f"; a factor of {_kind(missing)} is missing or too much" if missing else ""
-    return f"the formula is in {have}, and the quantity is {want}{hint}"
+    return f"the formula is {have}, and the quantity is {want}{hint}"
+
+
+def _in_words(unit: str) -> str:
+    return f"in {unit}" if unit else "a pure number"
 
 
 def _unit_name(dimension: Dimension) -> str:
-    return dimension.unit or "a pure number"
+    """A dimension's unit as units are printed: "ohm/s", "S/s^2"; "" of a pure number. Of 1/s, which both rad/s
+    and Hz are, "1/s"."""
+    if not (dimension.siemens or dimension.volts) and dimension.seconds == -1:
+        return "1/s"
+    named = dimension.unit
+    if "*" not in named:
+        return named
+    powers = {"S": dimension.siemens, "s": dimension.seconds, "V": dimension.volts}
+    if powers["S"] < 0:
+        powers = {"ohm": -powers.pop("S"), **powers}
+    above = "·".join(_raised(name, power) for name, power in powers.items() if power > 0)
+    below = "·".join(_raised(name, -power) for name, power in powers.items() if power < 0)
+    if not below:
+        return above
+    return f"{above or '1'}/({below})" if "·" in below else f"{above or '1'}/{below}"
+
+
+def _raised(unit: str, power: Fraction) -> str:
+    return unit if power == 1 else f"{unit}^{power}" if power.denominator == 1 else f"{unit}^({power})"
 
 
 def _kind(unit: str) -> str:
@@ -176,7 +201,6 @@ def _kind(unit: str) -> str:
         "S": "a conductance",
         "F": "a capacitance",
         "s": "a time",
-        "Hz": "a frequency",
-        "rad/s": "a frequency",
+        "1/s": "a frequency",
     }
     return words.get(unit, unit)

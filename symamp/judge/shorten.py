@@ -197,7 +197,7 @@ class _Job:
         names = {a.name for a in own}
         found = list(own)
         for entry in self.known.entries(self.response):
-            if entry.assumption.name not in names:
+            if entry.plausible and entry.assumption.name not in names:
                 found.append(entry.assumption)
                 self.tables[entry.assumption.name] = entry.toml
         return found

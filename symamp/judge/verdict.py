@@ -67,7 +67,7 @@ class Judged:
 
     `root` names the pole or zero that the claim's error is taken against where that is another than the one
     claimed ("p2"). `conditions` come most harmful first; `ways` shortest first. A figure that does not exist is
-    None, and `why_not` says why of it.
+    None, and `why_not` says why of it. `symbols` are those that the error depends on; empty where that is not known.
     """
 
     claim: Claim
@@ -87,6 +87,7 @@ class Judged:
     modulus: bool = False
     why_not: str = ""
     remarks: tuple[str, ...] = ()
+    symbols: frozenset[str] = frozenset()
 
 
 @dataclass(frozen=True)

@@ -33,7 +33,7 @@ def verdict_of(claim: Examined, over: SpanFigure | None) -> tuple[str, str]:
     if claim.off is not None:
         return WRONG, _off_words(claim)
     if claim.why_missing:
-        return _without_error(claim)
+        return _without_error(claim, over)
     assert claim.error is not None
     if claim.balanced.balance is None:
         constant = _constant(claim, over)
@@ -83,8 +83,11 @@ def _off_words(claim: Examined) -> str:
     return off.words
 
 
-def _without_error(claim: Examined) -> tuple[str, str]:
-    if claim.exact_value == 0 and claim.claimed == 0:
+def _without_error(claim: Examined, over: SpanFigure | None) -> tuple[str, str]:
+    if claim.exact_value == 0 and (claim.identity or claim.claimed == 0):
+        worst = 0.0 if over is None or claim.identity else max(over.least, over.greatest, key=abs)
+        if abs(worst) > claim.claim.within * (1 + _ROUNDING):
+            return HOLDS_HERE, f"both are 0 at the bias point, and up to {_error(claim, worst)} over the span"
         return HOLDS, "both are 0"
     if claim.exact_value == 0 and math.isfinite(claim.claimed):
         return WRONG, "the exact value is 0"

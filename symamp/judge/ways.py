@@ -1,25 +1,38 @@
-"""Which named assumptions turn an exact expression into a formula (room: judge)."""
+"""Which named assumptions turn an exact expression into a formula (room: judge).
+
+Assumptions that change the network or its roots (equal, set, limits, Miller, poles) are tried in small sets, the
+frames; under each, dominance is a matter of which terms fall (`symamp.judge.ways_rows`). What is found is put to the
+engine as a set and compared with the formula as a rational function, so a way that is named is one.
+"""
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
-from itertools import combinations
+from collections.abc import Sequence
 
-from symamp.assumptions.apply import Approximator
 from symamp.assumptions.catalogue import Entry
 from symamp.assumptions.read import Assumption
-from symamp.exact.asked_quantity import Quantity
-from symamp.exact.formulas import PolyRatio, band_ratio, rational_of
-from symamp.exact.polys import held, into_ring, ring_of, with_pi
+from symamp.exact.asked_quantity import Quantity, is_root
+from symamp.exact.formulas import PolyRatio
+from symamp.exact.polys import held
 from symamp.exact.response import Response
-from symamp.judge.error_formula import partner_ratio
 from symamp.judge.verdict import Way
+from symamp.judge.ways_ground import Ground
+from symamp.judge.ways_search import BUDGET, Search
 
-_MOST_WAYS = 3
-_OWN_TRIES = 400  # sets of the stage's own assumptions
-_TRIES = 240  # sets that the catalogue is asked for, for one formula
-_LARGEST = 4  # assumptions of the catalogue together
-_BEAM = 6  # sets of one size from which larger ones are made
+_RATIONAL = ("dc", "hf", "a", "b", "p", "z")
+
+
+def ways_to(
+    exact: Response,
+    quantity: Quantity,
+    target: PolyRatio,
+    own: Sequence[Assumption],
+    *,
+    entries: Sequence[Entry] = (),
+    budget: int = BUDGET,
+) -> tuple[Way, ...]:
+    """The sets of assumptions under which a quantity is `target` exactly; see `Ways.to`."""
+    return Ways(exact, own, entries).to(quantity, target, budget=budget)
 
 
 class Ways:
@@ -27,100 +40,35 @@ class Ways:
 
     def __init__(self, exact: Response, own: Sequence[Assumption], entries: Sequence[Entry] = ()) -> None:
         self._exact = exact
-        self._own = {a.name: a for a in own}
-        self._entries = {e.name: e for e in entries if e.name not in self._own}
-        self._all = {**self._own, **{name: e.assumption for name, e in self._entries.items()}}
-        self._engine = Approximator(exact)
-        self._ratios: dict[tuple[frozenset[str], Quantity], PolyRatio | None] = {}
+        self._ground = Ground(exact, own, entries) if exact.expanded else None
 
-    def to(self, quantity: Quantity, target: PolyRatio, *, wider: bool = True) -> tuple[Way, ...]:
+    def to(
+        self, quantity: Quantity, target: PolyRatio, *, wider: bool = True, budget: int = BUDGET
+    ) -> tuple[Way, ...]:
         """The shortest sets under which the quantity is `target` exactly; of the stage's own, else of the catalogue.
 
-        Without `wider` the catalogue is not asked. Empty where none is found, or the response is not written out.
+        `target` is the quantity without a face: of a pole or zero the root s itself. `equal` and `set` assumptions
+        act on it too. Of the stage's own assumptions all sets are looked at (up to a count) and none that holds
+        another is listed; of the catalogue, what the bias point speaks for comes first. At most three. `budget`
+        counts networks that the catalogue makes of the stage, so that the result does not depend on the machine.
+        Without `wider` the catalogue is not asked. Empty where none is found, where the response is not written
+        out, and where the exact quantity is `target` already.
         """
-        if not self._exact.expanded:
+        if self._ground is None or quantity.name not in _RATIONAL or quantity.face is not None:
             return ()
-        found = self._among_own(quantity, target)
+        if "pi" in held(*target) or target[0].is_zero() or (is_root(quantity) and self._exact.missing):
+            return ()
+        search = Search(self._ground, quantity, target)
+        if search.holds(frozenset()):
+            return ()
+        found = search.among_own()
         if not found and wider:
-            found = self._among_all(quantity, target)
+            found = search.among_all(budget)
         return tuple(self._way(names) for names in found)
 
     def _way(self, names: frozenset[str]) -> Way:
-        ordered = tuple(name for name in self._all if name in names)
-        lines = tuple(self._entries[name].toml for name in ordered if name in self._entries)
+        assert self._ground is not None
+        ordered = tuple(sorted(names, key=self._ground.order.__getitem__))
+        entries = self._ground.entries
+        lines = tuple(entries[name].toml for name in ordered if name in entries)
         return Way(ordered, not lines, lines)
-
-    def _among_own(self, quantity: Quantity, target: PolyRatio) -> list[frozenset[str]]:
-        found: list[frozenset[str]] = []
-        for tries, names in enumerate(_subsets(list(self._own))):
-            if tries >= _OWN_TRIES or len(found) >= _MOST_WAYS:
-                break
-            if not any(shorter <= names for shorter in found) and self._reaches(names, quantity, target):
-                found.append(names)
-        return found
-
-    def _among_all(self, quantity: Quantity, target: PolyRatio) -> list[frozenset[str]]:
-        """From sets of one size to larger ones, the simplest results first, while no symbol of the target is lost."""
-        wanted = held(*target)
-        found: list[frozenset[str]] = []
-        level = [frozenset[str]()]
-        tries = 0
-        seen: set[frozenset[str]] = set()
-        for _ in range(_LARGEST):
-            made: list[tuple[int, int, frozenset[str]]] = []
-            for names in level:
-                before = self._size(names, quantity)
-                for name in self._all:
-                    wider = names | {name}
-                    if wider in seen or len(wider) == len(names) or tries >= _TRIES:
-                        continue
-                    seen.add(wider)
-                    tries += 1
-                    ratio = self._ratio(wider, quantity)
-                    if ratio is None or not wanted <= held(*ratio):
-                        continue
-                    if _same(self._exact, ratio, target):
-                        found.append(wider)
-                        continue
-                    after = len(ratio[0]) + len(ratio[1])
-                    if after < before:
-                        made.append((len(held(*ratio) - wanted), after, wider))
-            if len(found) >= 1:
-                return found[:_MOST_WAYS]
-            made.sort(key=lambda item: item[:2])
-            level = [names for *_, names in made[:_BEAM]]
-        return found
-
-    def _size(self, names: frozenset[str], quantity: Quantity) -> int:
-        ratio = self._ratio(names, quantity)
-        return 10**9 if ratio is None else len(ratio[0]) + len(ratio[1])
-
-    def _reaches(self, names: frozenset[str], quantity: Quantity, target: PolyRatio) -> bool:
-        ratio = self._ratio(names, quantity)
-        return ratio is not None and _same(self._exact, ratio, target)
-
-    def _ratio(self, names: frozenset[str], quantity: Quantity) -> PolyRatio | None:
-        key = (names, quantity)
-        if key not in self._ratios:
-            made = self._engine.under([self._all[name] for name in self._all if name in names]).response
-            if made is None:
-                self._ratios[key] = None
-            elif made is self._exact:
-                self._ratios[key] = rational_of(made, quantity) or band_ratio(made, quantity)
-            else:
-                self._ratios[key] = partner_ratio(self._exact, made, quantity)
-        return self._ratios[key]
-
-
-def _subsets(names: Sequence[str]) -> Iterator[frozenset[str]]:
-    """All sets of one and more, small ones first."""
-    for size in range(1, len(names) + 1):
-        for chosen in combinations(names, size):
-            yield frozenset(chosen)
-
-
-def _same(exact: Response, one: PolyRatio, other: PolyRatio) -> bool:
-    """Whether two ratios are one rational function."""
-    context = with_pi(ring_of(exact.stage.symbols, held(*one, *other) - {"pi"}))
-    (a, b), (c, d) = (tuple(into_ring(p, context) for p in ratio) for ratio in (one, other))
-    return bool(a * d == c * b)

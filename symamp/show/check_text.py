@@ -14,7 +14,8 @@ from symamp.show.words import error_words, ratio_words, value_words, where_words
 from symamp.values import show_value
 
 _STYLES = {HOLDS: "bold green", HOLDS_HERE: "bold yellow"}  # colour supports the word
-_ERROR_LINES = 8
+_EXACT_LINES = 8  # of a formula that is shown
+_ERROR_LINES = 6
 _SYMBOLS = 4
 _MOST = 8  # conditions that are listed
 _SLIGHT = 0.02  # of the error that is allowed: what adds less is summed up
@@ -102,7 +103,11 @@ def _figures(page: Page, judged: Judged, units: Mapping[str, str], told: set[str
     """Exact and claimed value, and the error as a formula; the exact formula with the first claim about it."""
     about = f"{judged.claim.about} {judged.root}"
     if judged.formula_exact is not None and about not in told:
-        page.block(formula_lines(judged.formula_exact, page.width - 4, label="exact"), indent=2)
+        lines = formula_lines(judged.formula_exact, page.width - 4, label="exact")
+        if len(lines) <= _EXACT_LINES:
+            page.block(lines, indent=2)
+        else:
+            page.line("  the exact formula is too long to be read here; derive and --json have it")
     told.add(about)
     exact, claimed = (value_words(value, judged.unit) for value in (judged.exact, judged.claimed))
     page.prose(f"exact {exact}, claimed {claimed}", indent=2)
@@ -130,7 +135,8 @@ def _over(judged: Judged, over: SpanFigure, units: Mapping[str, str]) -> str:
     if least == greatest:
         return f"{least} everywhere ({how}{modulus})"
     worst = over.where_greatest if abs(over.greatest) >= abs(over.least) else over.where_least
-    place = where_words(_sides(worst, units), units, _SYMBOLS)
+    sides = {n: u for n, u in units.items() if not judged.symbols or n in judged.symbols}
+    place = where_words(_sides(worst, sides), units, _SYMBOLS)
     return f"{least} to {greatest} ({how}{modulus}), worst at {place}"
 
 

@@ -27,6 +27,7 @@ from symamp.show.json_parts import approximation_json, head, ledger_json, respon
 from symamp.show.ledger_text import ledger_page
 from symamp.show.page import Page, console_width
 from symamp.show.running import Bar, placed, print_json
+from symamp.span.workers import workers_of
 from symamp.values import read_frequency
 
 
@@ -117,11 +118,21 @@ def _derive_json(stage: Stage, found: Mapping[str, _Derived], hertz: Sequence[fl
     return result
 
 
-def ledger(file: str, quantities: Sequence[str], points: int, seed: int, as_json: bool) -> int:
+def ledger(
+    file: str,
+    quantities: Sequence[str],
+    points: int,
+    seed: int,
+    as_json: bool,
+    workers: int | None = None,
+    scheduler: str | None = None,
+) -> int:
     """`symamp ledger`."""
     stage = read_stage(file)
-    with placed(stage), Bar() as bar:
-        made = make_ledger(stage, quantities=quantities, points=points, seed=seed, progress=bar.advance)
+    with placed(stage), workers_of(workers, scheduler) as engine, Bar() as bar:
+        made = make_ledger(
+            stage, quantities=quantities, points=points, seed=seed, progress=bar.advance, executor=engine
+        )
     if as_json:
         print_json(ledger_json(made))
         return 0

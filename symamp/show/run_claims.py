@@ -21,6 +21,7 @@ from symamp.show.maps import map_of
 from symamp.show.page import Page, console_width
 from symamp.show.picture import checked_ending
 from symamp.show.running import Bar, placed, print_json
+from symamp.span.workers import workers_of
 
 
 def check(
@@ -31,12 +32,16 @@ def check(
     points: int,
     seed: int,
     as_json: bool,
+    workers: int | None = None,
+    scheduler: str | None = None,
 ) -> int:
     """`symamp check`: 1 where a claim does not hold."""
     stage = read_stage(file)
     claims = _claims(stage, texts, within, about)
-    with placed(stage), Bar() as bar:
-        found = make_check(stage, claims=claims, points=points, seed=seed, progress=bar.advance)
+    with placed(stage), workers_of(workers, scheduler) as engine, Bar() as bar:
+        found = make_check(
+            stage, claims=claims, points=points, seed=seed, progress=bar.advance, executor=engine
+        )
     if as_json:
         print_json(check_json(found))
     else:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from concurrent.futures import Executor
 from pathlib import Path
 from typing import Any
 
@@ -19,14 +20,24 @@ from symamp.show.note_model import Document
 from symamp.show.note_pictures import note_pictures
 from symamp.show.page import Page, console_width
 from symamp.show.running import Bar, placed, print_json
+from symamp.span.executing import Engine
+from symamp.span.workers import workers_of
 
 
-def note(file: str, output: str, points: int, seed: int, as_json: bool) -> int:
+def note(
+    file: str,
+    output: str,
+    points: int,
+    seed: int,
+    as_json: bool,
+    workers: int | None = None,
+    scheduler: str | None = None,
+) -> int:
     """`symamp note`."""
     check_ending(output)
     stage = read_stage(file)
-    with placed(stage), Bar() as bar:
-        document = document_of(stage, points=points, seed=seed, progress=bar.advance)
+    with placed(stage), workers_of(workers, scheduler) as engine, Bar() as bar:
+        document = document_of(stage, points=points, seed=seed, progress=bar.advance, executor=engine)
     written = write_note(document, output)
     if as_json:
         result: dict[str, Any] = head(stage, stage.warnings, stage.remarks)
@@ -42,7 +53,12 @@ def note(file: str, output: str, points: int, seed: int, as_json: bool) -> int:
 
 
 def document_of(
-    stage: Stage, *, points: int = POINTS, seed: int = SEED, progress: Progress | None = None
+    stage: Stage,
+    *,
+    points: int = POINTS,
+    seed: int = SEED,
+    progress: Progress | None = None,
+    executor: Executor | Engine | None = None,
 ) -> Document:
     """The note of a stage with all that there is to say: its ledger, its verdicts, its pictures.
 
@@ -50,9 +66,9 @@ def document_of(
     """
     ledger = check = None
     if stage.assumptions:
-        ledger = make_ledger(stage, points=points, seed=seed, progress=progress)
+        ledger = make_ledger(stage, points=points, seed=seed, progress=progress, executor=executor)
     if stage.claims:
-        check = make_check(stage, points=points, seed=seed, progress=progress)
+        check = make_check(stage, points=points, seed=seed, progress=progress, executor=executor)
     pictures = note_pictures(stage, ledger=ledger, check=check)
     return note_document(stage, ledger=ledger, check=check, pictures=pictures)
 

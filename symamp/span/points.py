@@ -146,6 +146,12 @@ class Rows:
         assert self.stage.span.table is not None
         return self.stage.span.table.columns
 
+    @property
+    def count(self) -> int:
+        """How many rows there are."""
+        assert self.stage.span.table is not None
+        return len(self.stage.span.table.rows)
+
     def blocks(self) -> Iterator[tuple[int, Values]]:
         """(number of rows, symbol values) in blocks."""
         table = self.stage.span.table

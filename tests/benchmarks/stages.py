@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+from collections.abc import Callable
 from importlib.util import module_from_spec, spec_from_file_location
 from pathlib import Path
 from typing import Any
@@ -58,6 +59,10 @@ def folded_cascode() -> Stage:
     """A single-ended folded-cascode amplifier of 10 MOSFETs."""
     stage: Stage = _large().folded_cascode()
     return stage
+
+
+# What one process alone is asked for, by name.
+STAGES: dict[str, Callable[[], Stage]] = {"cascode": cascode, "folded cascode": folded_cascode}
 
 
 def _large() -> Any:

@@ -7,14 +7,17 @@ from collections.abc import Callable, Iterable
 from rich.console import Console
 from rich.table import Table
 
-from . import deriving, graphs, ledgers, proving, rooting, starting
+from . import deriving, graphs, growing, ledgers, proving, rooting, starting, writing_out
 from .record import Row, Sizes
 
 BENCHMARKS: dict[str, Callable[[Sizes], list[Row]]] = {
     "derive": deriving.derivation,
     "graphs": graphs.graphs,
     "responses": graphs.responses,
+    "growth": growing.growth,
     "coefficients": deriving.coefficients,
+    "written out": writing_out.written_out,
+    "nested": writing_out.nested_coefficients,
     "ledger": ledgers.ledger,
     "memory": ledgers.memory,
     "proofs": proving.proofs,

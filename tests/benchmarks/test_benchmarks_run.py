@@ -8,6 +8,10 @@ import math
 import pytest
 from rich.console import Console
 
+from symamp.exact.cofactors import ratio_of
+from symamp.exact.system import build_system
+
+from .growing import cascade
 from .record import QUICK, Row
 from .table import BENCHMARKS, printed
 
@@ -36,3 +40,8 @@ def test_the_table_says_what_was_missed_and_what_disagrees() -> None:
     assert "NO" in lines["a"]
     assert "1.0e-01 NO" in lines["b"]
     assert "yes" in lines["b"]
+
+
+def test_the_graph_of_a_cascade_grows_linearly() -> None:
+    minors = {n: ratio_of(build_system(stage := cascade(n)), stage.asked["gain"]).graph.minors for n in range(1, 41)}
+    assert {minors[n] - minors[n - 1] for n in range(3, 41)} == {minors[3] - minors[2]}

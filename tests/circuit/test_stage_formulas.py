@@ -2,20 +2,40 @@
 
 from __future__ import annotations
 
+import re
 from fractions import Fraction
 from pathlib import Path
 
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
+from symamp.assumptions.table import TableReader
 from symamp.circuit.formulas import read_formula
 from symamp.circuit.latex_names import latex_name
 from symamp.circuit.stage import Stage
 from symamp.circuit.stagefile import parse_stage, read_stage
-from symamp.errors import ReadError
+from symamp.errors import InputError, ReadError
 from symamp.exact.derive import derive
 from symamp.exact.shape import Shape
-from symamp.formula import Name, Number, dimension_of, evaluate, parse, write
+from symamp.formula import (
+    Binary,
+    Call,
+    Name,
+    Negate,
+    Node,
+    Number,
+    Parallel,
+    Pi,
+    Power,
+    dimension_of,
+    evaluate,
+    parse,
+    write,
+)
 from symamp.show.formulas import one_line
+from symamp.show.latex_formula import latex_of, latex_value
+from symamp.values import read_value
 
 STAGE = """
 [mosfet]
@@ -33,12 +53,13 @@ VIN = ["in", "gnd"]
 [response]
 gain = { from = "VIN", to = "out" }
 """
+_STAGE = parse_stage(STAGE.encode(), file=None, folder=Path("."))
 RECIPES = Path(__file__).resolve().parents[2] / "recipes"
 
 
 @pytest.fixture(scope="module")
 def stage() -> Stage:
-    return parse_stage(STAGE.encode(), file=None, folder=Path("."))
+    return _STAGE
 
 
 @pytest.mark.parametrize(
@@ -74,6 +95,7 @@ def stage() -> Stage:
         ("2·π·RL·CL", "2*pi*RL*CL"),
         ("gm1²·RL⁻²", "gm1**2*RL**(-2)"),
         ("√(gm1·RL) × 3 ÷ 2", "sqrt(gm1*RL)*3/2"),
+        ("1⁄RL + 1∕CL", "1/RL + 1/CL"),
     ],
 )
 def test_what_is_written_is_what_is_meant(stage: Stage, written: str, meant: str) -> None:
@@ -124,6 +146,8 @@ def test_our_own_latex_and_print_read_back(path: Path) -> None:
         (r"g_{m1}}", 7, "was not opened"),
         (r"\frac{g_{m1}}", 1, "below the bar is missing"),
         (r"g_{m1} = 3", 8, "no meaning"),
+        ("gm1 = 3", 5, "write what stands on its right alone"),
+        (r"A_v = -g_{m1} R_L", 5, "write what stands on its right alone"),
         (r"5\,\mathrm{kV}/\mathrm{X}", 16, "no symbol"),
         ("gm1 RL", 5, "operator is missing"),
     ],
@@ -165,3 +189,56 @@ def test_decibels_and_degrees_are_pure_numbers() -> None:
     assert dimension_of(parse("52 dB + 3"), str).unit == ""
     assert dimension_of(parse("90 deg"), str).unit == ""
     assert dimension_of(parse("3 rad/s"), str).unit == dimension_of(parse("3 Hz"), str).unit
+
+
+def test_decibels_degrees_and_angular_frequencies_are_no_values_of_parts(stage: Stage) -> None:
+    for text, unit in (("52 dB", ""), ("90 deg", ""), ("90°", ""), ("3 rad/s", "Hz"), ("3 rad/s", "")):
+        with pytest.raises(ReadError):
+            read_value(text, unit)
+    for formula in ("6 dB", "90°", "6 dB*gm1"):  # 6 dB was once taken for 6 S
+        with pytest.raises(InputError, match="decibels or degrees"):
+            TableReader(stage, {"name": "a", "set": {"gm2": formula}}).read()
+
+
+@pytest.mark.parametrize(
+    ("x", "unit"),
+    [(4.1e-3, "S"), (470e3, "ohm"), (3.3e-12, "F"), (45.0, "deg"), (6.2e8, "rad/s"), (2e-6, "A"), (1e-30, "F"),
+     (1.2e7, ""), (52.0, "dB")],
+)  # fmt: skip
+def test_values_as_our_notes_write_them_read_back(stage: Stage, x: float, unit: str) -> None:
+    node = read_formula(stage, "{" + latex_value(x, unit) + "}")
+    assert evaluate(node, lambda _: 1.0) == pytest.approx(x, rel=1e-12)
+    wanted = dimension_of(Number(Fraction(1), unit), str)
+    assert dimension_of(node, str) == wanted
+
+
+def _trees() -> st.SearchStrategy[Node]:
+    units = st.sampled_from(["", "S", "ohm", "F", "dB", "deg", "rad/s"])
+    leaves = st.one_of(
+        st.sampled_from(["gm1", "ro1", "RL", "CL", "gm_tail", "beta3", "rpi3"]).map(Name),
+        st.just(Pi()),
+        st.builds(lambda x, unit: Number(Fraction(x, 100), unit), st.integers(1, 10**6), units),
+    )
+    exponents = st.sampled_from([Fraction(2), Fraction(-1), Fraction(12), Fraction(1, 2), Fraction(-2, 3)])
+
+    def grow(inner: st.SearchStrategy[Node]) -> st.SearchStrategy[Node]:
+        return st.one_of(
+            st.builds(Binary, st.sampled_from("+-*/"), inner, inner),
+            st.builds(Parallel, inner, inner),
+            st.builds(Negate, inner),
+            st.builds(Power, leaves, exponents),
+            st.builds(Power, st.builds(Negate, leaves), st.just(Fraction(3))),
+            st.builds(Call, st.sampled_from(["sqrt", "abs"]), inner),
+        )
+
+    return st.recursive(leaves, grow, max_leaves=9)
+
+
+@given(_trees())
+def test_any_formula_set_in_latex_reads_back_to_its_value(tree: Node) -> None:
+    values = {"gm1": 1.25, "ro1": 0.75, "RL": 1.5, "CL": 0.5, "gm_tail": 2.5, "beta3": 3.0, "rpi3": 0.875}
+    text = "{" + latex_of(tree) + "}"
+    if re.search(r"[0-9] \\frac\{[0-9]+\}\{[0-9]+\}", text):
+        return  # a whole number before a fraction, which is refused: see test_formula_latex
+    found = evaluate(read_formula(_STAGE, text), values.__getitem__)
+    assert found == pytest.approx(evaluate(tree, values.__getitem__), rel=1e-9, abs=1e-12, nan_ok=True)

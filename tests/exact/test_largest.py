@@ -254,7 +254,7 @@ def test_what_is_left_counts_magnitudes_and_not_their_difference() -> None:
 
 
 def test_the_diagram_counts_true_products_and_stays_small() -> None:
-    """Raw products of the minor graph, where a conductance is stamped four times, are 10^7 times as many."""
+    """Raw products of the minor graph, where a conductance is stamped four times, are 60 times as many."""
     stage, form = large("op amp")
     counts = []
     for side in SIDES:

@@ -22,8 +22,8 @@ from symamp.errors import StageError
 from symamp.exact.cofactors import ratio_of
 from symamp.exact.derive import nested_of
 from symamp.exact.forms import Nested
-from symamp.exact.largest_reduced import Reduced, reduced_response
-from symamp.exact.striking import AT_DC, Quotient, Search, Strike, strike_order
+from symamp.exact.largest_reduced import Reduced, reduced_over, reduced_response
+from symamp.exact.striking import AT_DC, Quotient, Search, strike_order
 from symamp.exact.system import build_system
 
 POLE = Quotient(("denominator", 0), ("denominator", 1))
@@ -130,6 +130,23 @@ def test_matched_devices_shorten_it() -> None:
         reduced_response(form, stage.symbols, apart, points, within=0.1, rename=MATCHED)
 
 
+def test_at_a_thousand_points_the_worst_become_references() -> None:
+    stage, form = large("op amp")
+    points = 1000
+    values = spread(stage, points, 3, 0.05)
+    for follower, leader in MATCHED.items():
+        values[follower] = values[leader] * float(stage.bias[follower] / stage.bias[leader])
+    start = time.perf_counter()
+    found = reduced_over(form, stage.symbols, values, points, within=0.1, rename=MATCHED)
+    assert time.perf_counter() - start < 60  # 10 s on a quiet machine
+    assert found.error <= 0.1
+    assert found.terms <= 30
+    led = {name: values[MATCHED.get(name, name)] for name in values}
+    short, exact = found.form.coefficients(led, points), form.coefficients(values, points)
+    ratio = (short.numerator[0] / short.denominator[0]) / (exact.numerator[0] / exact.denominator[0])
+    assert np.abs(ratio - 1).max() == pytest.approx(found.error, rel=1e-6)
+
+
 @pytest.mark.parametrize("quotients", [(AT_DC,), (POLE,), (AT_DC, POLE)])
 def test_gain_and_dominant_pole_of_the_folded_cascode_within_5_percent(
     quotients: tuple[Quotient, ...],
@@ -168,13 +185,6 @@ def test_the_gain_of_a_cascode_is_the_one_in_text_books() -> None:
     assert str(found.form.numerator[0]) == "-gm1*gm2"
     assert str(found.form.denominator[0]) == "gds1*gds2"
     assert found.error == pytest.approx(1 - 1 / 1.01, rel=1e-9)  # gds2/gm2 is 1 %
-
-
-def limited(stage: Stage, strikes: Sequence[Strike], factor: Fraction) -> dict[str, Fraction]:
-    return {
-        name: value * factor ** {s.symbol: -s.limit for s in strikes}.get(name, 0)
-        for name, value in stage.bias.items()
-    }
 
 
 @settings(max_examples=60, deadline=None, suppress_health_check=list(HealthCheck))

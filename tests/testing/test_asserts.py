@@ -236,7 +236,7 @@ def test_a_claim_that_fails_says_where_and_what_it_takes_to_be_small() -> None:
     assert "+120 %" in text  # gds1*RL = 1 mS · 1.2 kΩ at the corner
     assert "it takes to be small" in text
     assert "gds1·RL" in text
-    assert "sampled" in text
+    assert "proved" in text
 
 
 def test_a_claim_that_means_nothing_names_no_option_of_the_command() -> None:

@@ -76,7 +76,7 @@ def test_a_failure_tells_the_verdict_and_no_traceback(run: pytest.Pytester) -> N
             "  error = gds1·RL",
             "  it takes to be small *",
             "  gds1·RL *0.252 *1.20 *+25.2 %",
-            "*sampled*",
+            "Over the span: proved*",
             "FAILED amplifier.stage.toml::gain.dc = -gm1*RL - holds at the*",
         ]
     )
