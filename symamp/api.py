@@ -21,12 +21,14 @@ from symamp.errors import StageError
 from symamp.exact.derive import derive
 from symamp.exact.response import QuantityValue, Response
 from symamp.exact.time_constants import TimeConstant, time_constants
-from symamp.judge.check import make_check
+from symamp.judge.check import examine, make_check
 from symamp.judge.claim import Claim
 from symamp.judge.claim_reading import WITHIN, claim_of
+from symamp.judge.error_map import error_map
 from symamp.judge.frontier import ClaimFrontier, make_frontiers
 from symamp.judge.ledger import POINTS, SEED, Account, Ledger, make_ledger
 from symamp.judge.verdict import Check, Judged
+from symamp.show.bode import bode_of
 from symamp.show.check_html import check_html, frontier_html
 from symamp.show.check_text import check_page
 from symamp.show.claims_json import check_json, frontier_json
@@ -34,8 +36,10 @@ from symamp.show.frontier_text import frontier_page
 from symamp.show.html import ledger_html
 from symamp.show.json_parts import ledger_json
 from symamp.show.ledger_text import ledger_page
+from symamp.show.maps import map_of
 from symamp.show.note_files import write_note
 from symamp.show.page import Page
+from symamp.show.picture import Picture
 from symamp.show.run_note import document_of
 from symamp.span.workers import workers_of
 from symamp.values import read_frequency
@@ -118,6 +122,11 @@ class Stage:
         """Where each claim stops holding: the ratios at which its error reaches what it is allowed."""
         return StageFrontier(self.data, make_frontiers(self.data, self._claims(claim, within)))
 
+    def error_map(self, claim: str, x: str, y: str, *, within: str = WITHIN) -> Picture:
+        """The error of a claim such as "gain.dc = -gm1*ro1" over two symbols, with the frontier in it."""
+        (examined,) = examine(self.data, [claim_of(self.data, claim, within)])
+        return map_of(error_map(examined, x, y))
+
     def _claims(self, claim: str | Sequence[str], within: str) -> tuple[Claim, ...] | None:
         texts = [claim] if isinstance(claim, str) else list(claim)
         return tuple(claim_of(self.data, text, within) for text in texts) if texts else None
@@ -196,6 +205,10 @@ class StageResponse(_Answering):
     def time_constants(self) -> tuple[TimeConstant, ...]:
         """The open-circuit time constants of the capacitors and inductors."""
         return time_constants(self.stage.data, self.exact.asked)
+
+    def bode(self, *names: str) -> Picture:
+        """The Bode plot at the bias point, with names that of the response under these assumptions beside it."""
+        return bode_of(self.exact, self.under(*names)._response() if names else None)
 
     def under(self, *names: str) -> ApproximateResponse:
         """The approximate response under the assumptions of these names ("all" for every one), as a set."""

@@ -84,7 +84,7 @@ def make_shortest(
     seed: int = SEED,
     progress: Progress | None = None,
 ) -> Shortening:
-    """The shortest formulas that stay within a relative error, of the quantities named ("gain.dc") or of the usual ones.
+    """The shortest formulas within a relative error, of the quantities named ("gain.dc") or of the usual ones.
 
     Raises StageError for an unknown quantity, one in dB or degrees, and a missing bias value.
     """

@@ -89,8 +89,7 @@ class Search:
         return self.tried
 
     def _start(self) -> Tried:
-        exact = self.of(frozenset())
-        return exact
+        return self.of(frozenset())
 
     def of(self, names: frozenset[str]) -> Tried:
         """The formula under a set of assumptions."""
@@ -196,7 +195,7 @@ class _TermArrays:
         self._terms = [(tuple(int(e) for e in m), int(c)) for m, c in polynomial.terms()]
         values = {**sample.values, PI: math.pi}
         self.arrays = [
-            np.broadcast_to(np.asarray(term_value(m, c, values)), (sample.points,))  # type: ignore[arg-type]
+            np.broadcast_to(np.asarray(term_value(m, c, values)), (sample.points,))
             for m, c in term_dict(polynomial).items()
         ]
         self.alive = list(range(len(self.arrays)))

@@ -65,10 +65,11 @@ CLAIMS = (
 
 
 def _claims() -> str:
-    return "".join(
-        f'[[claim]]\nabout = "{about}"\nformula = "{formula}"\nwithin = "{"2 dB" if about.endswith("db") else "25 %"}"\n'
-        for about, formula in CLAIMS
-    )
+    tables = []
+    for about, formula in CLAIMS:
+        within = "2 dB" if about.endswith("db") else "25 %"
+        tables.append(f'[[claim]]\nabout = "{about}"\nformula = "{formula}"\nwithin = "{within}"\n')
+    return "".join(tables)
 
 
 def _row(what: str, name: str, allowed: float, spent: dict[str, float], difference: float) -> Row:

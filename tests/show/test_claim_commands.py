@@ -199,3 +199,13 @@ def test_in_python_and_in_a_notebook(path: str) -> None:
     assert "≥ 19" in str(frontier)
     assert "<table>" in frontier._repr_html_()
     assert len(frontier) == 1
+
+
+def test_pictures_in_python(path: str, tmp_path: Path) -> None:
+    stage = symamp.load(path)
+    drawn = stage.error_map("gain.dc = -gm1*gm2*ro1*ro2", "gm2", "ro2", within="20 %")
+    assert "<svg" in drawn._repr_svg_()
+    assert drawn.save(tmp_path / "map.png").read_bytes().startswith(b"\x89PNG")
+    gain = stage.response("gain")
+    assert "approximate" in gain.bode("no body effect").caption
+    assert "approximate" not in gain.bode().caption
