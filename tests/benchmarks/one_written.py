@@ -24,7 +24,9 @@ def main() -> None:
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss * unit
     above, below = written.exact_coefficients(stage.bias)
     dc = above[0] / below[0]
-    print(json.dumps({"terms": written.terms, "seconds": spent, "bytes": peak, "dc": float(dc.p) / float(dc.q)}))
+    print(
+        json.dumps({"terms": written.terms, "seconds": spent, "bytes": peak, "dc": float(dc.p) / float(dc.q)})
+    )
 
 
 if __name__ == "__main__":

@@ -43,5 +43,7 @@ def test_the_table_says_what_was_missed_and_what_disagrees() -> None:
 
 
 def test_the_graph_of_a_cascade_grows_linearly() -> None:
-    minors = {n: ratio_of(build_system(stage := cascade(n)), stage.asked["gain"]).graph.minors for n in range(1, 41)}
+    minors = {
+        n: ratio_of(build_system(stage := cascade(n)), stage.asked["gain"]).graph.minors for n in range(1, 41)
+    }
     assert {minors[n] - minors[n - 1] for n in range(3, 41)} == {minors[3] - minors[2]}

@@ -43,7 +43,11 @@ def test_a_browser_shows_the_equations_and_pictures(path: Path, tmp_path: Path) 
     text = target.read_text(encoding="utf-8")
     target.write_text(text.replace("</body>", f"{_PROBE}</body>"), encoding="utf-8")
     flags = ["--headless", "--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run"]
-    flags += ["--disable-background-networking", f"--user-data-dir={tmp_path / 'profile'}", "--window-size=1000,900"]
+    flags += [
+        "--disable-background-networking",
+        f"--user-data-dir={tmp_path / 'profile'}",
+        "--window-size=1000,900",
+    ]
     command = [browser, *flags, "--dump-dom", target.as_uri()]
     made = subprocess.run(command, capture_output=True, text=True, errors="replace", timeout=120, check=False)
     found = re.search(r"<title>equations (\d+) (\d+) pictures (\d+) (\d+) wide (\d+)</title>", made.stdout)
