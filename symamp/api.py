@@ -6,7 +6,7 @@ Thin objects over the rooms below: each method is one call into one of them.
 from __future__ import annotations
 
 import os
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from functools import cached_property
 from pathlib import Path
 from typing import Any
@@ -25,22 +25,16 @@ from symamp.judge.check import examine, make_check
 from symamp.judge.claim import Claim
 from symamp.judge.claim_reading import WITHIN, claim_of
 from symamp.judge.error_map import error_map
-from symamp.judge.frontier import ClaimFrontier, make_frontiers
-from symamp.judge.ledger import POINTS, SEED, Account, Ledger, make_ledger
-from symamp.judge.verdict import Check, Judged
+from symamp.judge.frontier import make_frontiers
+from symamp.judge.ledger import POINTS, SEED, make_ledger
+from symamp.judge.shorten import make_shortest
+from symamp.results import StageCheck, StageFrontier, StageLedger, StageShortening
 from symamp.show.bode import bode_of
-from symamp.show.check_html import check_html, frontier_html
-from symamp.show.check_text import check_page
-from symamp.show.claims_json import check_json, frontier_json
-from symamp.show.frontier_text import frontier_page
-from symamp.show.html import ledger_html
-from symamp.show.json_parts import ledger_json
-from symamp.show.ledger_text import ledger_page
 from symamp.show.maps import map_of
 from symamp.show.note_files import write_note
-from symamp.show.page import Page
 from symamp.show.picture import Picture
 from symamp.show.run_note import document_of
+from symamp.show.run_shorten import allowed_error
 from symamp.span.workers import workers_of
 from symamp.values import read_frequency
 
@@ -126,6 +120,14 @@ class Stage:
         """The error of a claim such as "gain.dc = -gm1*ro1" over two symbols, with the frontier in it."""
         (examined,) = examine(self.data, [claim_of(self.data, claim, within)])
         return map_of(error_map(examined, x, y))
+
+    def shorten(
+        self, quantities: str | Sequence[str] = (), *, within: str, points: int = POINTS, seed: int = SEED
+    ) -> StageShortening:
+        """The shortest formulas whose error stays within "5 %", say, all over the span (see `make_shortest`)."""
+        wanted = [quantities] if isinstance(quantities, str) else list(quantities)
+        bound = allowed_error(within)
+        return StageShortening(make_shortest(self.data, bound, quantities=wanted, points=points, seed=seed))
 
     def _claims(self, claim: str | Sequence[str], within: str) -> tuple[Claim, ...] | None:
         texts = [claim] if isinstance(claim, str) else list(claim)
@@ -244,114 +246,6 @@ class ApproximateResponse(_Answering):
         return (
             f"<{'response' if self.response is not None else 'no response'} under {names or 'no assumption'}>"
         )
-
-
-class StageLedger:
-    """A ledger: `ledger["gain.dc"]` is one account; it prints as in the terminal and shows itself in a notebook."""
-
-    def __init__(self, plain: Ledger) -> None:
-        self.plain = plain
-
-    @property
-    def accounts(self) -> tuple[Account, ...]:
-        """The accounts, one a quantity."""
-        return self.plain.accounts
-
-    def __getitem__(self, name: str) -> Account:
-        return self.plain[name]
-
-    def __iter__(self) -> Iterator[Account]:
-        return iter(self.plain.accounts)
-
-    def __len__(self) -> int:
-        return len(self.plain.accounts)
-
-    def json(self) -> dict[str, Any]:
-        """The object that `symamp ledger --json` prints."""
-        return ledger_json(self.plain)
-
-    def __str__(self) -> str:
-        page = Page()
-        ledger_page(page, self.plain)
-        return page.text()
-
-    def _repr_html_(self) -> str:
-        return ledger_html(self.plain)
-
-
-class StageCheck:
-    """Verdicts: `check["gain.dc"]` is the first about that quantity; prints as in the terminal, and in a notebook."""
-
-    def __init__(self, plain: Check) -> None:
-        self.plain = plain
-
-    @property
-    def claims(self) -> tuple[Judged, ...]:
-        """The verdicts, one a claim, in listed order."""
-        return self.plain.claims
-
-    @property
-    def all_hold(self) -> bool:
-        """Whether every claim holds over the whole span."""
-        return self.plain.all_hold
-
-    def __getitem__(self, about: str) -> Judged:
-        for judged in self.claims:
-            if judged.claim.about == about:
-                return judged
-        known = ", ".join(judged.claim.about for judged in self.claims)
-        raise KeyError(f"{about}: these claims are about {known}")
-
-    def __iter__(self) -> Iterator[Judged]:
-        return iter(self.claims)
-
-    def __len__(self) -> int:
-        return len(self.claims)
-
-    def json(self) -> dict[str, Any]:
-        """The object that `symamp check --json` prints."""
-        return check_json(self.plain)
-
-    def __str__(self) -> str:
-        page = Page()
-        check_page(page, self.plain)
-        return page.text()
-
-    def _repr_html_(self) -> str:
-        return check_html(self.plain)
-
-
-class StageFrontier:
-    """Frontiers of claims, one a claim in listed order; prints as in the terminal, and in a notebook."""
-
-    def __init__(self, stage: StageData, plain: tuple[ClaimFrontier, ...]) -> None:
-        self._stage = stage
-        self.claims = plain
-
-    def __getitem__(self, about: str) -> ClaimFrontier:
-        for each in self.claims:
-            if each.claim.about == about:
-                return each
-        known = ", ".join(each.claim.about for each in self.claims)
-        raise KeyError(f"{about}: these claims are about {known}")
-
-    def __iter__(self) -> Iterator[ClaimFrontier]:
-        return iter(self.claims)
-
-    def __len__(self) -> int:
-        return len(self.claims)
-
-    def json(self) -> dict[str, Any]:
-        """The object that `symamp frontier --json` prints."""
-        return frontier_json(self._stage, self.claims)
-
-    def __str__(self) -> str:
-        page = Page()
-        frontier_page(page, self._stage, self.claims)
-        return page.text()
-
-    def _repr_html_(self) -> str:
-        return frontier_html(self._stage.title, self.claims)
 
 
 class StageBuilder(PlainBuilder):

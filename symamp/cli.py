@@ -173,6 +173,38 @@ def frontier(
     _run("frontier", file, claims, within, about, over, output, as_json, module=_CLAIMS)
 
 
+@cli.command(short_help="The shortest formula that holds, and what it rests on.")
+@_FILE
+@click.option(
+    "--within", metavar="ERROR", required=True, help="The error that a formula is allowed, such as 5%."
+)
+@click.option(
+    "--quantity",
+    "quantities",
+    metavar="RESPONSE.QUANTITY",
+    multiple=True,
+    help="Which quantity, such as gain.p1 (repeatable); without any: dc, poles, zeros, bandwidth.",
+)
+@click.option("--plot", metavar="FILE", help="Draw terms against error: .svg, .png or .pdf by its ending.")
+@_POINTS
+@_SEED
+@_JSON
+def shorten(
+    file: str,
+    within: str,
+    quantities: tuple[str, ...],
+    plot: str | None,
+    points: int,
+    seed: int,
+    as_json: bool,
+) -> None:
+    """For each quantity the shortest formula whose error stays within a bound all over the span.
+
+    Named assumptions are made, of the stage file and of a catalogue of the usual ones, then single terms are left out.
+    """
+    _run("shorten", file, within, quantities, plot, points, seed, as_json, module="symamp.show.run_shorten")
+
+
 @cli.command(short_help="A design note in LaTeX, HTML or Markdown.")
 @_FILE
 @click.option(

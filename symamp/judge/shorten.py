@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 from symamp.assumptions.read import Assumption, read_assumptions
 from symamp.circuit.stage import Stage
@@ -19,7 +20,9 @@ from symamp.judge.claim_span import ClaimSpan, claims_over_span
 from symamp.judge.errors_at import Progress
 from symamp.judge.examined import Examined, Known
 from symamp.judge.ledger import POINTS, SEED, Account, default_quantities, make_ledger
-from symamp.judge.sample import sample_of
+from symamp.judge.proving import Prover
+from symamp.judge.sample import Sample, sample_of
+from symamp.judge.shorten_nested import short_ratios
 from symamp.judge.shortening import NO_FORMULA, Search, Tried
 from symamp.judge.verdict import HOLDS, Judged
 
@@ -43,7 +46,8 @@ class Shortest:
     """The shortest formula of one quantity; `judged` is its verdict as a claim, None where none was found.
 
     `assumptions` are those it rests on, `own` how many of them stand in the stage file (these come first), and
-    `dropped` counts single terms left out after them. `tables` are the stage file's tables of the others.
+    `dropped` counts single terms left out after them. `tables` are the stage file's tables of the others. `changes` is
+    what each of them changed when it was made (nan: not known), of a response that is not written out.
     """
 
     name: str
@@ -57,6 +61,7 @@ class Shortest:
     dropped: int = 0
     tradeoff: tuple[TradeOff, ...] = ()
     account: Account | None = None
+    changes: tuple[float, ...] = ()
     formula_exact: Formula | None = None
     why: str = ""
 
@@ -167,7 +172,7 @@ class _Job:
         if self.exact.quantity(self.quantity.text).value is None:
             return replace(nothing, why=self.exact.quantity(self.quantity.text).why or "it has no value")
         if not self.exact.expanded:
-            return replace(nothing, why="the exact expression is not written out")
+            return self._nested(nothing)
         search = Search(
             self.exact,
             self.quantity,
@@ -186,18 +191,56 @@ class _Job:
         )
         if not within:
             return replace(nothing, why="no set of assumptions leads to a formula within the bound")
-        for each in within[:_TRIES]:
+        for tried_one in within[:_TRIES]:
+            each = search.pruned(tried_one)
             verdict = self._judged(each)
             if verdict is not None and verdict.verdict == HOLDS:
                 return self._found(nothing, each, verdict)
         return replace(nothing, why="no formula that was tried holds all over the span")
+
+    def _nested(self, nothing: Shortest) -> Shortest:
+        """Of a response that is not written out: symbols struck, then its largest terms."""
+        parts = self.known.stage.parts
+        matched = [
+            a
+            for a in self._candidates()
+            if a.equal and all(parts[m].kind.prefixed for g in a.equal for m in g)
+        ]
+        try:
+            for found in short_ratios(self.exact, self.quantity, matched, self.sample, self.within):
+                tried = Tried(found.ratio, frozenset(), found.dropped, found.worst)
+                verdict = self._judged(tried)
+                if verdict is not None and verdict.verdict == HOLDS:
+                    step = TradeOff(found.terms, found.worst, self._shape(tried), found.names, found.dropped)
+                    return replace(
+                        nothing,
+                        terms=found.terms,
+                        shape=step.shape,
+                        judged=verdict,
+                        assumptions=found.names,
+                        changes=found.changes,
+                        dropped=found.dropped,
+                        tradeoff=(step,),
+                    )
+        except StageError as error:
+            return replace(nothing, why=error.problem)
+        return replace(nothing, why="no formula that was tried holds all over the span")
+
+    @cached_property
+    def sample(self) -> Sample:
+        return sample_of(self.known.stage)
 
     def _candidates(self) -> list[Assumption]:
         own = [a for a in self.known.assumptions if a.applies(self.response)]
         names = {a.name for a in own}
         found = list(own)
         for entry in self.known.entries(self.response):
-            if entry.plausible and entry.assumption.name not in names:
+            # That two parts are alike is for the stage file to say: a formula in the other one's symbols misleads.
+            if (
+                entry.plausible
+                and (not entry.assumption.equal or not self.exact.expanded)
+                and entry.assumption.name not in names
+            ):
                 found.append(entry.assumption)
                 self.tables[entry.assumption.name] = entry.toml
         return found
@@ -225,7 +268,11 @@ class _Job:
         if examined.root not in (None, self.quantity.index):
             return None
         self.span = claims_over_span(self.known.stage, [examined.table], self.points, self.seed)
-        return judged(examined, self.span.figures[0] if self.span else ())
+        figures = self.span.figures[0] if self.span else ()
+        prover = Prover.of(self.known.stage)
+        if prover is not None and figures:
+            figures = (prover.claim(examined, figures[0]), *figures[1:])
+        return judged(examined, figures)
 
     def _found(self, base: Shortest, tried: Tried, verdict: Judged) -> Shortest:
         names = self._in_order(tried.made)

@@ -109,7 +109,7 @@ class Search:
         return partner_ratio(self.exact, response, self.quantity)
 
     def _keep(self, tried: Tried) -> None:
-        if tried.ratio is not None and math.isfinite(tried.worst):
+        if tried.ratio is not None and not tried.ratio[0].is_zero() and math.isfinite(tried.worst):
             self.tried.append(tried)
 
     def worst(self, ratio: PolyRatio) -> float:
@@ -155,6 +155,18 @@ class Search:
                 if tried.ratio is not None and tried.worst <= bound:
                     found.append((self._gain(best, tried), -tried.terms, one, tried))
         return found
+
+    def pruned(self, tried: Tried) -> Tried:
+        """The same formula resting on no assumption that is not needed for it; the last made are asked first."""
+        if tried.dropped or tried.ratio is None:
+            return tried
+        best = tried
+        for name in reversed(self._by_name):
+            if name in best.made:
+                found = self.of(best.made - {name})
+                if found.ratio == best.ratio:
+                    best = found
+        return best
 
     def _by_terms(self, start: Tried, bound: float) -> Tried:
         """Single terms dropped, each time the one that leaves the least error."""

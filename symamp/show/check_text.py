@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
+from symamp.circuit.stage import Stage
 from symamp.judge.claim import Claim
 from symamp.judge.span_errors import SpanFigure, Where
 from symamp.judge.verdict import HOLDS, HOLDS_HERE, WRONG, Check, Condition, Judged
@@ -14,6 +15,7 @@ from symamp.show.words import error_words, ratio_words, value_words, where_words
 from symamp.values import show_value
 
 _STYLES = {HOLDS: "bold green", HOLDS_HERE: "bold yellow"}  # colour supports the word
+SAMPLED = "Sampled, not proved: a worse point may lie between those tried."
 _EXACT_LINES = 8  # of a formula that is shown
 _ERROR_LINES = 6
 _SYMBOLS = 4
@@ -24,7 +26,7 @@ _SLIGHT = 0.02  # of the error that is allowed: what adds less is summed up
 def check_page(page: Page, check: Check) -> None:
     """All verdicts, and how the span was looked at."""
     page.line(check.stage.title, "bold")
-    units = side_units(check)
+    units = units_of_sides(check.stage)
     told: set[str] = set()
     for number, judged in enumerate(check.claims, start=1):
         page.line()
@@ -58,13 +60,12 @@ def span_words(page: Page, check: Check) -> None:
     seed = "" if check.seed is None else f", seed {check.seed}"
     page.prose(f"Over the span: {check.points:,} bias points{seed}; {check.method}.")
     if check.seed is not None and sampled:
-        page.line("Sampled, not proved: a worse point may lie between those tried.")
+        page.line(SAMPLED)
 
 
-def side_units(check: Check) -> dict[str, str]:
+def units_of_sides(stage: Stage) -> dict[str, str]:
     """The symbols that the sides of the box set, with their units."""
-    symbols = check.stage.symbols
-    return {side.symbol: symbols[side.symbol].unit for side in check.stage.span.sides}
+    return {side.symbol: stage.symbols[side.symbol].unit for side in stage.span.sides}
 
 
 def judged_page(
@@ -114,7 +115,7 @@ def _figures(page: Page, judged: Judged, units: Mapping[str, str], told: set[str
     if judged.verdict == WRONG:
         return
     if judged.span is not None and judged.error is not None:
-        page.prose(f"over the span {_over(judged, judged.span, units)}", indent=2)
+        page.prose(f"over the span {over_words(judged, judged.span, units)}", indent=2)
     formula = judged.error_formula
     if formula is None or not formula.shape.coefficient:
         return
@@ -125,7 +126,8 @@ def _figures(page: Page, judged: Judged, units: Mapping[str, str], told: set[str
         page.block(lines, indent=2)
 
 
-def _over(judged: Judged, over: SpanFigure, units: Mapping[str, str]) -> str:
+def over_words(judged: Judged, over: SpanFigure, units: Mapping[str, str]) -> str:
+    """An error over the span, proved or not, and where it is worst."""
     modulus = ", modulus" if over.modulus else ""
     least, greatest = (
         error_words(x, judged.unit, absolute=judged.absolute, modulus=over.modulus)

@@ -7,7 +7,7 @@ from collections.abc import Callable, Iterable
 from rich.console import Console
 from rich.table import Table
 
-from . import deriving, graphs, growing, ledgers, proving, rooting, starting, writing_out
+from . import deriving, graphs, growing, ledgers, proving, rooting, shortening, starting, writing_out
 from .record import Row, Sizes
 
 BENCHMARKS: dict[str, Callable[[Sizes], list[Row]]] = {
@@ -21,6 +21,7 @@ BENCHMARKS: dict[str, Callable[[Sizes], list[Row]]] = {
     "ledger": ledgers.ledger,
     "memory": ledgers.memory,
     "proofs": proving.proofs,
+    "shorten": shortening.shortest,
     "start": starting.cold_start,
     "roots": rooting.batches,
 }

@@ -1,0 +1,98 @@
+"""JSON of the shortest formulas, by the keys of the design (room: show)."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+from symamp.judge.shorten import Shortening, Shortest
+from symamp.judge.span_errors import SpanFigure
+from symamp.judge.verdict import Judged
+from symamp.show.json_parts import head, number
+
+_NONE = "no formula was found"
+
+
+def shorten_json(made: Shortening) -> dict[str, Any]:
+    """The object of `shorten`."""
+    result = head(made.stage, made.warnings, made.remarks)
+    result["within"] = made.within
+    result["quantities"] = {found.name: _shortest_json(found, made) for found in made.found}
+    return result
+
+
+def _shortest_json(found: Shortest, made: Shortening) -> dict[str, Any]:
+    shape = found.shape
+    result: dict[str, Any] = {
+        "formula": None if shape is None else shape.text(),
+        "latex": None if shape is None else shape.latex(),
+        "terms": found.terms,
+        "exact_terms": found.exact_terms,
+        "formula_exact": None if found.formula_exact is None else found.formula_exact.text(),
+        "error": None,
+        "assumptions": list(found.assumptions),
+        "dropped": found.dropped,
+        "toml": list(found.tables),
+        "tradeoff": [
+            {
+                "terms": step.terms,
+                "formula": step.shape.text(),
+                "worst": step.worst,
+                "assumptions": list(step.assumptions),
+            }
+            for step in found.tradeoff
+        ],
+    }
+    if shape is None:
+        result |= {f"why_{key}": found.why or _NONE for key in ("formula", "latex", "terms")}
+    if result["formula_exact"] is None:
+        result["why_formula_exact"] = "no closed form is written out"
+    if found.judged is None:
+        result["why_error"] = found.why or _NONE
+    else:
+        result["error"] = _error_json(found.judged, made)
+    if found.account is not None:
+        result["ledger"] = [
+            {"name": share.name, **{key: number(value) for key, value in share.figures.items()}}
+            | ({"why": dict(share.why)} if share.why else {})
+            for share in found.account.assumptions
+        ]
+    elif found.changes:
+        result["ledger"] = [
+            _change(name, change) for name, change in zip(found.assumptions, found.changes, strict=True)
+        ]
+    return result
+
+
+def _change(name: str, change: float) -> dict[str, Any]:
+    if math.isnan(change):
+        return {"name": name, "change": None, "why": "it was made with others"}
+    return {"name": name, "change": change}
+
+
+def _error_json(judged: Judged, made: Shortening) -> dict[str, Any]:
+    result: dict[str, Any] = {"at_bias": number(judged.error)}
+    if judged.error is None:
+        result["why_at_bias"] = judged.why_not
+    if judged.span is None:
+        why = "the stage gives no span" if made.stage.span.empty else judged.why_not
+        return {**result, "min": None, "max": None, "why": why or "no value anywhere over the span"}
+    return {**result, **_span(judged.span, made)}
+
+
+def _span(figure: SpanFigure, made: Shortening) -> dict[str, Any]:
+    result: dict[str, Any] = {
+        "min": figure.least,
+        "max": figure.greatest,
+        "where_min": dict(figure.where_least),
+        "where_max": dict(figure.where_greatest),
+        "proved": figure.proved,
+        "method": figure.method or made.method,
+        "points": figure.points,
+        "seed": made.seed,
+    }
+    if made.seed is None:
+        result["why_seed"] = "every row is tried, and none is drawn"
+    if figure.bounds is not None:
+        result["bounds"] = list(figure.bounds)
+    return result
