@@ -137,17 +137,17 @@ def paired_root(exact: Response, claim: Claim, value: float) -> int | None:
     if not is_root(quantity):
         return None
     roots = exact.poles() if quantity.name == "p" else exact.zeros()
-    if not roots:
-        return None
     index = quantity.index or 1
+    if index > len(roots):
+        return None  # a root that the response does not have is not another one
     if quantity.face in ("re", "im", "deg") or not value or not math.isfinite(value):
-        return index if index <= len(roots) else None
+        return index
     if quantity.face is None:
         costs = [abs(np.log(complex(value) / r)) if r else math.inf for r in roots]
     else:
         size = abs(value) * (2 * math.pi if quantity.face == "hz" else 1.0)
         costs = [abs(math.log(size / abs(r))) if r else math.inf for r in roots]
     least = min(costs)
-    if index <= len(roots) and costs[index - 1] <= least * (1 + 1e-9):
+    if costs[index - 1] <= least * (1 + 1e-9):
         return index
     return costs.index(least) + 1

@@ -259,8 +259,10 @@ class Examined:
 
     @cached_property
     def target(self) -> tuple[Quantity, PolyRatio] | None:
-        """The quantity without its face, and what the claim says that it is."""
+        """The quantity without its face, and what the claim says that it is, where both are rational."""
         stage, quantity = self.known.stage, self.quantity
+        if not is_root(quantity) and quantity.name not in _RATIONAL:
+            return None
         context = claims_ring(stage, claimed_symbols(stage, self.claim.node))
         try:
             above, below = claimed_ratio(stage, self.claim.node, context)
@@ -272,9 +274,7 @@ class Examined:
             above = -above
         if is_root(quantity):
             return Quantity(quantity.name, self.root), (above, below)
-        if quantity.name in _RATIONAL:
-            return Quantity(quantity.name, quantity.index), (above, below)
-        return None
+        return Quantity(quantity.name, quantity.index), (above, below)
 
     def _negative(self) -> bool:
         """Whether the quantity without its face is negative at the bias point."""

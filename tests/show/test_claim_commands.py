@@ -209,3 +209,19 @@ def test_pictures_in_python(path: str, tmp_path: Path) -> None:
     gain = stage.response("gain")
     assert "approximate" in gain.bode("no body effect").caption
     assert "approximate" not in gain.bode().caption
+
+
+@pytest.mark.parametrize(
+    ("claim", "within", "words"),
+    [
+        ("gain.at(10 MHz).db = gm1*gm2*ro1*ro2", "3 dB", "no tacit conditions"),
+        ("gain.peak.db = gm1*gm2*ro1*ro2", "3 dB", "no tacit conditions"),
+        ("gain.p9 = -1/(ro1*CL)", "10 %", "the exact p9 has no value"),
+        ("gain.z7.hz = gm1/(2*pi*CL)", "10 %", "the exact z7.hz has no value"),
+        ("gain.hf = gm1*ro1", "10 %", "the exact value is 0"),
+    ],
+)
+def test_claims_about_what_has_no_formula_or_no_value(path: str, claim: str, within: str, words: str) -> None:
+    result = run("check", path, "--claim", claim, "--within", within)
+    assert result.exit_code in (0, 1)
+    assert words in result.stdout
