@@ -83,17 +83,8 @@ def document_of(stage: Stage) -> Document:
     return _source_document(stage) or _built(stage)
 
 
-def write_whole(path: str | os.PathLike[str], text: str | bytes) -> Path:
-    """Write a stage file whole or not at all: to a new file beside it, which then takes its place.
-
-    Raises StageError where the name does not end in `.stage.toml`, and OSError as the file system does.
-    """
-    target = Path(path)
-    if not target.name.endswith(ENDING) or target.name == ENDING:
-        raise StageError(
-            f"{target.name} is not the name of a stage file", f"let it end in {ENDING}: {_renamed(target)}"
-        )
-    data = text.encode("utf-8") if isinstance(text, str) else text
+def replace_file(target: Path, data: bytes) -> None:
+    """Write bytes to a new file beside the target, which then takes its place. OSError as the file system does."""
     final = Path(os.path.realpath(target))  # a link stays a link
     beside = final.with_name(f".{final.name}.{secrets.token_hex(6)}")
     try:
@@ -107,6 +98,19 @@ def write_whole(path: str | os.PathLike[str], text: str | bytes) -> Path:
     except BaseException:
         beside.unlink(missing_ok=True)
         raise
+
+
+def write_whole(path: str | os.PathLike[str], text: str | bytes) -> Path:
+    """Write a stage file whole or not at all: to a new file beside it, which then takes its place.
+
+    Raises StageError where the name does not end in `.stage.toml`, and OSError as the file system does.
+    """
+    target = Path(path)
+    if not target.name.endswith(ENDING) or target.name == ENDING:
+        raise StageError(
+            f"{target.name} is not the name of a stage file", f"let it end in {ENDING}: {_renamed(target)}"
+        )
+    replace_file(target, text.encode("utf-8") if isinstance(text, str) else text)
     return target
 
 

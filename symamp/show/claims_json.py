@@ -10,7 +10,7 @@ from symamp.judge.claim import Claim
 from symamp.judge.frontier import ClaimFrontier, Limit
 from symamp.judge.span_errors import SpanFigure
 from symamp.judge.verdict import Check, Condition, Judged
-from symamp.show.json_parts import head, number
+from symamp.show.json_parts import figure_json, head, number, points_json
 
 _NO_FORMULA = "no closed form is written out"
 
@@ -72,23 +72,7 @@ def _why_no_span(judged: Judged, check: Check) -> str:
 
 
 def _over_json(figure: SpanFigure, check: Check) -> dict[str, Any]:
-    result: dict[str, Any] = {
-        "min": figure.least,
-        "max": figure.greatest,
-        "where_min": dict(figure.where_least),
-        "where_max": dict(figure.where_greatest),
-        "proved": figure.proved,
-        "method": figure.method or check.method,
-        "points": figure.points,
-        "seed": check.seed,
-    }
-    if check.seed is None:
-        result["why_seed"] = "every row is tried, and none is drawn"
-    if figure.bounds is not None:
-        result["bounds"] = list(figure.bounds)
-    if figure.missing:
-        result["missing"] = figure.missing
-    return result
+    return {**figure_json(figure, check.method), **points_json(figure.points, check.seed)}
 
 
 def _condition_json(condition: Condition, check: Check) -> dict[str, Any]:

@@ -233,9 +233,7 @@ def _account_json(account: Account, ledger: Ledger) -> dict[str, Any]:
         result["remarks"] = list(account.remarks)
     result["assumptions"] = [_share_json(share, ledger) for share in account.assumptions]
     if account.span is not None:
-        points: dict[str, Any] = {"points": ledger.points, "seed": ledger.seed}
-        if ledger.seed is None:
-            points["why_seed"] = "every row is tried, and none is drawn"
+        points = points_json(ledger.points, ledger.seed)
         result["span"] = {"error": {**span_json(account.span, ledger), **points}}
     else:
         result["span"] = None
@@ -270,19 +268,33 @@ def _share_json(share: Share, ledger: Ledger) -> dict[str, Any]:
 
 
 def span_json(figure: SpanFigure, ledger: Ledger) -> dict[str, Any]:
-    """A figure over the span; what is sampled is never proved. `bounds` are those that a proof reached."""
+    """A figure of a ledger over the span."""
     fewer = figure.points < ledger.points
+    return figure_json(
+        figure, f"{ledger.method}; at {figure.points} of the points" if fewer else ledger.method
+    )
+
+
+def figure_json(figure: SpanFigure, method: str) -> dict[str, Any]:
+    """A figure over the span; what is sampled, by `method`, is never proved. `bounds` are what a proof reached."""
     result: dict[str, Any] = {
         "min": figure.least,
         "max": figure.greatest,
         "where_min": dict(figure.where_least),
         "where_max": dict(figure.where_greatest),
         "proved": figure.proved,
-        "method": figure.method
-        or (f"{ledger.method}; at {figure.points} of the points" if fewer else ledger.method),
+        "method": figure.method or method,
     }
     if figure.bounds is not None:
         result["bounds"] = list(figure.bounds)
     if figure.missing:
         result["missing"] = figure.missing
+    return result
+
+
+def points_json(points: int, seed: int | None) -> dict[str, Any]:
+    """How many bias points were looked at, and the seed with which they were drawn."""
+    result: dict[str, Any] = {"points": points, "seed": seed}
+    if seed is None:
+        result["why_seed"] = "every row is tried, and none is drawn"
     return result

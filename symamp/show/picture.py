@@ -8,8 +8,6 @@ from __future__ import annotations
 
 import os
 import re
-import secrets
-import shutil
 import threading
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -19,6 +17,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 from xml.sax.saxutils import escape
 
+from symamp.circuit.writer import replace_file
 from symamp.errors import InputError, MissingLibraryError
 from symamp.show.ink import SETTINGS
 
@@ -79,7 +78,8 @@ class Picture:
         ending = checked_ending(path)
         data = {".svg": lambda: self.svg().encode("utf-8"), ".png": self.png, ".pdf": self.pdf}[ending]()
         try:
-            return _write_whole(Path(path), data)
+            replace_file(Path(path), data)
+            return Path(path)
         except OSError as error:
             raise InputError(
                 f"{os.fspath(path)!r} cannot be written: {error.strerror or error}",
@@ -123,21 +123,3 @@ def _settled() -> Iterator[None]:
 def _xml(words: str) -> str:
     """Words inside an XML element; what XML cannot hold is shown as missing."""
     return escape("".join(c if c.isprintable() else "\ufffd" if c.strip() else " " for c in words))
-
-
-def _write_whole(target: Path, data: bytes) -> Path:
-    """Write to a new file beside the target, which then takes its place."""
-    final = Path(os.path.realpath(target))  # a link stays a link
-    beside = final.with_name(f".{final.name}.{secrets.token_hex(6)}")
-    try:
-        with open(beside, "xb") as file:
-            file.write(data)
-            file.flush()
-            os.fsync(file.fileno())
-        if final.exists():
-            shutil.copymode(final, beside)
-        os.replace(beside, final)
-    except BaseException:
-        beside.unlink(missing_ok=True)
-        raise
-    return target

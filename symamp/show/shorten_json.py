@@ -6,9 +6,8 @@ import math
 from typing import Any
 
 from symamp.judge.shorten import Shortening, Shortest
-from symamp.judge.span_errors import SpanFigure
 from symamp.judge.verdict import Judged
-from symamp.show.json_parts import head, number
+from symamp.show.json_parts import figure_json, head, number, points_json
 
 _NONE = "no formula was found"
 
@@ -77,22 +76,5 @@ def _error_json(judged: Judged, made: Shortening) -> dict[str, Any]:
     if judged.span is None:
         why = "the stage gives no span" if made.stage.span.empty else judged.why_not
         return {**result, "min": None, "max": None, "why": why or "no value anywhere over the span"}
-    return {**result, **_span(judged.span, made)}
-
-
-def _span(figure: SpanFigure, made: Shortening) -> dict[str, Any]:
-    result: dict[str, Any] = {
-        "min": figure.least,
-        "max": figure.greatest,
-        "where_min": dict(figure.where_least),
-        "where_max": dict(figure.where_greatest),
-        "proved": figure.proved,
-        "method": figure.method or made.method,
-        "points": figure.points,
-        "seed": made.seed,
-    }
-    if made.seed is None:
-        result["why_seed"] = "every row is tried, and none is drawn"
-    if figure.bounds is not None:
-        result["bounds"] = list(figure.bounds)
-    return result
+    span = judged.span
+    return {**result, **figure_json(span, made.method), **points_json(span.points, made.seed)}
