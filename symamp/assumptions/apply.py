@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Iterable, Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Hashable, Iterable, Mapping, Sequence
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 from symamp.assumptions.dominance import Dominance, idle, pool
 from symamp.assumptions.dropping import Dominated, Dropped, Kept, TermTable
+from symamp.assumptions.generated import Generator
 from symamp.assumptions.merge import Pooled, pooled
 from symamp.assumptions.nested import NestedEngine
 from symamp.assumptions.record import Assumption, Miller, Pair
@@ -24,13 +25,18 @@ __all__ = ["Approximation", "Approximator", "Dropped", "Kept"]
 
 @dataclass(frozen=True)
 class Approximation:
-    """A response under a set of assumptions; `response` is None where nothing is left, and `why` says so."""
+    """A response under a set of assumptions; `response` is None where nothing is left, and `why` says so.
+
+    `left` is there where dominance was put to generated terms: of each coefficient ("b2") that has more, what those
+    that were not generated are worth at the bias point, as a part of it.
+    """
 
     assumptions: tuple[str, ...]
     response: Response | None
     why: str = ""
     dominated: Dominated | None = None
     remarks: tuple[str, ...] = ()
+    left: Mapping[str, float] = field(default_factory=dict)
 
     @cached_property
     def dropped(self) -> tuple[Dropped, ...]:
@@ -54,6 +60,7 @@ class Approximator:
     def __init__(self, exact: Response) -> None:
         self.exact = exact
         self._engine = WrittenEngine(exact) if exact.expanded else NestedEngine(exact)
+        self._generator = Generator(exact)
         self._cones: dict[Hashable, Dominance | None] = {}
         self._tables: dict[int, TermTable] = {}
         self._dominated: dict[Hashable, Dominated] = {}
@@ -87,16 +94,21 @@ class Approximator:
         cone_key = _cone_key(ask.pairs)
         dominance = self._pool(cone_key, ask.pairs)
         dominated = None
+        left: Mapping[str, float] = {}
         if dominance is not None:
             if isinstance(form, Nested):
-                return Approximation((), None, self._not_written(), remarks=_once(remarks))
+                generated = self._generator.of(form, ask)
+                if isinstance(generated, str):
+                    return Approximation((), None, generated, remarks=_once(remarks))
+                form, left = generated.form, generated.left
+                remarks += generated.remarks
             try:
                 dominated = self._dominate(form, cone_key, dominance)
             except TooLargeError as error:
                 return Approximation((), None, str(error), remarks=_once(remarks))
             form = dominated.form
         response, why, more = self._on_roots(ask, form)
-        return Approximation((), response, why, dominated, _once([*remarks, *more]))
+        return Approximation((), response, why, dominated, _once([*remarks, *more]), left)
 
     @cached_property
     def _on_graph(self) -> NestedEngine:
@@ -117,12 +129,6 @@ class Approximator:
             else:
                 live.append(bridge)
         return tuple(live)
-
-    def _not_written(self) -> str:
-        return (
-            f"dominance compares written-out terms, and this response stands for {self.exact.terms:,} product "
-            "terms that are not written out"
-        )
 
     def _pool(self, key: Hashable, pairs: Sequence[Pair]) -> Dominance | None:
         if key not in self._cones:

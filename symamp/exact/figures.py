@@ -42,6 +42,7 @@ class Figures:
         num, den = (np.broadcast_to(c, (c.shape[0], points)) for c in (num, den))
         self.num, self.den = crossings.without_common_s(num, den)
         self.given_rows: tuple[Reals, Reals] | None = None
+        self.roots_by: Callable[[], tuple[Complexes, Complexes]] | None = None
         self.unit = unit
         self.scale = np.broadcast_to(np.asarray(scale, dtype=float), (points,))
 
@@ -51,6 +52,15 @@ class Figures:
         They stand for `zeros` and `poles` and in the phase; magnitudes stay those of the coefficients.
         """
         self.__dict__.update(zeros=np.asarray(zeros, dtype=complex), poles=np.asarray(poles, dtype=complex))
+
+    def find_roots_by(self, how: Callable[[], tuple[Complexes, Complexes]]) -> None:
+        """Take zeros and poles from `how`, when they are asked for, as `set_roots` does at once."""
+        self.roots_by = how
+
+    @cached_property
+    def _found(self) -> tuple[Complexes, Complexes]:
+        assert self.roots_by is not None
+        return self.roots_by()
 
     @property
     def points(self) -> int:
@@ -75,6 +85,8 @@ class Figures:
         """The same response at one bias point."""
         here = slice(point, point + 1)
         one = Figures(self.num[:, here], self.den[:, here], self.unit, self.scale[here])
+        if self.roots_by is not None:
+            one.set_roots(self.zeros[:, here], self.poles[:, here])
         for name in ("zeros", "poles"):
             if name in self.__dict__:  # found or given already
                 one.__dict__[name] = self.__dict__[name][:, here]
@@ -110,12 +122,12 @@ class Figures:
     @cached_property
     def poles(self) -> Complexes:
         """Poles in rad/s, shape (m, P), by increasing magnitude, nan where there are fewer."""
-        return roots(self.den) * self.scale
+        return roots(self.den) * self.scale if self.roots_by is None else self._found[1]
 
     @cached_property
     def zeros(self) -> Complexes:
         """Zeros in rad/s, shape (n, P), by increasing magnitude, nan where there are fewer."""
-        return roots(self.num) * self.scale
+        return roots(self.num) * self.scale if self.roots_by is None else self._found[0]
 
     def at(self, hertz: float) -> Complexes:
         """The complex response at a frequency in Hz; nan at an undamped pole."""

@@ -29,6 +29,11 @@ def without_hidden(
 
 def _shared_roots(zeros: np.ndarray, poles: np.ndarray, count: int) -> np.ndarray:
     """The `count` zeros that lie nearest a pole, each to one of its own: (count, P)."""
+    return np.take_along_axis(zeros, nearest_pairs(zeros, poles, count)[0], axis=0)
+
+
+def nearest_pairs(zeros: np.ndarray, poles: np.ndarray, count: int) -> tuple[np.ndarray, np.ndarray]:
+    """The `count` zeros and poles that lie nearest one another, as places in both: (count, P) each."""
     with np.errstate(all="ignore"):
         distance = np.abs(zeros[:, None] - poles[None]) / (np.abs(zeros[:, None]) + np.abs(poles[None]))
     distance = np.where(np.isnan(distance), np.inf, distance)
@@ -36,14 +41,14 @@ def _shared_roots(zeros: np.ndarray, poles: np.ndarray, count: int) -> np.ndarra
     both = [test(zeros)[:, None] & test(poles)[None] for test in (np.isnan, lambda root: root == 0)]
     distance = np.where(both[0] | both[1], 0.0, distance)
     every = np.arange(zeros.shape[1])
-    found = []
-    for _ in range(count):
+    found = np.empty((2, count, zeros.shape[1]), dtype=np.intp)
+    for k in range(count):
         flat = distance.reshape(-1, zeros.shape[1]).argmin(axis=0)
         zero, pole = np.divmod(flat, poles.shape[0])
-        found.append(zeros[zero, every])
+        found[:, k] = zero, pole
         distance[zero, :, every] = np.inf
         distance[:, pole, every] = np.inf
-    return np.array(found)
+    return found[0], found[1]
 
 
 def _product(shared: np.ndarray) -> np.ndarray:

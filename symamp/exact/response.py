@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from fractions import Fraction
-from functools import cached_property
+from functools import cached_property, partial
 from typing import Any
 
 import numpy as np
@@ -22,6 +22,7 @@ from symamp.exact.forms import Coefficients, Expanded, Nested, Values
 from symamp.exact.formulas import Formula, formula_of
 from symamp.exact.graded import horner
 from symamp.exact.missing_figures import remarks_beside, why_missing
+from symamp.exact.pencil import has_many_roots, matrix_roots
 from symamp.exact.shape import polynomial_latex, polynomial_sympy
 
 
@@ -198,6 +199,8 @@ class Response:
         raw = self.form.coefficients(values, points)
         given = self._levels(raw)
         found = Figures(given.numerator, given.denominator, self.unit, given.omega)
+        if isinstance(self.form, Nested) and not self.apart and has_many_roots(self.form):
+            found.find_roots_by(partial(matrix_roots, self.form, values, points))
         if self.apart:
             above, below = without_common_s(raw.numerator, raw.denominator)
             found.set_roots(_ratios(above) * raw.omega, _ratios(below) * raw.omega)

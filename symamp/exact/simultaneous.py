@@ -68,7 +68,7 @@ def simultaneous_roots(c: Reals) -> Complexes:
         moving[at] = (np.abs(step) > 1e-14 * np.abs(z[:, at])).any(axis=0)
         if not moving.any():
             break
-    return newton_steps(c, _paired(z), 2)
+    return newton_steps(c, paired(z), 2)
 
 
 def _aberth_step(c: Reals, z: Complexes) -> Complexes:
@@ -109,7 +109,7 @@ def _next_corner(level: Reals, k: int) -> NDArray[np.intp]:
     return corner
 
 
-def _paired(z: Complexes) -> Complexes:
+def paired(z: Complexes) -> Complexes:
     """Roots of real polynomials made exact conjugates: each with the nearest to its mirror image, or real."""
     out = z.copy()
     free = np.ones(z.shape, dtype=bool)

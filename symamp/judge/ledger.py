@@ -15,7 +15,6 @@ from symamp.circuit.stage import Stage
 from symamp.errors import InputError, StageError
 from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root, parse_quantity
 from symamp.exact.derive import derive
-from symamp.exact.forms import Nested
 from symamp.exact.formulas import Formula, formula_of
 from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.response import Response
@@ -26,13 +25,11 @@ from symamp.judge.lost_roots import LostRoot, lost_and_new
 from symamp.judge.proving import Prover
 from symamp.judge.sets import FIGURES, names_of
 from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
+from symamp.judge.sure_roots import unsure_roots
 from symamp.span.executing import Engine
 from symamp.values import show_value
 
 POINTS = 4096
-_MANY_ROOTS = (
-    24  # poles or zeros above which their coefficients in double precision settle close ones no more
-)
 _BEYOND = "the value is beyond the range of numbers"
 SEED = 1
 
@@ -222,15 +219,7 @@ def _table(
     if full.response is None:
         notes.remarks.append(f"{name}: under all assumptions there is no response left: {full.why}")
     notes.remarks.extend(_new_root_words(name, table))
-    if (
-        isinstance(exact.form, Nested)
-        and not stage.span.empty
-        and max(exact.form.skeleton.degrees) > _MANY_ROOTS
-    ):
-        notes.warnings.append(
-            f"{name}: of so many roots those that lie close together are uncertain over the span; those at the bias "
-            "point are right to all digits"
-        )
+    notes.warnings.extend(unsure_roots(exact, table.quantities))
     return table
 
 

@@ -74,7 +74,7 @@ def stacked(figures: Sequence[Figures]) -> list[Figures | StackedFigures]:
     found: list[Figures | StackedFigures] = list(figures)
     alike: dict[Any, list[int]] = {}
     for k, each in enumerate(figures):
-        shape = (each.num.shape, each.den.shape, each.unit, _root_shapes(each), _row_shapes(each))
+        shape = (each.num.shape, each.den.shape, each.unit, _root_shapes(each), _row_shapes(each), _own(each))
         alike.setdefault(shape, []).append(k)
     for numbers in alike.values():
         points = figures[numbers[0]].points
@@ -86,6 +86,11 @@ def stacked(figures: Sequence[Figures]) -> list[Figures | StackedFigures]:
                 for place, k in enumerate(some):
                     found[k] = StackedFigures(whole, slice(place * points, (place + 1) * points))
     return found
+
+
+def _own(figures: Figures) -> int | None:
+    """What sets figures apart whose roots come from matrices of their own, if they are ever asked for."""
+    return None if figures.roots_by is None else id(figures)
 
 
 def _root_shapes(figures: Figures) -> Any:

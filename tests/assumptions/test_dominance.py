@@ -13,7 +13,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.optimize import linprog
 
-from symamp.assumptions import cone
+from symamp.assumptions import cone, generated
 from symamp.assumptions.apply import Approximator
 from symamp.assumptions.dominance import Terms, pool
 from symamp.assumptions.merge import Contradiction
@@ -264,7 +264,8 @@ def test_no_warning_where_nothing_was_dropped_or_terms_do_not_cancel():
     assert made.warnings == ()
 
 
-def test_a_nested_response_gives_words_and_no_number():
+def test_a_nested_response_of_too_many_terms_gives_words_and_no_number(monkeypatch):
+    monkeypatch.setattr(generated, "TERM_LIMIT", 1)
     b = stages.cascode()
     b.assume("it", small="gds", against="gm")
     stage = b.stage()

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from judged import CASCODE, COMMON_SOURCE, NO_BODY, SMALL_GDS, stage_of
 
+from symamp.assumptions import generated
 from symamp.circuit.stage import Stage
 from symamp.exact import derive as derive_module
 from symamp.exact.asked_quantity import parse_quantity
@@ -25,6 +26,7 @@ ALIKE = assumption("alike", 'equal = ["M1", "M2"]')
 ONE_POLE = assumption("one pole", "dominant_pole = true")
 SETS = [
     (CASCODE, ALIKE, NO_BODY),
+    (CASCODE, SMALL_GDS, NO_BODY),
     (COMMON_SOURCE, assumption("no gds", 'neglect = ["gds"]'), assumption("no load", 'open = ["RL"]')),
     (TWO_DEVICES, ALIKE, ONE_POLE),
     (COMMON_SOURCE, ONE_POLE, assumption("no source resistance", 'short = ["RS"]')),
@@ -69,7 +71,10 @@ def test_a_nested_ledger_is_the_written_out_one(
                     )
 
 
-def test_dominance_in_a_nested_response_is_refused_in_words(monkeypatch: pytest.MonkeyPatch) -> None:
+def test_dominance_in_a_nested_response_of_too_many_terms_is_refused_in_words(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    monkeypatch.setattr(generated, "TERM_LIMIT", 1)
     found = nested_ledger(stage_of(CASCODE, SMALL_GDS, NO_BODY), monkeypatch)
     account = found["gain.dc"]
     assert account.error is None
