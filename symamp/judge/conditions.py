@@ -125,6 +125,16 @@ class _Balancer:
     remarks: list[str] = field(default_factory=list)
 
     def made(self) -> Balanced:
+        """The balance; of a number that is no limit of the exact expression none: it is judged by its value."""
+        found = self._compared()
+        if found.balance is None or claimed_symbols(self.stage, self.claim.node):
+            return found
+        comparison = found.balance.comparison
+        if comparison.common.is_zero() or any(tacit.is_number for tacit in comparison.tacit):
+            return self._none("a number has no terms to compare")
+        return found
+
+    def _compared(self) -> Balanced:
         quantity = self.claim.quantity
         names = set(self.under.form.symbols) | claimed_symbols(self.stage, self.claim.node, self.ask)
         self.context = claims_ring(self.stage, names)
@@ -191,6 +201,8 @@ class _Balancer:
         if not poles or poles[0].imag or poles[0].real >= 0:
             return self._none("there is no real p1 that could set the band")
         above, below = self.claimed
+        if not self._nearest_first(poles):
+            return self._none("the formula lies nearer another pole than p1, and p1 sets the band")
         if name != "bandwidth":
             dc = rational_of(self.under, Quantity("dc"))
             if dc is None or dc[0].is_zero():
@@ -208,6 +220,19 @@ class _Balancer:
             f"zeros lie far above p1{ratio}"
         )
         return replace(found, remarks=tuple(self.remarks), whole=False)
+
+    def _nearest_first(self, poles: Sequence[complex]) -> bool:
+        """Whether the claimed frequency, over |dc| where it is a product with it, lies nearest to p1."""
+        values = {**self.under.bias_values, PI: math.pi}
+        above, below = (polynomial_value(p, values) for p in self.claimed)
+        size = 2 * math.pi * abs(above / below) if below else 0.0
+        if self.claim.quantity.name != "bandwidth":
+            dc = self.under.bias_figures.dc[0]
+            size = size / abs(dc) if dc else 0.0
+        if not size or not math.isfinite(size):
+            return True
+        costs = [abs(math.log(size / abs(pole))) if pole else math.inf for pole in poles]
+        return costs[0] <= min(costs) * (1 + 1e-9)
 
     @property
     def _pi(self) -> fmpz_mpoly:

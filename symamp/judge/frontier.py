@@ -23,6 +23,7 @@ from symamp.judge.claim import Claim
 from symamp.judge.examined import Examined
 
 OTHERS_EXCEED = "the other conditions alone make the error larger than it is allowed"
+_NOTHING = 1e-12  # a ratio below this is the rounding of the balance
 NEVER = "the error stays within its bound however large this ratio is"
 NOT_ALONE = "the claim's error is not a function of these ratios alone"
 
@@ -32,7 +33,7 @@ class Limit:
     """A tacit condition and where it ends. `limit` is with the other ratios at the bias point, `alone` without them.
 
     `formula` says `alone` as a condition on the ratio turned over, in the grammar of formulas: "gm2/gds2 >= 19";
-    `turned` is `shown` turned over, without its number, and `least` what it has to be at least.
+    `turned` is `ratio` turned over, without its number, and `least` what it has to be at least.
     What does not exist is None, with the words in `why` (of `limit`) and `why_alone`.
     """
 
@@ -130,8 +131,8 @@ class _Solver:
             limit=limit,
             alone=alone if exact is None else float(exact),
             formula=None if exact is None else turned_over((tacit.numerator, tacit.denominator), exact)[0],
-            turned=None if exact is None else turned_over(tacit.shown(values), exact)[1],
-            least=None if exact is None else turned_over(tacit.shown(values), exact)[2],
+            turned=None if exact is None else turned_over((tacit.numerator, tacit.denominator), exact)[1],
+            least=None if exact is None else turned_over((tacit.numerator, tacit.denominator), exact)[2],
             why=why,
             why_alone="" if alone is not None else NEVER,
             why_formula=""
@@ -161,7 +162,7 @@ class _Solver:
         found = []
         for x in map(float, self.bounds):
             ratio = -self._rest(x, others) / (tacit.sign * _power_of(tacit, x))
-            if ratio * direction > 0 and math.isfinite(ratio):
+            if ratio * direction > _NOTHING and math.isfinite(ratio):
                 found.append(ratio)
         return min(found, key=abs, default=None)
 

@@ -8,7 +8,7 @@ from html import escape
 from symamp.judge.frontier import ClaimFrontier
 from symamp.judge.verdict import Check, Condition, Judged
 from symamp.show.check_text import within_words
-from symamp.show.formulas import one_line
+from symamp.show.formulas import ratio_line
 from symamp.show.words import error_words, ratio_words, value_words
 
 
@@ -37,7 +37,7 @@ def frontier_html(title: str, frontiers: Sequence[ClaimFrontier]) -> str:
             continue
         rows = [
             [
-                escape(one_line(limit.shown)),
+                escape(ratio_line(limit.ratio, limit.shown)),
                 ratio_words(limit.at_bias),
                 ratio_words(limit.limit),
                 ratio_words(limit.alone),
@@ -76,7 +76,7 @@ def _condition_cells(condition: Condition) -> list[str]:
     taken = f" (taken to be 1: {condition.assumption})" if condition.assumption else ""
     effect = condition.effect
     return [
-        escape(one_line(condition.shown) + taken),
+        escape(ratio_line(condition.ratio, condition.shown) + taken),
         ratio_words(condition.at_bias),
         ratio_words(condition.largest),
         "none" if effect is None else escape(error_words(effect, "", absolute=False)),

@@ -9,7 +9,7 @@ from symamp.judge.claim import Claim
 from symamp.judge.span_errors import SpanFigure, Where
 from symamp.judge.verdict import HOLDS, HOLDS_HERE, WRONG, Check, Condition, Judged
 from symamp.show.columns import LEFT, POINT, table_lines
-from symamp.show.formulas import formula_lines, one_line
+from symamp.show.formulas import formula_lines, one_line, ratio_line
 from symamp.show.page import Page
 from symamp.show.words import error_words, ratio_words, value_words, where_words
 from symamp.values import show_value
@@ -176,7 +176,7 @@ def _slight(condition: Condition, judged: Judged) -> bool:
 
 def _row(condition: Condition, judged: Judged, over: bool) -> list[str]:
     effect = condition.effect
-    cells = [one_line(condition.shown), ratio_words(condition.at_bias)]
+    cells = [ratio_line(condition.ratio, condition.shown), ratio_words(condition.at_bias)]
     cells += [ratio_words(condition.largest)] if over else []
     cells.append(_effect_words(effect))
     return [*cells, condition.assumption] if condition.target else cells

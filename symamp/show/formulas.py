@@ -22,6 +22,7 @@ from symamp.exact.writing import (
 )
 
 MAX_LINES = 40  # a formula that needs more is shown in part
+_WHOLE_RATIO = 34  # columns up to which a ratio is written whole in a table
 _SHOWN = 12  # lines of each half of a fraction that is shown in part
 _NARROW = 16  # columns; with fewer left beside it, a label stands on a line of its own
 _INDENT = 2
@@ -44,6 +45,12 @@ def one_line(shape: Shape | QuadraticRoot) -> str:
     if isinstance(shape, QuadraticRoot):
         return root_written(shape, TERMINAL)
     return shape_written(shape, TERMINAL)
+
+
+def ratio_line(whole: Shape, leading: Shape, most: int = _WHOLE_RATIO) -> str:
+    """A ratio on one line: the whole of it where that is short, else ≈ its leading terms."""
+    text = one_line(whole)
+    return text if whole == leading or len(text) <= most else f"≈ {one_line(leading)}"
 
 
 def formula_lines(shape: Shape | QuadraticRoot, width: int, *, label: str = "") -> list[str]:

@@ -8,7 +8,7 @@ from symamp.circuit.stage import Stage
 from symamp.judge.frontier import ClaimFrontier, Limit
 from symamp.show.check_text import within_words
 from symamp.show.columns import LEFT, POINT, table_lines
-from symamp.show.formulas import one_line
+from symamp.show.formulas import one_line, ratio_line
 from symamp.show.page import Page
 from symamp.show.words import error_words, ratio_words
 from symamp.values import show_value
@@ -52,7 +52,7 @@ def _row(limit: Limit) -> list[str]:
     if limit.turned is not None and limit.least is not None:
         holds = f"{one_line(limit.turned)} ≥ {show_value(limit.least, '')}"
     return [
-        one_line(limit.shown),
+        ratio_line(limit.ratio, limit.shown),
         ratio_words(limit.at_bias),
         ratio_words(limit.limit),
         grows,

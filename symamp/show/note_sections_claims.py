@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 
+from symamp.exact.shape import Shape
 from symamp.formula import Node
 from symamp.judge.verdict import Check, Condition, Judged
 from symamp.show.latex_formula import latex_in_line, latex_of, shape_in_line
@@ -37,11 +38,14 @@ from symamp.show.note_words import (
     range_text,
     worst_place,
 )
-from symamp.show.words import ratio_words
+from symamp.show.words import error_words, ratio_words
 
 OVER_SPAN = "-span"  # how the names of pictures of errors over the span end
 _ERROR_LINES = 6
 _EXACT_LINES = 10
+
+_MOST_CONDITIONS = 8  # that are listed; the others are summed up
+_WHOLE_RATIO = 34  # characters of a ratio that is written whole
 
 
 def verdict_table(check: Check) -> Table:
@@ -183,14 +187,23 @@ def _conditions(judged: Judged) -> list[Block]:
         header += [inline("largest over the span")] if over else []
         header += [inline("error it adds")] + ([inline("assumption")] if target else [])
         align = [LEFT, *[POINT] * (2 + over), *([LEFT] if target else [])]
-        rows = tuple(_condition(c, over) for c in listed)
+        rows = tuple(_condition(c, over) for c in listed[:_MOST_CONDITIONS])
         blocks.append(Table(caption, tuple(header), rows, tuple(align)))
+        rest = listed[_MOST_CONDITIONS:]
+        if rest:
+            total = error_words(sum(c.effect or 0.0 for c in rest), "", absolute=False)
+            blocks.append(Paragraph(inline(f"{len(rest)} more, each smaller, add {total} together.")))
     return blocks
+
+
+def _written_ratio(condition: Condition) -> Shape:
+    """The whole ratio where it is short, else its leading terms."""
+    return condition.ratio if len(condition.ratio.text()) <= _WHOLE_RATIO else condition.shown
 
 
 def _condition(condition: Condition, over: bool) -> tuple[Inline, ...]:
     shown: list[Inline] = [
-        inline(Math(shape_in_line(condition.shown))),
+        inline(Math(shape_in_line(_written_ratio(condition)))),
         inline(ratio_words(condition.at_bias)),
     ]
     shown += [inline(ratio_words(condition.largest))] if over else []

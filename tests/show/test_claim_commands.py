@@ -225,3 +225,35 @@ def test_claims_about_what_has_no_formula_or_no_value(path: str, claim: str, wit
     result = run("check", path, "--claim", claim, "--within", within)
     assert result.exit_code in (0, 1)
     assert words in result.stdout
+
+
+def test_a_plain_number_is_judged_by_its_value(path: str) -> None:
+    exact = 4.1 * (3.9 + 0.62 + 0.24) / (0.21 * 0.24)
+    found = answer("check", path, "--claim", f"gain.dc = -{exact:.5f}", "--within", "1 %", code=1)
+    assert found["claims"][0]["verdict"] == "holds here"
+    assert found["claims"][0]["tacit"] == []
+    assert answer("check", path, "--claim", "gain.dc = -387", "--within", "99 %", code=1)
+
+
+def test_a_frontier_says_the_whole_ratio(tmp_path: Path) -> None:
+    stage = """
+[resistor]
+RA = ["in", "out"]
+RB = ["out", "gnd"]
+RL = ["out", "gnd"]
+[voltage_source]
+VIN = ["in", "gnd"]
+[response]
+gain = { from = "VIN", to = "out" }
+[bias]
+RA = "1 kohm"
+RB = "1 kohm"
+RL = "7 kohm"
+"""
+    path = saved(tmp_path, stage)
+    claim = ("--claim", "gain.dc = RB/(RA + RB)", "--within", "10 %")
+    text = run("frontier", path, *claim).stdout
+    assert "RL·(RA + RB)/(RA·RB) ≥ 10" in text  # and not RL/RB, which is 7 while the claim holds
+    assert "RA·RB/(RL·(RA + RB))" in run("check", path, *claim).stdout
+    wrong = run("check", path, "--claim", "gain.dc = 2*RB/(RA + RB)", "--within", "10 %").stdout
+    assert "too large by a factor of 2" in wrong
