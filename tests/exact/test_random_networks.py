@@ -51,6 +51,19 @@ def singular_at_bias(form: Expanded | Nested, stage: Stage) -> bool:
     return form.exact_coefficients(stage.bias)[1] == 0
 
 
+def tableau_says(stage: Stage, response: Response, omega: Fraction) -> acb:
+    """The tableau's value; an example whose network has no solution is discarded.
+
+    A voltage over another can be finite where both are infinite, as with a current gain of exactly 1 fed
+    back: the ratio of cofactors then still has a value, and no set of equations for the whole network has.
+    """
+    try:
+        return Tableau(stage, response.asked).response(omega)
+    except ZeroDivisionError:
+        assume(False)
+        raise
+
+
 def agrees(ours: acb, theirs: acb) -> bool:
     """Whether two values in balls agree to 40 digits, which takes balls that are smaller still."""
     size = max(abs(complex(ours)), abs(complex(theirs)))
@@ -116,7 +129,7 @@ def test_exact_coefficients_of_both_forms_equal_the_tableau(stage: Stage) -> Non
     assume(not singular_at_bias(nested, stage))
     with digits(DIGITS):
         for omega in OMEGAS:
-            theirs = Tableau(stage, response.asked).response(omega)
+            theirs = tableau_says(stage, response, omega)
             assert agrees(exact_at(response.form, stage, omega), theirs)
             assert agrees(exact_at(nested, stage, omega), theirs)
 
@@ -133,7 +146,7 @@ def test_each_kind_of_part_is_met_and_agrees(kind: str) -> None:
         assume(not singular_at_bias(nested_of(stage, ratio), stage))
         met += any(part.kind.name == kind for part in stage.parts.values())
         with digits(DIGITS):
-            theirs = Tableau(stage, response.asked).response(OMEGAS[1])
+            theirs = tableau_says(stage, response, OMEGAS[1])
             assert agrees(exact_at(response.form, stage, OMEGAS[1]), theirs)
 
     run()
