@@ -19,11 +19,14 @@ def formula_ratio(stage: Stage, node: Node, rename: Mapping[str, str], context: 
 
     The denominator is zero where the formula divides by zero.
     """
-    return fold(node, _Ratios(stage, rename, context))
+    return fold(node, Ratios(stage, rename, context))
 
 
-class _Ratios:
-    """The formula's algebra; see `symamp.formula_tree.Algebra`."""
+class Ratios:
+    """The algebra of formulas without pi and functions; see `symamp.formula_tree.Algebra`.
+
+    `subtract`, `divide` and `parallel` are worked out through `add`, `multiply` and `negate`.
+    """
 
     def __init__(self, stage: Stage, rename: Mapping[str, str], context: fmpz_mpoly_ctx) -> None:
         self._stage, self._rename, self._context = stage, rename, context
@@ -49,13 +52,13 @@ class _Ratios:
         return a[0] * b[1] + b[0] * a[1], a[1] * b[1]
 
     def subtract(self, a: PolyRatio, b: PolyRatio) -> PolyRatio:
-        return a[0] * b[1] - b[0] * a[1], a[1] * b[1]
+        return self.add(a, self.negate(b))
 
     def multiply(self, a: PolyRatio, b: PolyRatio) -> PolyRatio:
         return a[0] * b[0], a[1] * b[1]
 
     def divide(self, a: PolyRatio, b: PolyRatio) -> PolyRatio:
-        return a[0] * b[1], a[1] * b[0]
+        return self.multiply(a, b[::-1])
 
     def power(self, base: PolyRatio, exponent: Fraction) -> PolyRatio:
         whole = int(exponent)

@@ -49,6 +49,13 @@ def with_pi(context: fmpz_mpoly_ctx) -> fmpz_mpoly_ctx:
     return fmpz_mpoly_ctx.get(("pi", *context.names()), Ordering.lex)
 
 
+def times_two_pi(ratio: tuple[fmpz_mpoly, fmpz_mpoly]) -> tuple[fmpz_mpoly, fmpz_mpoly]:
+    """2π·ratio in lowest terms, in a ring that has pi: rad/s of what is in Hz. ValueError where it lacks pi."""
+    above, below = ratio
+    context = above.context()
+    return lowest_terms(2 * above * context.gens()[context.names().index("pi")], below)
+
+
 def into_ring(polynomial: fmpz_mpoly, context: fmpz_mpoly_ctx) -> fmpz_mpoly:
     """The same polynomial in a ring that has all the generators it holds. KeyError where it lacks one."""
     own = polynomial.context()

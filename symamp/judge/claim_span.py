@@ -12,14 +12,12 @@ from symamp.circuit.stage import Stage
 from symamp.judge.claim_errors import ClaimTable, each_at
 from symamp.judge.errors_at import Progress
 from symamp.judge.interrupted import ErrorSoFar, SoFar, interruptible
-from symamp.judge.span_errors import SpanFigure, Where, row_chunks, row_of, span_figure, where_in_box
-from symamp.span.chunks import Chunk, cut, looked_at
+from symamp.judge.span_errors import NESTED, SpanFigure, Where, row_chunks, row_of, span_figure, where_in_box
+from symamp.span.chunks import Chunk, cut, looked_at, values_at
 from symamp.span.executing import Engine
 from symamp.span.extremes import Extremes, Summary
 from symamp.span.points import BLOCK, Box, Rows
 from symamp.span.search import compass_search
-
-_NESTED = 1024  # bias points in a chunk where nested responses make each of them costly
 
 
 @dataclass(frozen=True)
@@ -48,7 +46,7 @@ def claims_over_span(
     if stage.span.empty or not tables:
         return None
     box = None if stage.span.table is not None else Box.of(stage)
-    size = _NESTED if any(not table.exact.expanded for table in tables) else BLOCK
+    size = NESTED if any(not table.exact.expanded for table in tables) else BLOCK
     sweep = _Sweep(_Figures(tuple(tables), box), progress)
     with interruptible(sweep.so_far):
         if box is None:
@@ -72,10 +70,7 @@ class _Figures:
 
     def at(self, chunk: Chunk) -> list[Summary]:
         """For each table a summary of its error, and one of its ratios (see `Look`)."""
-        values = chunk.values
-        if values is None:
-            assert self.box is not None
-            values = self.box.values(chunk.places)
+        values = values_at(chunk, self.box)
         return [
             Summary.of(part)
             for _, figures in each_at(self.tables, values, chunk.points)

@@ -7,6 +7,7 @@ from math import comb
 
 from flint import fmpz_mpoly, fmpz_mpoly_ctx
 
+from symamp.assumptions.algebra import Ratios
 from symamp.assumptions.merge import Pooled, base_symbols
 from symamp.circuit.labels import unit_of
 from symamp.circuit.stage import Stage
@@ -64,21 +65,18 @@ def claimed_symbols(stage: Stage, node: Node, ask: Pooled = _PLAIN) -> set[str]:
 
 def claimed_ratio(stage: Stage, node: Node, context: fmpz_mpoly_ctx, ask: Pooled = _PLAIN) -> PolyRatio:
     """The formula in lowest terms, its symbols renamed and replaced as `ask` says. Raises NotRational."""
-    ratio = fold(node, _Ratios(stage, context, ask, frozenset()))
+    ratio = fold(node, _Claimed(stage, context, ask, frozenset()))
     if ratio[1].is_zero():
         raise NotRational("the formula divides by zero")
     return lowest_terms(*ratio)
 
 
-class _Ratios:
-    """The formula's algebra; see `symamp.formula_tree.Algebra`."""
+class _Claimed(Ratios):
+    """The algebra of claims: with pi, roots and abs where these are rational, and no larger than is worth it."""
 
     def __init__(self, stage: Stage, context: fmpz_mpoly_ctx, ask: Pooled, done: frozenset[str]) -> None:
-        self._stage, self._context, self._ask, self._done = stage, context, ask, done
-        self._generator = dict(zip(context.names(), context.gens(), strict=True))
-
-    def number(self, value: Fraction, unit: str) -> PolyRatio:
-        return self._context.constant(value.numerator), self._context.constant(value.denominator)
+        super().__init__(stage, ask.rename, context)
+        self._ask, self._done = ask, done
 
     def pi(self) -> PolyRatio:
         return self._generator[PI], self._context.constant(1)
@@ -86,9 +84,9 @@ class _Ratios:
     def name(self, text: str) -> PolyRatio:
         found = self._context.constant(1), self._context.constant(1)
         for symbol, power in self._stage.aliases.get(text, {text: 1}).items():
-            name = self._ask.rename.get(symbol, symbol)
+            name = self._rename.get(symbol, symbol)
             if name in self._ask.replace and name not in self._done:
-                inner = _Ratios(self._stage, self._context, self._ask, self._done | {name})
+                inner = _Claimed(self._stage, self._context, self._ask, self._done | {name})
                 one: PolyRatio = fold(self._ask.replace[name], inner)
             else:
                 one = self._generator[name], self._context.constant(1)
@@ -100,14 +98,8 @@ class _Ratios:
             return a[0] + b[0], a[1]
         return self._tidy(_product(a[0], b[1]) + _product(b[0], a[1]), _product(a[1], b[1]))
 
-    def subtract(self, a: PolyRatio, b: PolyRatio) -> PolyRatio:
-        return self.add(a, self.negate(b))
-
     def multiply(self, a: PolyRatio, b: PolyRatio) -> PolyRatio:
         return _product(a[0], b[0]), _product(a[1], b[1])
-
-    def divide(self, a: PolyRatio, b: PolyRatio) -> PolyRatio:
-        return self.multiply(a, b[::-1])
 
     def power(self, base: PolyRatio, exponent: Fraction) -> PolyRatio:
         if exponent.denominator == 2:
@@ -120,12 +112,6 @@ class _Ratios:
                 raise NotRational("the formula is too large to be multiplied out")
         above, below = base if exponent >= 0 else base[::-1]
         return above**whole, below**whole
-
-    def parallel(self, a: PolyRatio, b: PolyRatio) -> PolyRatio:
-        return self.divide(self.multiply(a, b), self.add(a, b))
-
-    def negate(self, a: PolyRatio) -> PolyRatio:
-        return -a[0], a[1]
 
     def call(self, function: str, argument: PolyRatio) -> PolyRatio:
         above, below = self._tidy(*argument)

@@ -16,7 +16,7 @@ from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_roo
 from symamp.exact.derive import derive
 from symamp.exact.formulas import Formula, PolyRatio, formula_of
 from symamp.exact.missing_figures import remarks_beside, why_missing
-from symamp.exact.polys import lowest_terms
+from symamp.exact.polys import lowest_terms, times_two_pi
 from symamp.exact.response import Response
 from symamp.judge.balance import PI, Tacit
 from symamp.judge.claim import Claim
@@ -221,10 +221,9 @@ class Examined:
         stage = self.known.stage
         context = claims_ring(stage, claimed_symbols(stage, self.claim.node))
         try:
-            above, below = claimed_ratio(stage, self.claim.node, context)
+            return times_two_pi(claimed_ratio(stage, self.claim.node, context))
         except NotRational:
             return None
-        return lowest_terms(2 * above * context.gens()[context.names().index(PI)], below)
 
     @property
     def why_missing(self) -> str:
@@ -269,7 +268,7 @@ class Examined:
         except NotRational:
             return None
         if quantity.face == "hz":
-            above, below = lowest_terms(2 * above * context.gens()[context.names().index(PI)], below)
+            above, below = times_two_pi((above, below))
         if quantity.face in ("hz", "magnitude", "db") and (self._negative() != (self.claimed < 0)):
             above = -above
         if is_root(quantity):

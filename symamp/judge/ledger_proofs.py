@@ -7,7 +7,7 @@ from dataclasses import replace
 
 from symamp.exact.asked_quantity import Quantity, is_root
 from symamp.exact.formulas import PolyRatio, rational_of
-from symamp.exact.polys import lowest_terms
+from symamp.exact.polys import times_two_pi
 from symamp.exact.response import Response
 from symamp.judge.error_formula import error_ratio, partner_ratio
 from symamp.judge.errors_at import ErrorTable
@@ -74,7 +74,7 @@ def _of_set(
     if is_root(quantity):
         return prover.root(exact, quantity, formula, hint)
     if quantity.name in _FREQUENCIES:
-        return prover.crossing(exact, quantity, _times_two_pi(formula), hint)
+        return prover.crossing(exact, quantity, times_two_pi(formula), hint)
     whole = rational_of(exact, quantity)
     ratio = None if whole is None else error_ratio(exact, whole, formula)
     return None if ratio is None else prover.ratio(ratio)
@@ -84,9 +84,3 @@ def _formula(exact: Response, approximate: Response, quantity: Quantity) -> Poly
     if approximate is exact:
         return None
     return partner_ratio(exact, approximate, quantity)
-
-
-def _times_two_pi(formula: PolyRatio) -> PolyRatio:
-    context = formula[0].context()
-    pi = context.gens()[context.names().index("pi")]
-    return lowest_terms(2 * formula[0] * pi, formula[1])

@@ -16,7 +16,7 @@ from symamp.circuit.stage import Stage
 from symamp.exact.asked_quantity import Quantity
 from symamp.judge.errors_at import ErrorTable, Progress
 from symamp.judge.interrupted import ErrorSoFar, SoFar, interruptible
-from symamp.span.chunks import Chunk, cut, looked_at
+from symamp.span.chunks import Chunk, cut, looked_at, values_at
 from symamp.span.executing import Engine
 from symamp.span.extremes import Extreme, Extremes, Summary
 from symamp.span.points import Box, Rows
@@ -26,7 +26,7 @@ from symamp.span.search import compass_search, places_of
 _ENOUGH = 1 << 21
 _WORST = 48  # of the worst places, at how many shares are looked at in any case
 _AT_ONCE = 1 << 18  # sets times bias points in one chunk: larger ones are no quicker, and fewer to share out
-_NESTED = 1024  # bias points in a chunk where nested responses make each of them costly
+NESTED = 1024  # bias points in a chunk where nested responses make each of them costly
 # Which figures are wanted at points.
 _EVERY, _BUT_SHARES, _SHARES = "every", "all but shares", "shares"
 Where = Mapping[str, float] | Mapping[str, int]
@@ -107,10 +107,7 @@ class _Errors:
 
     def at(self, chunk: Chunk) -> list[Summary]:
         """A summary for each quantity of each part (see `Look`)."""
-        values = chunk.values
-        if values is None:
-            assert self.box is not None
-            values = self.box.values(chunk.places)
+        values = values_at(chunk, self.box)
         return [
             Summary.of(part.table.plan.figures(errors)[part.rows])
             for part in self.parts(chunk.which)
@@ -158,7 +155,7 @@ class _Sweep:
     def size(self, sets: int) -> int:
         """How many points a chunk has under so many sets, whoever looks at it."""
         size = max(1, _AT_ONCE // sets)
-        return min(size, _NESTED) if self.nested else size
+        return min(size, NESTED) if self.nested else size
 
     def take(self, chunks: Iterable[Chunk], with_few: bool = False) -> None:
         """Chunks of any number, through the executor if there is one."""

@@ -15,7 +15,6 @@ HOLDS = "holds"  # at every point of the span
 HOLDS_HERE = "holds here"  # at the bias point, and not all over the span
 FAILS = "fails"  # not even at the bias point
 WRONG = "wrong"  # no limit of the exact expression
-VERDICTS = (HOLDS, HOLDS_HERE, FAILS, WRONG)
 
 
 @dataclass(frozen=True)

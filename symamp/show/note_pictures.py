@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Mapping, Sequence
 
 import numpy as np
 
@@ -10,6 +10,7 @@ from symamp.assumptions.apply import Approximator
 from symamp.assumptions.read import read_assumptions
 from symamp.circuit.stage import Stage
 from symamp.exact.derive import derive
+from symamp.exact.response import Response
 from symamp.judge.claim_errors import ClaimTable, each_at
 from symamp.judge.ledger import Account, Ledger
 from symamp.judge.sample import Sample, sample_of
@@ -28,22 +29,22 @@ def note_pictures(
     stage: Stage, *, ledger: Ledger | None = None, check: Check | None = None
 ) -> dict[str, list[Picture]]:
     """All pictures: of responses under their own key, of shares and claims by the name of their quantity."""
-    found: dict[str, list[Picture]] = {RESPONSE_PICTURES: _responses(stage)}
+    exact = {name: derive(stage, asked) for name, asked in stage.asked.items()}
+    found: dict[str, list[Picture]] = {RESPONSE_PICTURES: _responses(stage, exact.values())}
     if ledger is not None:
         for name, picture in _shares(ledger):
             found.setdefault(name, []).append(picture)
     if check is not None and not stage.span.empty:
-        for name, picture in _spans(stage, check):
+        for name, picture in _spans(stage, exact, check):
             found.setdefault(name, []).append(picture)
     return found
 
 
-def _responses(stage: Stage) -> list[Picture]:
+def _responses(stage: Stage, responses: Iterable[Response]) -> list[Picture]:
     """Bode plots of all responses that have a bias point, exact against approximate."""
     made = read_assumptions(stage)
     found = []
-    for asked in stage.asked.values():
-        exact = derive(stage, asked)
+    for exact in responses:
         if exact.missing or not (exact.poles() or exact.zeros()):
             continue
         approximate = Approximator(exact).under(made).response if made else None
@@ -73,11 +74,11 @@ def _share_picture(account: Account) -> Picture:
     return bars(rows, unit=unit, total=total, name=f"{account.name}-shares", title=account.name)
 
 
-def _spans(stage: Stage, check: Check) -> list[tuple[str, Picture]]:
+def _spans(stage: Stage, exact: Mapping[str, Response], check: Check) -> list[tuple[str, Picture]]:
     """The error of each claim that is no wrong one, over a sample of the span."""
     worth = [j for j in check.claims if j.verdict != WRONG and j.error is not None and j.span is not None]
     sample = sample_of(stage)
-    tables = [ClaimTable(derive(stage, stage.asked[j.claim.response]), j.claim, _root(j)) for j in worth]
+    tables = [ClaimTable(exact[j.claim.response], j.claim, _root(j)) for j in worth]
     found = []
     for number, figures in each_at(tables[:_MOST_SPANS], sample.values, sample.points):
         judged = worth[number]

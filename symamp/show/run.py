@@ -7,8 +7,6 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
-from rich.console import Console
-
 from symamp.assumptions.apply import Approximation, Approximator
 from symamp.assumptions.read import Assumption, chosen, read_assumptions
 from symamp.circuit.schema import stage_schema
@@ -25,8 +23,8 @@ from symamp.show.derive_latex import Shown, latex_page
 from symamp.show.derive_text import approximation_page, response_page
 from symamp.show.json_parts import approximation_json, head, ledger_json, response_json
 from symamp.show.ledger_text import ledger_page
-from symamp.show.page import Page, console_width
-from symamp.show.running import Bar, placed, print_json
+from symamp.show.page import Page
+from symamp.show.running import Bar, placed, print_json, printed_page
 from symamp.span.workers import workers_of
 from symamp.values import read_frequency
 
@@ -91,17 +89,15 @@ def _derived(
 
 
 def _show_derived(stage: Stage, found: Mapping[str, _Derived], hertz: Sequence[float]) -> None:
-    console = Console(highlight=False)
-    page = Page(console_width(console))
-    page.line(stage.title, "bold")
-    for each in found.values():
-        response_page(page, each.exact, each.constants, hertz)
-        if each.approximation is not None:
-            approximation_page(page, each.approximation, each.exact, hertz)
-        if each.opinion is not None:
-            page.line(f"  second opinion: {each.opinion.words}")
-    _notes(page, stage)
-    page.show(console)
+    with printed_page() as page:
+        page.line(stage.title, "bold")
+        for each in found.values():
+            response_page(page, each.exact, each.constants, hertz)
+            if each.approximation is not None:
+                approximation_page(page, each.approximation, each.exact, hertz)
+            if each.opinion is not None:
+                page.line(f"  second opinion: {each.opinion.words}")
+        _notes(page, stage)
 
 
 def _derive_json(stage: Stage, found: Mapping[str, _Derived], hertz: Sequence[float]) -> dict[str, Any]:
@@ -136,10 +132,8 @@ def ledger(
     if as_json:
         print_json(ledger_json(made))
         return 0
-    console = Console(highlight=False)
-    page = Page(console_width(console))
-    ledger_page(page, made)
-    page.show(console)
+    with printed_page() as page:
+        ledger_page(page, made)
     return 0
 
 

@@ -4,8 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from rich.console import Console
-
 from symamp.circuit.stage import Stage
 from symamp.circuit.stagefile import read_stage
 from symamp.errors import StageError
@@ -18,9 +16,8 @@ from symamp.show.check_text import check_page
 from symamp.show.claims_json import check_json, frontier_json
 from symamp.show.frontier_text import frontier_page
 from symamp.show.maps import map_of
-from symamp.show.page import Page, console_width
 from symamp.show.picture import checked_ending
-from symamp.show.running import Bar, placed, print_json
+from symamp.show.running import Bar, placed, print_json, printed_page
 from symamp.span.workers import workers_of
 
 
@@ -45,10 +42,8 @@ def check(
     if as_json:
         print_json(check_json(found))
     else:
-        console = Console(highlight=False)
-        page = Page(console_width(console))
-        check_page(page, found)
-        page.show(console)
+        with printed_page() as page:
+            check_page(page, found)
     return 0 if found.all_hold else 1
 
 
@@ -86,12 +81,10 @@ def frontier(
             result["map"] = {"file": output, "x": drawn.x.name, "y": drawn.y.name}
         print_json(result)
         return 0
-    console = Console(highlight=False)
-    page = Page(console_width(console))
-    frontier_page(page, stage, frontiers)
-    if drawn is not None:
-        page.prose(f"The map over {drawn.x.name} and {drawn.y.name} is in {output}.")
-    page.show(console)
+    with printed_page() as page:
+        frontier_page(page, stage, frontiers)
+        if drawn is not None:
+            page.prose(f"The map over {drawn.x.name} and {drawn.y.name} is in {output}.")
     return 0
 
 

@@ -6,8 +6,6 @@ from concurrent.futures import Executor
 from pathlib import Path
 from typing import Any
 
-from rich.console import Console
-
 from symamp.circuit.stage import Stage
 from symamp.circuit.stagefile import read_stage
 from symamp.judge.check import make_check
@@ -18,8 +16,7 @@ from symamp.show.note_content import note_document
 from symamp.show.note_files import check_ending, write_note
 from symamp.show.note_model import Document
 from symamp.show.note_pictures import note_pictures
-from symamp.show.page import Page, console_width
-from symamp.show.running import Bar, placed, print_json
+from symamp.show.running import Bar, placed, print_json, printed_page
 from symamp.span.executing import Engine
 from symamp.span.workers import workers_of
 
@@ -44,11 +41,9 @@ def note(
         result["files"] = [str(path) for path in written]
         print_json(result)
         return 0
-    console = Console(highlight=False)
-    page = Page(console_width(console))
-    page.prose(_words(written))
-    page.notes(stage.warnings, stage.remarks)
-    page.show(console)
+    with printed_page() as page:
+        page.prose(_words(written))
+        page.notes(stage.warnings, stage.remarks)
     return 0
 
 

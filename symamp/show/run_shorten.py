@@ -5,14 +5,11 @@ from __future__ import annotations
 from collections.abc import Sequence
 from pathlib import Path
 
-from rich.console import Console
-
 from symamp.circuit.stagefile import read_stage
 from symamp.errors import InputError, StageError
 from symamp.judge.shorten import Shortening, make_shortest
-from symamp.show.page import Page, console_width
 from symamp.show.picture import Picture, checked_ending
-from symamp.show.running import Bar, placed, print_json
+from symamp.show.running import Bar, placed, print_json, printed_page
 from symamp.show.shorten_json import shorten_json
 from symamp.show.shorten_text import shorten_page
 from symamp.show.tradeoff import tradeoff
@@ -38,12 +35,10 @@ def shorten(
     if as_json:
         print_json(shorten_json(made))
         return 0
-    console = Console(highlight=False)
-    page = Page(console_width(console))
-    shorten_page(page, made)
-    if drawn is not None:
-        page.prose(f"The trade-off is drawn in {drawn}.")
-    page.show(console)
+    with printed_page() as page:
+        shorten_page(page, made)
+        if drawn is not None:
+            page.prose(f"The trade-off is drawn in {drawn}.")
     return 0
 
 

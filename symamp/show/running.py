@@ -1,4 +1,4 @@
-"""What the commands share (room: show): places of errors, JSON on standard output, a progress bar."""
+"""What the commands share (room: show): places of errors, pages and JSON on standard output, a progress bar."""
 
 from __future__ import annotations
 
@@ -15,6 +15,7 @@ from rich.progress import BarColumn, Progress, TextColumn, TimeRemainingColumn
 from symamp.circuit.stage import Stage
 from symamp.circuit.stagefile import locate
 from symamp.errors import InputError
+from symamp.show.page import Page, console_width
 
 _PATIENCE = 2.0  # seconds before a progress bar appears
 
@@ -29,6 +30,15 @@ def placed(stage: Stage) -> Iterator[None]:
             raise
         place = locate(stage, tuple(error.key.split(".")))
         raise error.at(file=place["file"], line=place["line"]) from None
+
+
+@contextmanager
+def printed_page() -> Iterator[Page]:
+    """A page as wide as the terminal, to be written; printed when the block ends well, and not at all otherwise."""
+    console = Console(highlight=False)
+    page = Page(console_width(console))
+    yield page
+    page.show(console)
 
 
 def print_json(found: dict[str, Any]) -> None:

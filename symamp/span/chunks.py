@@ -18,6 +18,7 @@ import numpy as np
 from symamp.span.executing import Engine, run_in_order
 from symamp.span.extremes import Summary
 from symamp.span.parcels import packed, unpacked
+from symamp.span.points import Box
 
 _KEPT = 32  # looks that a worker keeps unpacked: one for each of its threads, and of the last few runs
 
@@ -42,6 +43,14 @@ def cut(which: str, u: np.ndarray, size: int) -> Iterator[Chunk]:
     """Points of a box (d, P) in chunks of `size` at most."""
     for start in range(0, u.shape[1], size):
         yield Chunk(which, u[:, start : start + size])
+
+
+def values_at(chunk: Chunk, box: Box | None) -> Mapping[str, Any]:
+    """The values of symbols at a chunk's points: its own, else those of the box (never None then)."""
+    if chunk.values is not None:
+        return chunk.values
+    assert box is not None
+    return box.values(chunk.places)
 
 
 class Look(Protocol):

@@ -9,8 +9,7 @@ import pytest
 from shown import ASSUMPTIONS, CASCODE, run, saved
 
 from symamp.exact import derive as derive_module
-from symamp.show import derive_text
-from symamp.show import run as run_module
+from symamp.show import derive_text, running
 
 WIDE = """\
 title = "Many in a row"
@@ -135,7 +134,7 @@ def test_an_assumption_for_another_response_is_said_to_be_none(tmp_path: Path) -
 def test_lines_are_no_wider_than_the_page(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch, width: int
 ) -> None:
-    monkeypatch.setattr(run_module, "console_width", lambda console: width)
+    monkeypatch.setattr(running, "console_width", lambda console: width)
     for texts in ((CASCODE, ASSUMPTIONS), (WIDE,)):
         shown = derived(tmp_path, *texts, options=("--assume", "all", "--at", "1 MHz"))
         for line in shown.splitlines():
