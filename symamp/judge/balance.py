@@ -15,6 +15,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 from functools import cached_property, reduce
 
+import numpy as np
 from flint import fmpz_mpoly, fmpz_mpoly_ctx
 
 from symamp.exact.formulas import PolyRatio
@@ -23,6 +24,7 @@ from symamp.exact.tape import largest_term, polynomial_value
 
 ByPower = Mapping[int, fmpz_mpoly]
 _Terms = dict[tuple[int, ...], dict[int, int]]  # exponents -> {power of x: coefficient}
+_MOST_TRIED, _MOST_LEFT = 60, 1000  # terms up to which directions are looked for, one after the other
 ABOVE, BELOW = "above", "below"
 PI = "pi"
 
@@ -77,10 +79,48 @@ class Balance:
             p.is_zero() for p in self.below.values()
         )
 
+    def scaled(self, factor: Fraction, pi_power: int = 0) -> Balance:
+        """The balance of the claim multiplied by factor·π^pi_power."""
+        n = max([*self.above, *self.below])
+        pi = self.context.gens()[self.context.names().index(PI)]
+        sides = []
+        for side in (self.above, self.below):
+            up, down = max(0, pi_power), max(0, -pi_power)
+            sides.append(
+                {
+                    k: p
+                    * factor.numerator**k
+                    * factor.denominator ** (n - k)
+                    * pi ** (up * k + down * (n - k))
+                    for k, p in side.items()
+                }
+            )
+        return Balance(*sides)
+
+    def with_equal(self, one: str, other: str) -> Balance:
+        """The balance with one symbol put for another."""
+        names = self.context.names()
+        put, away = names.index(one), names.index(other)
+        sides: tuple[dict[int, fmpz_mpoly], dict[int, fmpz_mpoly]] = ({}, {})
+        for made, side in zip(sides, (self.above, self.below), strict=True):
+            for k, polynomial in side.items():
+                terms: dict[tuple[int, ...], int] = {}
+                for exponents, coefficient in polynomial.terms():
+                    moved = [int(e) for e in exponents]
+                    moved[put], moved[away] = moved[put] + moved[away], 0
+                    terms[tuple(moved)] = terms.get(tuple(moved), 0) + int(coefficient)
+                made[k] = self.context.from_dict({m: c for m, c in terms.items() if c})
+        return Balance(*sides)
+
     @cached_property
     def comparison(self) -> Comparison:
         """Common and left-over terms."""
         return _compare(self)
+
+    @property
+    def of_ratios(self) -> bool:
+        """Whether it is that of a quantity that is rational, E/F; else one of a root of higher degree."""
+        return set(self.above) == {0} and set(self.below) == {1}
 
     def value(self, x: float, values: Mapping[str, float]) -> float:
         """Σ above_k·x^k − Σ below_k·x^k at a bias point."""
@@ -131,6 +171,36 @@ class Comparison:
                 share = polynomial_value(polynomial, values) / whole if whole else float("nan")
                 found[k] = found.get(k, 0.0) + sign * share
         return found
+
+    def fixed_levels(self) -> dict[int, Fraction] | None:
+        """The same where it is so whatever the values, else None."""
+        found: dict[int, Fraction] = {}
+        for sign, side in ((1, self.matched_above), (-1, self.matched_below)):
+            for k, part in side.items():
+                share = _number(part, self.common)
+                if share is None:
+                    return None
+                found[k] = found.get(k, Fraction(0)) + sign * share
+        return found
+
+    @cached_property
+    def is_limit(self) -> bool:
+        """Whether some common term can outweigh all that is left over: its exponents are no mean of theirs.
+
+        Then there is a direction in which all symbols may move so that only it stays (Farkas 1902). Of very many
+        terms it is taken to be so.
+        """
+        sides = (self.left_above, self.left_below)
+        left = {_without_pi(self.common, m) for side in sides for p in side.values() for m in p.monoms()}
+        own = {_without_pi(self.common, m) for m in self.common.monoms()} - left
+        if not left or len(own) > _MOST_TRIED or len(left) > _MOST_LEFT:
+            return True
+        return any(_outweighs(monomial, left) for monomial in sorted(own, reverse=True))
+
+    @property
+    def numbers(self) -> tuple[Tacit, ...]:
+        """The left-over ratios that are pure numbers: no conditions, but a factor by which the claim is off."""
+        return tuple(each for each in self.tacit if each.is_number)
 
     def slope(self, values: Mapping[str, float]) -> float:
         """The balance's derivative by x at x = 1 over what is common: −1 of a ratio."""
@@ -230,16 +300,38 @@ def _ratios(left: ByPower, common: fmpz_mpoly, side: str) -> Iterable[Tacit]:
     multiple = _multiple(terms, whole)
     if multiple:  # all that is common once more: a factor that is wrong, of whatever many terms
         one = context.constant(1)
-        yield Tacit(one * multiple.numerator, one * multiple.denominator, side, {})
+        shares = _shares(terms[next(iter(whole))])
+        yield Tacit(one * multiple.numerator, one * multiple.denominator, side, shares)
     for monomial, powers in sorted(terms.items(), reverse=True):
         total = sum(powers.values()) - multiple * whole.get(monomial, 0)
         if multiple and not total:
             continue
-        if not total:  # of two signs at two powers, alike in size: a term at x = 1 it is not
-            total = Fraction(max(powers.values()))
-        shares = {k: float(c / total) for k, c in powers.items()}
         numerator = context.from_dict({monomial: sign * Fraction(total).numerator})
-        yield Tacit(*lowest_terms(numerator, sign * Fraction(total).denominator * below), side, shares)
+        yield Tacit(
+            *lowest_terms(numerator, sign * Fraction(total).denominator * below), side, _shares(powers)
+        )
+
+
+def _without_pi(common: fmpz_mpoly, monomial: Sequence[int]) -> tuple[int, ...]:
+    names = common.context().names()
+    return tuple(int(e) for name, e in zip(names, monomial, strict=True) if name != PI)
+
+
+def _outweighs(monomial: tuple[int, ...], left: Iterable[tuple[int, ...]]) -> bool:
+    """Whether d·monomial > d·l for all l in `left` and some direction d."""
+    from scipy.optimize import linprog  # heavy, and only claims that fail need it
+
+    apart = np.array([np.subtract(each, monomial) for each in left], dtype=float)
+    found = linprog(np.zeros(apart.shape[1]), A_ub=apart, b_ub=-np.ones(len(apart)), bounds=(None, None))
+    return bool(found.status == 0)
+
+
+def _number(part: fmpz_mpoly, whole: fmpz_mpoly) -> Fraction | None:
+    """part/whole where that is a number."""
+    above, below = lowest_terms(part, whole)
+    if held(above, below):
+        return None
+    return Fraction(int(above.coeffs()[0]), int(below.coeffs()[0]))
 
 
 def _multiple(terms: _Terms, common: Mapping[tuple[int, ...], int]) -> Fraction:
@@ -252,7 +344,14 @@ def _multiple(terms: _Terms, common: Mapping[tuple[int, ...], int]) -> Fraction:
         if powers is None:
             return Fraction(0)
         ratios.append(Fraction(sum(powers.values()), coefficient))
-    return max(Fraction(0), min(ratios))
+    alike = len({tuple(sorted(_shares(terms[monomial]).items())) for monomial in common}) == 1
+    return max(Fraction(0), min(ratios)) if alike else Fraction(0)
+
+
+def _shares(powers: Mapping[int, int]) -> dict[int, float]:
+    """How much of a left-over term stands at each power of x; all of one side, so of one sign."""
+    total = sum(powers.values())
+    return {k: float(Fraction(c, total)) for k, c in powers.items()}
 
 
 def _mostly_negative(polynomial: fmpz_mpoly) -> bool:

@@ -123,7 +123,10 @@ class _Claimed(Ratios):
         roots = [_square_root(polynomial) for polynomial in (above, below)]
         if roots[0] is None or roots[1] is None:
             raise NotRational("the formula holds a root")
-        return roots[0], roots[1]
+        above, below = roots[0], roots[1]
+        if not above.is_zero() and not (sign_of(self._stage, above) and sign_of(self._stage, below)):
+            raise NotRational("the formula holds a root whose sign depends on the values")
+        return above, below
 
     def _tidy(self, above: fmpz_mpoly, below: fmpz_mpoly) -> PolyRatio:
         if below.is_zero():

@@ -202,7 +202,7 @@ class _Balancer:
             return self._none("there is no real p1 that could set the band")
         above, below = self.claimed
         if not self._nearest_first(poles):
-            return self._none("the formula lies nearer another pole than p1, and p1 sets the band")
+            return self._none("the formula lies nearer another pole than p1, with which a band is compared")
         if name != "bandwidth":
             dc = rational_of(self.under, Quantity("dc"))
             if dc is None or dc[0].is_zero():

@@ -18,6 +18,7 @@ from symamp.exact.formulas import Formula, PolyRatio, formula_of
 from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.polys import lowest_terms, times_two_pi
 from symamp.exact.response import Response
+from symamp.formula import Number
 from symamp.judge.balance import PI, Tacit
 from symamp.judge.claim import Claim
 from symamp.judge.claim_errors import ClaimTable, claimed_values, paired_root
@@ -32,10 +33,11 @@ from symamp.judge.claimed import (
 from symamp.judge.conditions import Balanced, balanced, symbols_of
 from symamp.judge.error_formula import ErrorFormula, error_of_ratios
 from symamp.judge.errors_at import error_of
-from symamp.judge.off import Off, unit_words, what_is_off
+from symamp.judge.off import Off, likely_off, unit_words, what_is_off
 from symamp.judge.ways import Ways
 
 _RATIONAL = ("dc", "hf", "a", "b")
+CONSTANT_PART = "a part of its error is the same whatever the values, and no condition makes it small"
 
 
 class Known:
@@ -103,7 +105,10 @@ class Examined:
     @cached_property
     def mismatch(self) -> str:
         """The words for a formula of another unit than the quantity's, or ""."""
-        claimed = claimed_dimension(self.known.stage, self.claim.node)
+        node = self.claim.node
+        if isinstance(node, Number) and not node.value and not node.unit:
+            return ""  # nothing is nothing in every unit
+        claimed = claimed_dimension(self.known.stage, node)
         wanted = wanted_dimension(self.quantity, self.unit, self.exact.unit, self.claim.decibels)
         own = "" if in_decibels_or_degrees(self.quantity) else self.unit
         return "" if claimed == wanted else unit_words(claimed, wanted, own)
@@ -118,14 +123,24 @@ class Examined:
 
     @cached_property
     def balanced(self) -> Balanced:
-        return balanced(self.exact, self.claim, self.root, self.known.assumptions)
+        return self._compared(balanced(self.exact, self.claim, self.root, self.known.assumptions))
 
     @cached_property
     def plain(self) -> Balanced:
         """The balance against the exact expression itself."""
         if not self.balanced.taken:
             return self.balanced
-        return balanced(self.exact, self.claim, self.root)
+        return self._compared(balanced(self.exact, self.claim, self.root))
+
+    def _compared(self, found: Balanced) -> Balanced:
+        """The balance, unless it is of a stand-in for the quantity, and the claim is right and no limit of that."""
+        if found.balance is None or found.whole or not self._within:
+            return found
+        comparison = found.balance.comparison
+        if comparison.common.is_zero() or comparison.numbers:
+            why = f"it is near the {self.quantity.name} as it is, and no limit of a pole"
+            return Balanced(None, why, found.taken)
+        return found
 
     @cached_property
     def tacit(self) -> tuple[Tacit, ...]:
@@ -140,9 +155,13 @@ class Examined:
         if balance is None:
             return None
         comparison = balance.comparison
-        if comparison.common.is_zero() or any(t.is_number for t in comparison.tacit):
-            return what_is_off(self.known.stage, balance, self.values)
-        return None
+        if comparison.common.is_zero() or comparison.numbers:
+            # Of a root of higher degree the terms tell the conditions only; its error decides.
+            near = self._within and not balance.of_ratios and not comparison.common.is_zero()
+            return None if near else what_is_off(self.known.stage, balance, self.values)
+        if self._within or comparison.is_limit:
+            return None
+        return likely_off(self.known.stage, balance, self.values)
 
     @cached_property
     def slope(self) -> float:
@@ -166,7 +185,8 @@ class Examined:
 
     @cached_property
     def exact_value(self) -> float | complex | None:
-        found = self.table.exact_values(self.exact.bias_figures)[0]
+        table = ClaimTable(self.exact, self.claim, self.root)
+        found = table.exact_values(self.exact.bias_figures)[0]
         if not np.isfinite(found):
             return None
         if np.iscomplexobj(found) and found.imag:
@@ -176,10 +196,18 @@ class Examined:
     @cached_property
     def error(self) -> float | complex | None:
         """At the bias point; None where the exact value is 0 or does not exist."""
+        return 0.0 if self._difference is not None and self.identity else self._difference
+
+    @property
+    def _within(self) -> bool:
+        """Whether the error at the bias point is what it may be."""
+        return self._difference is not None and abs(self._difference) <= self.claim.within
+
+    @cached_property
+    def _difference(self) -> float | complex | None:
+        """The error in numbers."""
         if self.exact_value is None or not math.isfinite(self.claimed):
             return None
-        if self.identity:
-            return 0.0
         found = error_of(self.quantity, np.array([self.claimed]), np.array([self.exact_value]))[0]
         if not np.isfinite(found):
             return None
@@ -191,7 +219,7 @@ class Examined:
         balance = self.plain.balance
         if balance is None or not self.plain.whole or in_decibels_or_degrees(self.quantity):
             return None
-        if set(balance.above) != {0} or set(balance.below) != {1}:
+        if not balance.of_ratios:
             return None
         one = balance.context.constant(1)
         return error_of_ratios(self.exact, (balance.above[0], one), (balance.below[1], one))
@@ -208,7 +236,7 @@ class Examined:
         balance = self.plain.balance
         if balance is None or not self.plain.whole or self.absolute:
             return None
-        if set(balance.above) != {0} or set(balance.below) != {1}:
+        if not balance.of_ratios:
             return None
         above, below = balance.above[0], balance.below[1]
         return lowest_terms(below - above, above)
@@ -269,13 +297,13 @@ class Examined:
             return None
         if quantity.face == "hz":
             above, below = times_two_pi((above, below))
-        if quantity.face in ("hz", "magnitude", "db") and (self._negative() != (self.claimed < 0)):
+        if quantity.face in ("hz", "magnitude", "db") and (self.negative() != (self.claimed < 0)):
             above = -above
         if is_root(quantity):
             return Quantity(quantity.name, self.root), (above, below)
         return Quantity(quantity.name, quantity.index), (above, below)
 
-    def _negative(self) -> bool:
+    def negative(self) -> bool:
         """Whether the quantity without its face is negative at the bias point."""
         if is_root(self.quantity):
             roots = self.exact.poles() if self.quantity.name == "p" else self.exact.zeros()
@@ -288,6 +316,9 @@ class Examined:
         found = list(self.balanced.remarks)
         if self.balanced.why and self.balanced.balance is None:
             found.append(f"no tacit conditions: {self.balanced.why}")
+        balance = self.balanced.balance
+        if balance is not None and balance.comparison.numbers and self.off is None:
+            found.append(CONSTANT_PART)
         if self.exact_value is not None:
             found += remarks_beside(self.exact.bias_figures, self.quantity)
         return tuple(dict.fromkeys(found))

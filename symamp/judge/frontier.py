@@ -1,7 +1,8 @@
 """The frontier of a claim (room: judge): for each tacit condition the ratio at which the error reaches its bound.
 
-With x = 1/(1 + e) the balance of a claim is Σ c_k·x^k + Σ ±r_i·x^(k_i) = 0, c_k what is common at each power of x
-and r_i the tacit ratios. At a bound of the error x is known, and the balance is linear in each ratio.
+With x = E/F = 1/(1 + e) the balance of a claim is Σ c_k·x^k + Σ ±r_i·x^(k_i) = 0, c_k what is common at each power
+of x and r_i the tacit ratios. At a bound of the error x is known, and the balance is linear in each ratio. Of several
+roots the one is followed that the claim is paired with, since another may reach the bound before.
 """
 
 from __future__ import annotations
@@ -11,11 +12,11 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
-from flint import fmpz_mpoly
+import numpy as np
 
 from symamp.circuit.stage import Stage
 from symamp.exact.formulas import PolyRatio
-from symamp.exact.polys import held, lowest_terms
+from symamp.exact.polys import held
 from symamp.exact.shape import Shape, shape_of
 from symamp.judge.balance import PI, Comparison, Tacit
 from symamp.judge.check import examine
@@ -25,6 +26,8 @@ from symamp.judge.examined import Examined
 OTHERS_EXCEED = "the other conditions alone make the error larger than it is allowed"
 _NOTHING = 1e-12  # a ratio below this is the rounding of the balance
 NEVER = "the error stays within its bound however large this ratio is"
+_STEPS = 40  # points at which a root is followed
+_LEAST = 1e-9  # of a ratio, where it is followed as far as it matters
 NOT_ALONE = "the claim's error is not a function of these ratios alone"
 
 
@@ -81,9 +84,9 @@ def frontier_of(claim: Examined) -> ClaimFrontier:
         return ClaimFrontier(claim.claim, claim.error, (), f"no tacit conditions: {claim.balanced.why}")
     if balance.comparison.identity:
         return ClaimFrontier(claim.claim, claim.error, (), "nothing is left over: it has no frontier")
-    solver = _Solver(claim, balance.comparison)
-    limits = [solver.limit(tacit) for tacit in claim.tacit]
-    limits.sort(key=lambda each: -abs(each.at_bias or 0.0))
+    limits = _Solver(claim, balance.comparison).limits()
+    if not limits:
+        return ClaimFrontier(claim.claim, claim.error, (), "its error is the same whatever the values")
     return ClaimFrontier(claim.claim, claim.error, tuple(limits))
 
 
@@ -97,17 +100,29 @@ def allowed_ratios(claim: Claim) -> tuple[Fraction, Fraction]:
 
 
 class _Solver:
-    """Solves the balance for one ratio at the two bounds of the error."""
+    """Solves the balance for one ratio at the two bounds of the error, with y = F/E: Σ c_k·y^(n − k) = 0."""
 
     def __init__(self, claim: Examined, comparison: Comparison) -> None:
         self.claim, self.comparison = claim, comparison
         self.levels = comparison.levels(claim.values)
-        low, high = allowed_ratios(claim.claim)
-        self.bounds = [1 / ratio for ratio in (low, high) if ratio > 0]  # x at each
+        self.numbers = [(t, t.value(claim.values)) for t in comparison.numbers]
+        self.bounds = allowed_ratios(claim.claim)
+        powers = [k for each in comparison.tacit for k in each.powers]
+        self.degree = max([*self.levels, *powers])
+        self.tacit = [(t, t.value(claim.values)) for t in claim.tacit]
+        self.alone = self._sum(self.numbers)
+        for k, level in self.levels.items():
+            self.alone[k] += level
+        self.parts = np.array([self._sum([each]) for each in self.tacit]).reshape(-1, self.degree + 1)
 
-    def limit(self, tacit: Tacit) -> Limit:
+    def limits(self) -> list[Limit]:
+        """The limits of all conditions, the largest at the bias point first."""
+        found = [self._limit(n) for n in range(len(self.tacit))]
+        return sorted(found, key=lambda each: -abs(each.at_bias or 0.0))
+
+    def _limit(self, number: int) -> Limit:
         values = self.claim.values
-        at_bias = tacit.value(values)
+        tacit, at_bias = self.tacit[number]
         known = Limit(
             shape_of(tacit.numerator, tacit.denominator, weights=values),
             shape_of(*tacit.shown(values), weights=values),
@@ -118,89 +133,144 @@ class _Solver:
         )
         if not self.claim.balanced.whole:
             return replace(known, why=NOT_ALONE, why_alone=NOT_ALONE, why_formula=NOT_ALONE)
-        others = [(t, t.value(values)) for t in self.claim.tacit if t is not tacit]
         direction = -1 if at_bias < 0 or (not at_bias > 0 and self._written_negative(tacit)) else 1
-        alone = self._solved(tacit, direction, [])
-        limit, why = None, OTHERS_EXCEED
-        if self._others_within(others):
-            limit = self._solved(tacit, direction, others)
-            why = "" if limit is not None else NEVER
-        exact = self._exactly(tacit, direction)
-        return replace(
-            known,
-            limit=limit,
-            alone=alone if exact is None else float(exact),
-            formula=None if exact is None else turned_over((tacit.numerator, tacit.denominator), exact)[0],
-            turned=None if exact is None else turned_over((tacit.numerator, tacit.denominator), exact)[1],
-            least=None if exact is None else turned_over((tacit.numerator, tacit.denominator), exact)[2],
-            why=why,
-            why_alone="" if alone is not None else NEVER,
-            why_formula=""
-            if exact is not None
-            else NEVER
-            if alone is None
-            else "it depends on the bias point",
-        )
+        alone, why_alone = self._solved(tacit, direction, self.alone, 1.0)
+        rest = self.alone + np.delete(self.parts, number, axis=0).sum(axis=0)
+        limit, why = self._solved(tacit, direction, rest, self._without(tacit, rest, at_bias))
+        exact = None if alone is None else self._exactly(tacit, direction, alone)
+        known = replace(known, limit=limit, alone=alone, why=why, why_alone=why_alone)
+        if exact is None:
+            return replace(known, why_formula=why_alone or self._why_no_formula())
+        formula, turned, least = turned_over((tacit.numerator, tacit.denominator), exact)
+        return replace(known, alone=float(exact), formula=formula, turned=turned, least=least)
+
+    def _why_no_formula(self) -> str:
+        if self.comparison.fixed_levels() is not None:
+            return "the root is complex where its error reaches its bound"
+        return "it depends on the bias point"
 
     @staticmethod
     def _written_negative(tacit: Tacit) -> bool:
         return all(c < 0 for c in tacit.numerator.coeffs())
 
-    def _rest(self, x: float, others: Sequence[tuple[Tacit, float]]) -> float:
-        """The balance at x without the ratio in question."""
-        common = sum(level * x**k for k, level in self.levels.items())
-        return common + sum(t.sign * value * _power_of(t, x) for t, value in others)
+    def _sum(self, ratios: Sequence[tuple[Tacit, float]]) -> np.ndarray:
+        """What ratios add to the balance: coefficients of y, the highest power first."""
+        found = np.zeros(self.degree + 1)
+        for each, value in ratios:
+            for k, share in each.powers.items():
+                found[k] += value * each.sign * share
+        return found
 
-    def _others_within(self, others: Sequence[tuple[Tacit, float]]) -> bool:
-        """Whether the others alone keep the error within its bound: then the balance changes sign between both."""
-        if len(self.bounds) < 2:
-            return True
-        ends = [self._rest(float(x), others) for x in self.bounds]
-        return ends[0] * ends[1] < 0
+    def _step(self, tacit: Tacit) -> np.ndarray:
+        """What a ratio of 1 adds to it."""
+        return self._sum([(tacit, 1.0)])
 
-    def _solved(self, tacit: Tacit, direction: int, others: Sequence[tuple[Tacit, float]]) -> float | None:
-        found = []
-        for x in map(float, self.bounds):
-            ratio = -self._rest(x, others) / (tacit.sign * _power_of(tacit, x))
-            if ratio * direction > _NOTHING and math.isfinite(ratio):
-                found.append(ratio)
-        return min(found, key=abs, default=None)
+    def _without(self, tacit: Tacit, rest: np.ndarray, at_bias: float) -> complex:
+        """y with the others at the bias point and this ratio 0: from y at the bias point, the ratio taken away."""
+        if self.degree == 1 or not (math.isfinite(at_bias) and np.isfinite(rest).all()):
+            return 1.0
+        error = None if self.claim.balanced.taken else self.claim.error
+        path = at_bias * np.linspace(1, 0, _STEPS)
+        return complex(_followed(rest, self._step(tacit), path, 1.0 if error is None else 1 + error)[-1])
 
-    def _exactly(self, tacit: Tacit, direction: int) -> Fraction | None:
-        """`alone` as an exact number, where what is common stands at each power in a fixed share."""
-        levels = self._fixed_levels()
-        if levels is None:
+    def _solved(self, tacit: Tacit, direction: int, rest: np.ndarray, y: complex) -> tuple[float | None, str]:
+        """The least ratio at which y is at a bound, from the y that it has at a ratio of 0; or why there is none."""
+        if not np.isfinite(rest).all():
+            return None, "a symbol in a denominator is 0"
+        step = self._step(tacit)
+        start = complex(_followed(rest, step, np.zeros(1), y)[0])
+        if not self._allowed(start, -1e-9):
+            return None, OTHERS_EXCEED
+        with np.errstate(all="ignore"):
+            ends = [-np.polyval(rest, y) / np.polyval(step, y) for y in map(float, self.bounds)]
+        found = sorted(float(direction * r) for r in ends if np.isfinite(r) and direction * r > _NOTHING)
+        if self.degree == 1:
+            return (direction * found[0], "") if found else (None, NEVER)
+        reached = self._left(rest, step, direction, start, found)
+        return (None, NEVER) if reached is None else (direction * reached, "")
+
+    def _allowed(self, y: complex, more: float = 1e-9) -> bool:
+        """Whether y is within its bounds; of a complex one the modulus of its error counts."""
+        if abs(y.imag) > 1e-9 * abs(y):
+            return abs(y - 1) <= self.claim.claim.within + more
+        low, high = map(float, self.bounds)
+        return low - more <= y.real <= high + more
+
+    def _left(
+        self, rest: np.ndarray, step: np.ndarray, direction: int, start: complex, ends: Sequence[float]
+    ) -> float | None:
+        """The size of the ratio at which the root that is followed from `start` leaves its bounds.
+
+        At `ends` some root is at a bound: the first of them is it unless that is another root, or the root that
+        is followed becomes complex before.
+        """
+        for end in ends[:1]:
+            path = np.concatenate([[0.0], end * np.geomspace(1e-3, 1, _STEPS)])
+            y = _followed(rest, step, direction * path, start)
+            at = abs(y[-1] - 1)
+            if all(map(self._allowed, y[:-1])) and abs(at - self.claim.claim.within) < 1e-6 * (1 + at):
+                return end
+        path = np.concatenate([[0.0], np.geomspace(_LEAST, 1 / _LEAST, 10 * _STEPS)])
+        y = _followed(rest, step, direction * path, start)
+        outside = next((n for n, each in enumerate(y) if not self._allowed(each)), None)
+        if outside is None:
             return None
-        found = []
-        for x in self.bounds:
-            share = sum(Fraction(part).limit_denominator(10**6) * x**k for k, part in tacit.powers.items())
-            rest = sum((level * x**k for k, level in levels.items()), start=Fraction(0))
+        if outside == 0:
+            return float(path[1])
+        low, high, inside = path[outside - 1], path[outside], y[outside - 1]
+        for _ in range(60):
+            middle = (low + high) / 2
+            there = _followed(rest, step, np.array([direction * middle]), inside)[0]
+            if self._allowed(there, 0.0):
+                low, inside = middle, there
+            else:
+                high = middle
+        return float(low)
+
+    def _exactly(self, tacit: Tacit, direction: int, alone: float) -> Fraction | None:
+        """`alone` as an exact number, where what is common stands at each power in a fixed share."""
+        levels = self.comparison.fixed_levels()
+        if levels is None or any(held(t.numerator, t.denominator) for t, _ in self.numbers):
+            return None
+        powers = dict(levels)
+        for each, _ in self.numbers:
+            value = Fraction(int(each.numerator.coeffs()[0]), int(each.denominator.coeffs()[0]))
+            for k, part in each.powers.items():
+                powers[k] = powers.get(k, Fraction(0)) + each.sign * value * _exact_share(part)
+        for y in self.bounds:
+            share = sum(_exact_share(part) * y ** (self.degree - k) for k, part in tacit.powers.items())
+            rest = sum((level * y ** (self.degree - k) for k, level in powers.items()), start=Fraction(0))
             ratio = -rest / (tacit.sign * share) if share else Fraction(0)
-            if ratio * direction > 0:
-                found.append(ratio)
-        return min(found, key=abs, default=None)
-
-    def _fixed_levels(self) -> dict[int, Fraction] | None:
-        levels: dict[int, Fraction] = {}
-        for sign, side in ((1, self.comparison.matched_above), (-1, self.comparison.matched_below)):
-            for k, part in side.items():
-                share = _number(part, self.comparison.common)
-                if share is None:
-                    return None
-                levels[k] = levels.get(k, Fraction(0)) + sign * share
-        return levels
-
-
-def _power_of(tacit: Tacit, x: float) -> float:
-    return sum(share * x**k for k, share in tacit.powers.items())
-
-
-def _number(part: fmpz_mpoly, whole: fmpz_mpoly) -> Fraction | None:
-    """part/whole where that is a number."""
-    above, below = lowest_terms(part, whole)
-    if held(above, below):
+            if ratio * direction > 0 and math.isclose(ratio, alone, rel_tol=1e-6):
+                return ratio
         return None
-    return Fraction(int(above.coeffs()[0]), int(below.coeffs()[0]))
+
+
+def _followed(rest: np.ndarray, step: np.ndarray, path: np.ndarray, y: complex) -> np.ndarray:
+    """The root of rest + r·step along the r of a path, each time the one nearest to the one before."""
+    found = []
+    for roots in _roots(rest + path[:, None] * step):
+        y = complex(roots[np.argmin(np.abs(roots - y))]) if len(roots) else complex(math.inf)
+        found.append(y)
+    return np.array(found)
+
+
+def _roots(polynomials: np.ndarray) -> list[np.ndarray]:
+    """The roots of each, as eigenvalues of companion matrices."""
+    first = polynomials[:, 0]
+    if not first.all():
+        return [np.roots(each) for each in polynomials]
+    if polynomials.shape[1] == 2:
+        return list(-polynomials[:, 1:] / first[:, None])
+    companion = np.zeros((len(polynomials), polynomials.shape[1] - 1, polynomials.shape[1] - 1))
+    companion[:, 0] = -polynomials[:, 1:] / first[:, None]
+    below = np.arange(1, polynomials.shape[1] - 1)
+    companion[:, below, below - 1] = 1
+    return list(np.linalg.eigvals(companion))
+
+
+def _exact_share(part: float) -> Fraction:
+    return Fraction(part).limit_denominator(10**6)
 
 
 def turned_over(ratio: PolyRatio, limit: Fraction) -> tuple[str, Shape, float]:

@@ -8,19 +8,24 @@ multiplied to be a limit of the exact expression.
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from fractions import Fraction
+from itertools import combinations
 
+import numpy as np
 from flint import fmpz_mpoly
 
 from symamp.circuit.stage import Stage
+from symamp.exact.polys import held
 from symamp.exact.tape import term_dict, term_value
 from symamp.formula import Dimension
-from symamp.judge.balance import PI, Balance
+from symamp.judge.balance import PI, Balance, Comparison
 from symamp.values import show_value
 
 _Monomial = dict[str, Fraction]
+_LITTLE = 0.2  # what may be left over where symbols are taken as equal
+_MOST_SYMBOLS = 24  # of what is left over, up to which any two are tried as one
 
 
 @dataclass(frozen=True)
@@ -38,12 +43,94 @@ def what_is_off(stage: Stage, balance: Balance, values: Mapping[str, float]) -> 
     """
     if not balance.two_sided:
         return Off("its sign is wrong", "-1")
+    likely = likely_off(stage, balance, values)
+    if likely is not None:
+        return likely
+    constant = _constant_of_root(balance, values)
+    if constant is not None:
+        return Off(factor_words(constant), _constant_text(constant))
     (up, high), (down, low) = (_largest(side, values) for side in (balance.above, balance.below))
     step = down - up
     if step == 0:
         return Off("no term of it is a term of the exact expression")
     number, powers, negative = _quotient(high, low, step)
     return _words(stage, number, powers, negative, values)
+
+
+def likely_off(stage: Stage, balance: Balance, values: Mapping[str, float]) -> Off | None:
+    """A plain factor, or two symbols to be equal, that make a limit of a claim that is none; None where there is none.
+
+    It finds factors that leave no pure number over, since some of their terms are found on the other side by chance.
+    """
+    likely = [*_equal_pairs(stage, balance, values), *_plain_constants(balance, values)]
+    return min(likely, key=lambda each: each[0])[1] if likely else None
+
+
+def _equal_pairs(stage: Stage, balance: Balance, values: Mapping[str, float]) -> Iterator[tuple[float, Off]]:
+    """Two symbols of one kind, not far apart, that have to be equal for the claim to be near; how near it then is."""
+    comparison = balance.comparison
+    if not balance.of_ratios or comparison.common.is_zero() or comparison.is_limit:
+        return
+    names = sorted(held(*comparison.left_above.values(), *comparison.left_below.values()) - {PI})
+    for one, other in combinations(names if len(names) <= _MOST_SYMBOLS else (), 2):
+        near = 0.5 <= abs(values.get(one, math.nan) / (values.get(other) or math.nan)) <= 2
+        if near and _alike(stage, one, other):
+            made = balance.with_equal(one, other).comparison
+            left = _left(made, values)
+            if not made.common.is_zero() and not made.numbers and left < _LITTLE:
+                yield left, Off(_equal_words(one, other, values))
+
+
+def _left(comparison: Comparison, values: Mapping[str, float]) -> float:
+    """The sum of what is left over, over what is common."""
+    return sum(abs(each.value(values)) for each in comparison.tacit)
+
+
+def _alike(stage: Stage, one: str, other: str) -> bool:
+    """Whether two symbols are the same parameter of two parts."""
+    a, b = stage.symbols[one], stage.symbols[other]
+    return a.unit == b.unit and a.parameter.name == b.parameter.name
+
+
+def _equal_words(one: str, other: str, values: Mapping[str, float]) -> str:
+    ratio = values.get(one, math.nan) / values[other] if values.get(other) else math.nan
+    return f"{one} and {other} would have to be equal, and {one}/{other} is {show_value(ratio, '')}"
+
+
+_PLAIN = tuple(
+    (Fraction(number) if up else 1 / Fraction(number), pi if up else -pi)
+    for number, pi in ((2, 0), (3, 0), (4, 0), (1, 1), (2, 1))
+    for up in (True, False)
+)
+
+
+def _plain_constants(balance: Balance, values: Mapping[str, float]) -> list[tuple[float, Off]]:
+    """The one of 2, 3, 4, π, 2π, or one over it, that makes the claim a limit; and how near it then is."""
+    comparison = balance.comparison
+    if comparison.common.is_zero() or comparison.is_limit:
+        return []
+    found = []
+    for factor, pi_power in _PLAIN:
+        scaled = balance.scaled(factor, pi_power).comparison
+        if not scaled.common.is_zero() and scaled.is_limit:
+            constant = float(factor) * math.pi**pi_power
+            found.append((_left(scaled, values), Off(factor_words(constant), _constant_text(constant))))
+    return found if len(found) == 1 else []
+
+
+def _constant_of_root(balance: Balance, values: Mapping[str, float]) -> float | None:
+    """Of a root of higher degree the factor that is missing whatever the values: x where only numbers are left."""
+    comparison = balance.comparison
+    levels = None if balance.of_ratios or comparison.common.is_zero() else comparison.fixed_levels()
+    if levels is None:
+        return None
+    powers = {k: float(level) for k, level in levels.items()}
+    for each in comparison.numbers:
+        for k, share in each.powers.items():
+            powers[k] = powers.get(k, 0.0) + each.sign * share * each.value(values)
+    roots = np.roots([powers.get(k, 0.0) for k in range(max(powers), -1, -1)])
+    real = [float(x.real) for x in roots if x.real > 0 and abs(x.imag) < 1e-9 * abs(x)]
+    return min((x for x in real if not math.isclose(x, 1)), key=lambda x: abs(math.log(x)), default=None)
 
 
 def _largest(
@@ -115,12 +202,7 @@ def _would_be_equal(stage: Stage, above: _Monomial, below: _Monomial, values: Ma
     if len(above) != 1 or len(below) != 1:
         return ""
     (one, power), (other, same) = next(iter(above.items())), next(iter(below.items()))
-    if power != same or stage.symbols[one].unit != stage.symbols[other].unit:
-        return ""
-    if stage.symbols[one].parameter.name != stage.symbols[other].parameter.name:
-        return ""
-    ratio = values.get(one, math.nan) / values[other] if values.get(other) else math.nan
-    return f"{one} and {other} would have to be equal, and {one}/{other} is {show_value(ratio, '')}"
+    return _equal_words(one, other, values) if power == same and _alike(stage, one, other) else ""
 
 
 def _product(powers: _Monomial) -> str:
@@ -155,7 +237,9 @@ def _constant_text(constant: float) -> str:
     ):
         if math.isclose(constant, value, rel_tol=1e-9):
             return text
-    return str(Fraction(constant).limit_denominator(1000)) if constant < 1000 else f"{constant:.6g}"
+    fraction = Fraction(constant).limit_denominator(10**6)
+    exact = fraction and math.isclose(fraction, constant, rel_tol=1e-12) and fraction.numerator <= 10**6
+    return str(fraction) if exact else f"{constant:.6g}"
 
 
 def unit_words(claimed: Dimension, wanted: Dimension, unit: str = "") -> str:

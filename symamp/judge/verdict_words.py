@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 
+from symamp.exact.asked_quantity import is_root
 from symamp.exact.shape import shape_of
 from symamp.judge.examined import Examined
 from symamp.judge.off import factor_words
@@ -78,9 +79,19 @@ def _off_words(claim: Examined) -> str:
     assert off is not None
     if off.factor and off.factor not in ("1", "-1"):
         return f"{off.words}; multiplied by {off.factor} it would be a limit of the exact expression"
-    if claim.balanced.balance is not None and claim.quantity.name == "p" and off.factor == "-1":
-        return f"{off.words}: the pole lies in the left half plane, so s is negative; .magnitude may be meant"
+    if claim.balanced.balance is not None and is_root(claim.quantity) and off.factor == "-1":
+        return off.words + _sign_of_root(claim)
     return off.words
+
+
+def _sign_of_root(claim: Examined) -> str:
+    """What sign a pole or zero has, for a claim that has the other."""
+    what = "pole" if claim.quantity.name == "p" else "zero"
+    if claim.quantity.face in ("magnitude", "hz"):
+        return f": .{claim.quantity.face} is of the size of the {what}, and positive"
+    if not claim.negative():
+        return f": the {what} lies in the right half plane, so s is positive"
+    return f": the {what} lies in the left half plane, so s is negative; .magnitude may be meant"
 
 
 def _without_error(claim: Examined, over: SpanFigure | None) -> tuple[str, str]:

@@ -5,6 +5,8 @@ For a ratio r left over below, the error is r: it reaches w at r = w. For one ab
 
 from __future__ import annotations
 
+import cmath
+
 import pytest
 from judged import CASCODE, COMMON_SOURCE, stage_of
 
@@ -156,3 +158,98 @@ def test_roots_of_a_quadratic() -> None:
     one = 20e3 * (0.5e-12 + 0.1e-12 * 5e-3 * r) + r * 0.8e-12
     two = 20e3 * r * (0.4e-12 * 0.1e-12 + 0.5e-12 * 0.7e-12)
     assert total == pytest.approx(two / one**2, rel=1e-9)
+
+
+# Two coupled RC sections: D = 1 + s·b1 + s²·b2. With p1 as −1/b1 and r = b2/b1², y = F/E is (1 + √(1 − 4r))/2.
+LADDER = """
+resistor.R1 = ["in", "a"]
+resistor.R2 = ["a", "out"]
+capacitor.C1 = ["a", "gnd"]
+capacitor.C2 = ["out", "gnd"]
+voltage_source.VIN = ["in", "gnd"]
+response.gain = { from = "VIN", to = "out" }
+bias = { R1 = 1e3, R2 = 2e3, C1 = 1e-9, C2 = 1e-9 }
+"""
+ONE_OVER_B1 = "gain.p1 = -1/(R1*C1 + R1*C2 + R2*C2)"
+
+
+@pytest.mark.parametrize(
+    ("within", "ratio"),
+    [
+        (10, 0.09),  # w(1 − w) while the pole is real
+        (40, 0.24),
+        (49, 0.2499),
+        (
+            60,
+            0.36,
+        ),  # beyond r = 1/4 it is complex, and |y − 1| = √r: not 0.24, where y = 0.4 is the other pole's
+        (90, 0.81),
+        (120, 1.44),
+    ],
+)
+def test_a_root_is_followed_where_it_becomes_complex(within: int, ratio: float) -> None:
+    (limit,) = frontier(LADDER, ONE_OVER_B1, f"{within} %").limits
+    assert limit.alone == pytest.approx(ratio, rel=1e-9)
+    assert limit.limit == pytest.approx(ratio, rel=1e-9)
+    if within < 50:
+        assert limit.formula is not None
+        assert limit.formula.endswith(f">= {1 / ratio:.4g}")
+    else:
+        assert limit.formula is None
+        assert limit.why_formula == "the root is complex where its error reaches its bound"
+    # the roots of 1 − x + r·x² by hand, the first pole's being the smaller x, the upper of a pair
+    x = (1 - cmath.sqrt(1 - 4 * ratio)) / (2 * ratio)
+    assert abs(1 / x - 1) == pytest.approx(within / 100, rel=1e-9)
+
+
+DIVIDER = """
+resistor.RA = ["in", "out"]
+resistor.RB = ["out", "gnd"]
+resistor.RC = ["out", "gnd"]
+voltage_source.VIN = ["in", "gnd"]
+response.gain = { from = "VIN", to = "out" }
+bias = { RA = 1e3, RB = 300, RC = 1e3 }
+"""
+
+
+@pytest.mark.parametrize("within", [20, 50, 99, 100, 101, 150, 333, 400, 500])
+def test_bounds_beyond_a_hundred_percent_with_the_others_there(within: int) -> None:
+    """1 is too large by RA/RB + RA/RC = 10/3 + 1: one may be w less the other, if that is anything."""
+    found = limits(DIVIDER, "gain.dc = 1", f"{within} %")
+    w = within / 100
+    for ratio, other in (("RA/RB", 1.0), ("RA/RC", 10 / 3)):
+        assert found[ratio].alone == pytest.approx(w)
+        if w - other > 1e-9:
+            assert found[ratio].limit == pytest.approx(w - other, rel=1e-6)
+            assert found[ratio].why == ""
+        else:
+            assert found[ratio].limit is None
+            assert found[ratio].why == OTHERS_EXCEED
+
+
+@pytest.mark.parametrize("within", [10, 99, 100, 150])
+def test_a_claim_that_is_low_by_more_than_all_of_it(within: int) -> None:
+    """z1 = G1/(CF(1 − G1·RZ)) as G1/CF is off by −G1·RZ: at 150 % the zero has changed sides."""
+    text = """
+vccs.G1 = { out = ["out", "gnd"], control = ["a", "gnd"] }
+resistor.RZ = ["a", "z"]
+capacitor.CF = ["z", "out"]
+resistor.RL = ["out", "gnd"]
+voltage_source.VIN = ["in", "gnd"]
+resistor.RS = ["in", "a"]
+response.gain = { from = "VIN", to = "out" }
+bias = { G1 = "1 mS", RZ = "50 ohm", CF = "1 pF", RL = "10 kohm", RS = "1 kohm" }
+"""
+    (limit,) = frontier(text, "gain.z1 = G1/CF", f"{within} %").limits
+    assert limit.limit == pytest.approx(-within / 100, rel=1e-9)
+    assert limit.alone == pytest.approx(-within / 100, rel=1e-9)
+
+
+def test_an_error_that_no_value_changes_has_no_frontier() -> None:
+    """Equal sections: p1 is (3 − √5)/2 of 1/RC whatever R and C, and 1/3 is low by 12.7 %."""
+    alike = (
+        LADDER.replace("2e3", "1e3") + 'assumption = [{ name = "alike", set = { R2 = "R1", C2 = "C1" } }]\n'
+    )
+    found = frontier(alike, "gain.p1 = -1/(3*R1*C1)", "20 %")
+    assert found.limits == ()
+    assert found.why == "its error is the same whatever the values"
