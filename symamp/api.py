@@ -122,12 +122,20 @@ class Stage:
         return map_of(error_map(examined, x, y))
 
     def shorten(
-        self, quantities: str | Sequence[str] = (), *, within: str, points: int = POINTS, seed: int = SEED
+        self,
+        quantities: str | Sequence[str] = (),
+        *,
+        within: str,
+        responses: str | Sequence[str] = (),
+        points: int = POINTS,
+        seed: int = SEED,
     ) -> StageShortening:
         """The shortest formulas whose error stays within "5 %", say, all over the span (see `make_shortest`)."""
-        wanted = [quantities] if isinstance(quantities, str) else list(quantities)
+        wanted, whole = ([x] if isinstance(x, str) else list(x) for x in (quantities, responses))
         bound = allowed_error(within)
-        return StageShortening(make_shortest(self.data, bound, quantities=wanted, points=points, seed=seed))
+        return StageShortening(
+            make_shortest(self.data, bound, quantities=wanted, responses=whole, points=points, seed=seed)
+        )
 
     def _claims(self, claim: str | Sequence[str], within: str) -> tuple[Claim, ...] | None:
         texts = [claim] if isinstance(claim, str) else list(claim)

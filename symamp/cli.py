@@ -185,6 +185,13 @@ def frontier(
     multiple=True,
     help="Which quantity, such as gain.p1 (repeatable); without any: dc, poles, zeros, bandwidth.",
 )
+@click.option(
+    "--response",
+    "responses",
+    metavar="NAME",
+    multiple=True,
+    help="The shortest N(s)/D(s) of this response (repeatable).",
+)
 @click.option("--plot", metavar="FILE", help="Draw terms against error: .svg, .png or .pdf by its ending.")
 @_POINTS
 @_SEED
@@ -193,6 +200,7 @@ def shorten(
     file: str,
     within: str,
     quantities: tuple[str, ...],
+    responses: tuple[str, ...],
     plot: str | None,
     points: int,
     seed: int,
@@ -202,7 +210,8 @@ def shorten(
 
     Named assumptions are made, of the stage file and of a catalogue of the usual ones, then single terms are left out.
     """
-    _run("shorten", file, within, quantities, plot, points, seed, as_json, module="symamp.show.run_shorten")
+    asked = quantities, responses
+    _run("shorten", file, within, *asked, plot, points, seed, as_json, module="symamp.show.run_shorten")
 
 
 @cli.command(short_help="A design note in LaTeX, HTML or Markdown.")

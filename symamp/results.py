@@ -8,7 +8,7 @@ from typing import Any
 from symamp.circuit.stage import Stage as StageData
 from symamp.judge.frontier import ClaimFrontier
 from symamp.judge.ledger import Account, Ledger
-from symamp.judge.shorten import Shortening, Shortest
+from symamp.judge.shortest import Shortening, Shortest, ShortestResponse
 from symamp.judge.verdict import Check, Judged
 from symamp.show.check_html import check_html, frontier_html
 from symamp.show.check_text import check_page
@@ -131,22 +131,27 @@ class StageFrontier:
 
 
 class StageShortening:
-    """Shortest formulas: `found["gain.dc"]` is one; prints as in the terminal."""
+    """Shortest formulas: `found["gain.dc"]` is one, `found["gain"]` a response's; prints as in the terminal."""
 
     def __init__(self, plain: Shortening) -> None:
         self.plain = plain
 
-    def __getitem__(self, name: str) -> Shortest:
-        for found in self.plain.found:
+    @property
+    def found(self) -> tuple[Shortest | ShortestResponse, ...]:
+        """Those of the quantities, then those of whole responses."""
+        return (*self.plain.found, *self.plain.responses)
+
+    def __getitem__(self, name: str) -> Shortest | ShortestResponse:
+        for found in self.found:
             if found.name == name:
                 return found
-        raise KeyError(f"{name}: there are {', '.join(found.name for found in self.plain.found)}")
+        raise KeyError(f"{name}: there are {', '.join(found.name for found in self.found)}")
 
-    def __iter__(self) -> Iterator[Shortest]:
-        return iter(self.plain.found)
+    def __iter__(self) -> Iterator[Shortest | ShortestResponse]:
+        return iter(self.found)
 
     def __len__(self) -> int:
-        return len(self.plain.found)
+        return len(self.found)
 
     def json(self) -> dict[str, Any]:
         """The object that `symamp shorten --json` prints."""

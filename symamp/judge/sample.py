@@ -23,6 +23,13 @@ class Sample:
     values: dict[str, Any]
     points: int
 
+    def thinned(self, most: int) -> Sample:
+        """No more than so many of the points, evenly taken, the first among them."""
+        if self.points <= most:
+            return self
+        chosen = np.unique(np.linspace(0, self.points - 1, most).round().astype(int))
+        return Sample({name: np.asarray(v)[chosen] for name, v in self.values.items()}, len(chosen))
+
 
 def sample_of(stage: Stage, seed: int = 1) -> Sample:
     """The sample of a stage's span; the bias point alone where it has none."""

@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass, replace
-from functools import cached_property
+from collections.abc import Iterator, Sequence
+from dataclasses import replace
 
-from symamp.assumptions.read import Assumption, read_assumptions
+from symamp.assumptions.read import read_assumptions
+from symamp.circuit.near import propose
 from symamp.circuit.stage import Stage
 from symamp.errors import InputError, StageError
 from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, parse_quantity
-from symamp.exact.formulas import Formula
 from symamp.exact.shape import Shape, shape_of
 from symamp.formula import parse
 from symamp.judge.balance import PI
@@ -19,65 +18,20 @@ from symamp.judge.claim import Claim
 from symamp.judge.claim_span import ClaimSpan, claims_over_span
 from symamp.judge.errors_at import Progress
 from symamp.judge.examined import Examined, Known
-from symamp.judge.ledger import POINTS, SEED, Account, default_quantities, make_ledger
+from symamp.judge.ledger import POINTS, SEED, default_quantities, make_ledger
 from symamp.judge.proving import Prover
-from symamp.judge.sample import Sample, sample_of
-from symamp.judge.shorten_nested import short_ratios
-from symamp.judge.shortening import NO_FORMULA, Search, Tried
+from symamp.judge.response_errors import ResponseSpan
+from symamp.judge.sample import sample_of
+from symamp.judge.shorten_candidates import Candidates
+from symamp.judge.shorten_nested import Striking, Struck
+from symamp.judge.shorten_response import shortest_response
+from symamp.judge.shortening import NO_FORMULA, Search, Tried, pareto
+from symamp.judge.shortening_measures import OfQuantity
+from symamp.judge.shortest import Shortening, Shortest, TradeOff
 from symamp.judge.verdict import HOLDS, Judged
 
 _TRIES = 24  # formulas that are judged over the whole span before the search gives up
 _LONGEST = 18_000  # characters of a formula that is read back
-
-
-@dataclass(frozen=True)
-class TradeOff:
-    """A formula on the way from the exact one to the shortest: its terms, and its worst error over the sample."""
-
-    terms: int
-    worst: float
-    shape: Shape
-    assumptions: tuple[str, ...]
-    dropped: int
-
-
-@dataclass(frozen=True)
-class Shortest:
-    """The shortest formula of one quantity; `judged` is its verdict as a claim, None where none was found.
-
-    `assumptions` are those it rests on, `own` how many of them stand in the stage file (these come first), and
-    `dropped` counts single terms left out after them. `tables` are the stage file's tables of the others. `changes` is
-    what each of them changed when it was made (nan: not known), of a response that is not written out.
-    """
-
-    name: str
-    terms: int | None
-    exact_terms: int
-    shape: Shape | None
-    judged: Judged | None
-    assumptions: tuple[str, ...] = ()
-    own: int = 0
-    tables: tuple[str, ...] = ()
-    dropped: int = 0
-    tradeoff: tuple[TradeOff, ...] = ()
-    account: Account | None = None
-    changes: tuple[float, ...] = ()
-    formula_exact: Formula | None = None
-    why: str = ""
-
-
-@dataclass(frozen=True)
-class Shortening:
-    """The shortest formulas of all quantities asked for."""
-
-    stage: Stage
-    within: float
-    found: tuple[Shortest, ...]
-    warnings: tuple[str, ...] = ()
-    remarks: tuple[str, ...] = ()
-    points: int = 0
-    seed: int | None = None
-    method: str = ""
 
 
 def make_shortest(
@@ -85,30 +39,49 @@ def make_shortest(
     within: float,
     *,
     quantities: Sequence[str] = (),
+    responses: Sequence[str] = (),
     points: int = POINTS,
     seed: int = SEED,
     progress: Progress | None = None,
 ) -> Shortening:
     """The shortest formulas within a relative error, of the quantities named ("gain.dc") or of the usual ones.
 
-    Raises StageError for an unknown quantity, one in dB or degrees, and a missing bias value.
+    Of the `responses` named the shortest N(s)/D(s) too; where these are named and no quantity is, of them alone.
+    Raises StageError for an unknown quantity or response, a quantity in dB or degrees, and a missing bias value.
     """
     known = Known(stage, read_assumptions(stage))
-    found, last = [], None
-    for response, quantity in _asked(known, quantities):
+    for name in responses:
+        _known_response(stage, name, "--response")
+    found, spans = [], []
+    for response, quantity in () if responses and not quantities else _asked(known, quantities):
         job = _Job(known, response, quantity, within, points, seed, progress)
         found.append(job.shortest())
-        last = job.span or last
+        spans.append(job.span)
+    whole = [
+        shortest_response(known, name, within, points, seed, progress) for name in dict.fromkeys(responses)
+    ]
+    last = _last([*spans, *(each.span for each in whole)])
     return Shortening(
         stage,
         within,
         tuple(found),
+        tuple(whole),
         tuple(stage.warnings),
         tuple(stage.remarks),
         last.points if last else 0,
         last.seed if last else None,
         last.method if last else "",
     )
+
+
+def _last(spans: Sequence[ClaimSpan | ResponseSpan | None]) -> ClaimSpan | ResponseSpan | None:
+    """The last of the looks at the span that saw something."""
+    return next((span for span in reversed(spans) if span is not None and span.points), None)
+
+
+def _known_response(stage: Stage, name: str, key: str) -> None:
+    if name not in stage.asked:
+        raise StageError(f"there is no response {name!r}", propose(name, stage.asked, "responses"), key=key)
 
 
 def _asked(known: Known, names: Sequence[str]) -> list[tuple[str, Quantity]]:
@@ -119,28 +92,35 @@ def _asked(known: Known, names: Sequence[str]) -> list[tuple[str, Quantity]]:
             for quantity in default_quantities(known.response(name))
             if quantity.name != "unity_gain_frequency"
         ]
-    found = []
-    for text in names:
-        response, dot, rest = text.partition(".")
-        if response not in known.stage.asked or not dot:
-            listed = ", ".join(known.stage.asked)
-            raise StageError(
-                f"{text!r} names no quantity of a response",
-                f"write RESPONSE.QUANTITY, such as {next(iter(known.stage.asked))}.dc; responses are {listed}",
-                key="--quantity",
-            )
-        try:
-            quantity = parse_quantity(rest)
-        except InputError as error:
-            raise error.at(key="--quantity") from None
-        if in_decibels_or_degrees(quantity) or quantity.face is not None:
-            raise StageError(
-                f"{text} is a face of a quantity, and a formula is shortened as it is",
-                f"ask for {response}.{replace(quantity, face=None).text}",
-                key="--quantity",
-            )
-        found.append((response, quantity))
-    return list(dict.fromkeys(found))
+    return list(dict.fromkeys(_quantity(known.stage, text) for text in names))
+
+
+def _quantity(stage: Stage, text: str) -> tuple[str, Quantity]:
+    response, dot, rest = text.partition(".")
+    if response not in stage.asked or not dot:
+        listed = ", ".join(stage.asked)
+        raise StageError(
+            f"{text!r} names no quantity of a response",
+            f"write RESPONSE.QUANTITY, such as {next(iter(stage.asked))}.dc; responses are {listed}",
+            key="--quantity",
+        )
+    try:
+        quantity = parse_quantity(rest)
+    except InputError as error:
+        raise error.at(key="--quantity") from None
+    if quantity.face is not None:
+        raise StageError(
+            f"{text} is a face of a quantity, and a formula is shortened as it is",
+            f"ask for {response}.{replace(quantity, face=None).text}",
+            key="--quantity",
+        )
+    if in_decibels_or_degrees(quantity):
+        raise StageError(
+            f"{text} is in dB or degrees, and a formula is shortened to a relative error",
+            f"ask for {response}.dc or a pole",
+            key="--quantity",
+        )
+    return response, quantity
 
 
 class _Job:
@@ -159,8 +139,8 @@ class _Job:
         self.known, self.response, self.quantity, self.within = known, response, quantity, within
         self.points, self.seed, self.progress = points, seed, progress
         self.exact = known.response(response)
+        self.candidates = Candidates(known, response, self.exact)
         self.span: ClaimSpan | None = None
-        self.tables: dict[str, str] = {}
 
     @property
     def name(self) -> str:
@@ -169,33 +149,31 @@ class _Job:
     def shortest(self) -> Shortest:
         """The search, and the first of its formulas, from the shortest on, that holds all over the span."""
         nothing = Shortest(self.name, None, self.exact.terms, None, None)
-        if self.exact.quantity(self.quantity.text).value is None:
-            return replace(nothing, why=self.exact.quantity(self.quantity.text).why or "it has no value")
-        if not self.exact.expanded:
-            return self._nested(nothing)
-        search = Search(
-            self.exact,
-            self.quantity,
-            self._candidates(),
-            sample_of(self.known.stage),
-            self.within,
-            self.progress,
-        )
+        value = self.exact.quantity(self.quantity.text)
+        if value.value is None:
+            return replace(nothing, why=value.why or "it has no value")
+        if value.value == 0:
+            return replace(nothing, why="it is 0, of which no error is a part")
+        return self._written(nothing) if self.exact.expanded else self._nested(nothing)
+
+    def _written(self, nothing: Shortest) -> Shortest:
+        measure = OfQuantity(self.exact, self.quantity, sample_of(self.known.stage))
+        search = Search(self.exact, measure, self.candidates.all, self.within, self.progress)
         tried = search.run()
         exact_terms = search.of(frozenset()).terms
         exact_terms = self.exact.terms if exact_terms == NO_FORMULA else exact_terms
-        tradeoff = tuple(self._step(each) for each in pareto(tried))
+        tradeoff = tuple(self._step(each) for each in pareto(tried, self.within))
         nothing = replace(nothing, exact_terms=exact_terms, tradeoff=tradeoff)
         within = sorted(
             (each for each in tried if each.worst <= self.within), key=lambda each: (each.terms, each.worst)
         )
         if not within:
-            return replace(nothing, why="no set of assumptions leads to a formula within the bound")
-        for tried_one in within[:_TRIES]:
-            each = search.pruned(tried_one)
+            why = "no set of assumptions leads to a formula" + (" within the bound" if tried else "")
+            return replace(nothing, why=why)
+        for each in within[:_TRIES]:
             verdict = self._judged(each)
             if verdict is not None and verdict.verdict == HOLDS:
-                return self._found(nothing, each, verdict)
+                return self._found(nothing, search.pruned(each), verdict)
         return replace(nothing, why="no formula that was tried holds all over the span")
 
     def _nested(self, nothing: Shortest) -> Shortest:
@@ -203,61 +181,52 @@ class _Job:
         parts = self.known.stage.parts
         matched = [
             a
-            for a in self._candidates()
+            for a in self.candidates.all
             if a.equal and all(parts[m].kind.prefixed for g in a.equal for m in g)
         ]
         try:
-            for found in short_ratios(self.exact, self.quantity, matched, self.sample, self.within):
-                tried = Tried(found.ratio, frozenset(), found.dropped, found.worst)
-                verdict = self._judged(tried)
-                if verdict is not None and verdict.verdict == HOLDS:
-                    step = TradeOff(found.terms, found.worst, self._shape(tried), found.names, found.dropped)
-                    return replace(
-                        nothing,
-                        terms=found.terms,
-                        shape=step.shape,
-                        judged=verdict,
-                        assumptions=found.names,
-                        changes=found.changes,
-                        dropped=found.dropped,
-                        tradeoff=(step,),
-                    )
+            striking = Striking(self.exact, self.quantity, matched, sample_of(self.known.stage))
         except StageError as error:
-            return replace(nothing, why=error.problem)
+            return replace(nothing, why=f"{error.problem}; {error.remedy}")
+        first = striking.within(self.within)
+        every = [*first, *striking.around(self.within)]
+        named = [Tried(each.ratio, frozenset(each.names), each.dropped, each.worst) for each in every]
+        steps = pareto(named, self.within)
+        nothing = replace(nothing, tradeoff=tuple(self._step(step) for step in steps))
+        for found in self._in_turn(striking, every):
+            verdict = self._judged(Tried(found.ratio, frozenset(), found.dropped, found.worst))
+            if verdict is not None and verdict.verdict == HOLDS:
+                return self._struck(nothing, found, verdict)
         return replace(nothing, why="no formula that was tried holds all over the span")
 
-    @cached_property
-    def sample(self) -> Sample:
-        return sample_of(self.known.stage)
+    def _in_turn(self, striking: Striking, every: Sequence[Struck]) -> Iterator[Struck]:
+        """Those within the bound, the shortest first; where none of them holds, tighter ones are sought."""
+        yield from sorted(
+            (each for each in every if each.worst <= self.within), key=lambda each: (each.terms, each.worst)
+        )
+        yield from striking.tighter(self.within)
 
-    def _candidates(self) -> list[Assumption]:
-        own = [a for a in self.known.assumptions if a.applies(self.response)]
-        names = {a.name for a in own}
-        found = list(own)
-        for entry in self.known.entries(self.response):
-            # That two parts are alike is for the stage file to say: a formula in the other one's symbols misleads.
-            if (
-                entry.plausible
-                and (not entry.assumption.equal or not self.exact.expanded)
-                and entry.assumption.name not in names
-            ):
-                found.append(entry.assumption)
-                self.tables[entry.assumption.name] = entry.toml
-        return found
+    def _struck(self, nothing: Shortest, found: Struck, verdict: Judged) -> Shortest:
+        own = sum(1 for name in found.made if name not in self.candidates.tables)
+        return replace(
+            nothing,
+            terms=found.terms,
+            shape=self._shape(Tried(found.ratio, frozenset(), found.dropped, found.worst)),
+            judged=verdict,
+            assumptions=found.names,
+            own=own,
+            tables=(*self.candidates.tables_of(found.made), *found.tables),
+            changes=found.changes,
+            dropped=found.dropped,
+        )
 
     def _shape(self, tried: Tried) -> Shape:
         assert tried.ratio is not None
         return shape_of(*tried.ratio, weights={**self.exact.bias_values, PI: 3.141592653589793})
 
     def _step(self, tried: Tried) -> TradeOff:
-        return TradeOff(
-            tried.terms, tried.worst, self._shape(tried), self._in_order(tried.made), tried.dropped
-        )
-
-    def _in_order(self, made: frozenset[str]) -> tuple[str, ...]:
-        """Those of the stage file first, as listed there."""
-        own = [a.name for a in self.known.assumptions if a.name in made]
-        return (*own, *(name for name in self.tables if name in made))
+        names = self.candidates.in_order(tried.made) if self.exact.expanded else tuple(sorted(tried.made))
+        return TradeOff(tried.terms, tried.worst, self._shape(tried), names, tried.dropped)
 
     def _judged(self, tried: Tried) -> Judged | None:
         text = self._shape(tried).text()
@@ -275,15 +244,13 @@ class _Job:
         return judged(examined, figures)
 
     def _found(self, base: Shortest, tried: Tried, verdict: Judged) -> Shortest:
-        names = self._in_order(tried.made)
-        own = sum(1 for name in names if name not in self.tables)
+        names = self.candidates.in_order(tried.made)
         account = None
         if names:
-            candidates = {a.name: a for a in self._candidates()}
             ledger = make_ledger(
                 self.known.stage,
                 quantities=[self.name],
-                assumptions=[candidates[name] for name in names],
+                assumptions=self.candidates.named(names),
                 points=self.points,
                 seed=self.seed,
             )
@@ -294,23 +261,9 @@ class _Job:
             shape=self._shape(tried),
             judged=verdict,
             assumptions=names,
-            own=own,
-            tables=tuple(self.tables[name] for name in names if name in self.tables),
+            own=self.candidates.own_count(names),
+            tables=self.candidates.tables_of(names),
             dropped=tried.dropped,
             account=account,
             formula_exact=verdict.formula_exact,
         )
-
-
-def pareto(tried: Sequence[Tried]) -> list[Tried]:
-    """Of each number of terms the least worst error, as far as that is no larger than that of longer formulas."""
-    best: dict[int, Tried] = {}
-    for each in tried:
-        if each.terms not in best or each.worst < best[each.terms].worst:
-            best[each.terms] = each
-    kept: list[Tried] = []
-    for terms in sorted(best, reverse=True):
-        while kept and kept[-1].worst >= best[terms].worst:
-            kept.pop()
-        kept.append(best[terms])
-    return kept

@@ -7,7 +7,8 @@ from pathlib import Path
 
 from symamp.circuit.stagefile import read_stage
 from symamp.errors import InputError, StageError
-from symamp.judge.shorten import Shortening, make_shortest
+from symamp.judge.shorten import make_shortest
+from symamp.judge.shortest import Shortening, Shortest, ShortestResponse
 from symamp.show.picture import Picture, checked_ending
 from symamp.show.running import Bar, placed, print_json, printed_page
 from symamp.show.shorten_json import shorten_json
@@ -17,7 +18,14 @@ from symamp.values import read_percent
 
 
 def shorten(
-    file: str, within: str, quantities: Sequence[str], plot: str | None, points: int, seed: int, as_json: bool
+    file: str,
+    within: str,
+    quantities: Sequence[str],
+    responses: Sequence[str],
+    plot: str | None,
+    points: int,
+    seed: int,
+    as_json: bool,
 ) -> int:
     """`symamp shorten`: 0 also where a quantity has no short formula, which is said."""
     bound = allowed_error(within)
@@ -26,7 +34,13 @@ def shorten(
     stage = read_stage(file)
     with placed(stage), Bar() as bar:
         made = make_shortest(
-            stage, bound, quantities=quantities, points=points, seed=seed, progress=bar.advance
+            stage,
+            bound,
+            quantities=quantities,
+            responses=responses,
+            points=points,
+            seed=seed,
+            progress=bar.advance,
         )
     drawn = None
     if plot is not None:
@@ -56,15 +70,16 @@ def allowed_error(text: str) -> float:
 
 
 def tradeoff_picture(made: Shortening) -> Picture:
-    """Terms against worst error of the one quantity asked for. StageError where there are several, or nothing."""
-    if len(made.found) != 1:
+    """Terms against worst error of the one formula asked for. StageError where there are several, or nothing."""
+    every: list[Shortest | ShortestResponse] = [*made.found, *made.responses]
+    if len(every) != 1:
         known = ", ".join(found.name for found in made.found)
         raise StageError(
-            f"a plot is of one quantity, and there are {len(made.found)}",
+            f"a plot is of one quantity, and there are {len(every)}",
             f"name it with --quantity, one of {known}",
             key="--plot",
         )
-    (found,) = made.found
+    (found,) = every
     if not found.tradeoff:
         raise StageError(f"there is nothing to plot: {found.why}", "ask for another quantity", key="--plot")
     steps = [(step.terms, step.worst) for step in found.tradeoff]
