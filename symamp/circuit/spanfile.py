@@ -59,7 +59,10 @@ def _outside(side: Side, value: Fraction | None) -> list[str]:
     if value is None or side.low <= value <= side.high:
         return []
     shown = [show_value(float(x), side.unit) for x in (value, side.low, side.high)]
-    return [f"{side.name}: its bias, {shown[0]}, lies outside its side of the span, {shown[1]} to {shown[2]}"]
+    return [
+        f"{side.name}: its bias, {shown[0]}, lies outside its side of the span, {shown[1]} to {shown[2]}; "
+        "the bias point is looked at in any case, and a worst value may be its own"
+    ]
 
 
 class _Reader:

@@ -34,6 +34,8 @@ LONGEST_LINE = 20_000  # characters; a longer one is no stage, and can take toml
 _OTHER_SECTIONS = ("title", "response", "bias", "span", "assumption", "claim")
 _LISTS = ("assumption", "claim")
 _TOML_PLACE = re.compile(r" \(at (?:line (\d+), column \d+|end of document)\)")
+_BACKSLASH = re.compile(r"[Uu]nescaped '\\\\'|[Ee]scape|hex value")
+SINGLE_QUOTES = r"write LaTeX between single quotes, formula = '\frac{g_{m1}}{C_L}'"
 _TWICE = re.compile(r"[Oo]verwrite|twice|[Dd]uplicate|[Mm]utate|[Rr]edefine")
 
 
@@ -140,6 +142,8 @@ def _toml_error(message: str, text: str, file: str | None) -> StageError:
     if _TWICE.search(message):
         return StageError(f"something is defined twice: {message}", "define it once", file=file, line=line)
     remedy = 'a stage file is TOML, in which text stands in quotes: CL = ["out", "gnd"]'
+    if _BACKSLASH.search(message):
+        remedy = f"between double quotes a backslash is an escape; {SINGLE_QUOTES}"
     return StageError(f"this is not TOML: {message}", remedy, file=file, line=line)
 
 

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 from typing import Any
 
 from symamp.circuit.formulas import read_formula
 from symamp.circuit.near import propose
 from symamp.circuit.stage import Stage
-from symamp.circuit.stagefile import locate
+from symamp.circuit.stagefile import SINGLE_QUOTES, locate
 from symamp.errors import InputError, ReadError, StageError
 from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, parse_quantity, unit_of
 from symamp.formula import Node, Number, walk
@@ -18,6 +19,8 @@ from symamp.values import quoted, read_percent, read_value
 WITHIN = "5 %"  # the error that a claim of an option is allowed unless it says so
 _KEYS = ("about", "formula", "within")
 _EXAMPLE = 'about = "gain.dc", formula = "-gm1*ro1", within = "10 %"'
+# What is left of \frac, \beta, \right, \tau, \times and the like where TOML has taken \f, \b, \r and \t as escapes.
+_ESCAPED = re.compile(r"[\b\f]|\r(?=[a-z])|\t(?=imes|frac|ext|au|heta)")
 _OPTION = "write RESPONSE.QUANTITY = FORMULA, such as 'gain.dc = -gm1*ro1'"
 
 
@@ -104,6 +107,12 @@ def _from_table(stage: Stage, raw: Mapping[str, Any], key: str) -> Claim:
     formula = raw["formula"]
     if isinstance(formula, bool) or not isinstance(formula, str | int | float):
         raise StageError(f"formula is {quoted(formula)}", "write it as text", key="formula")
+    if isinstance(formula, str) and _ESCAPED.search(formula):
+        raise StageError(
+            "formula holds a control character, which TOML makes of a backslash between double quotes",
+            SINGLE_QUOTES,
+            key="formula",
+        )
     try:
         node = read_formula(stage, str(formula))
         decibels = _in_decibels(response, quantity, node)

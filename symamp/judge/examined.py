@@ -33,7 +33,7 @@ from symamp.judge.claimed import (
 from symamp.judge.conditions import Balanced, balanced, symbols_of
 from symamp.judge.error_formula import ErrorFormula, error_of_ratios
 from symamp.judge.errors_at import error_of
-from symamp.judge.off import Off, likely_off, unit_words, what_is_off
+from symamp.judge.off import Off, cycles_words, likely_off, unit_words, what_is_off
 from symamp.judge.ways import Ways
 
 _RATIONAL = ("dc", "hf", "a", "b")
@@ -111,7 +111,9 @@ class Examined:
         claimed = claimed_dimension(self.known.stage, node)
         wanted = wanted_dimension(self.quantity, self.unit, self.exact.unit, self.claim.decibels)
         own = "" if in_decibels_or_degrees(self.quantity) else self.unit
-        return "" if claimed == wanted else unit_words(claimed, wanted, own)
+        if claimed == wanted:
+            return cycles_words(node, own)
+        return unit_words(claimed, wanted, own)
 
     @cached_property
     def claimed(self) -> float:

@@ -19,7 +19,7 @@ from flint import fmpz_mpoly
 from symamp.circuit.stage import Stage
 from symamp.exact.polys import held
 from symamp.exact.tape import term_dict, term_value
-from symamp.formula import Dimension
+from symamp.formula import Dimension, Negate, Node, Number
 from symamp.judge.balance import PI, Balance, Comparison
 from symamp.values import show_value
 
@@ -251,6 +251,20 @@ def unit_words(claimed: Dimension, wanted: Dimension, unit: str = "") -> str:
     have, want = _in_words(_unit_name(claimed)), _in_words(unit or _unit_name(wanted))
     hint = f"; a factor of {_kind(missing)} is missing or too much" if missing else ""
     return f"the formula is {have}, and the quantity is {want}{hint}"
+
+
+def cycles_words(node: Node, unit: str) -> str:
+    """The words for a plain number in Hz of a quantity in rad/s, or the reverse; "" for all else.
+
+    Both are one dimension, so only what stands beside the number can tell them apart.
+    """
+    while isinstance(node, Negate):
+        node = node.a
+    written = node.unit if isinstance(node, Number) else ""
+    if {written, unit} != {"Hz", "rad/s"}:
+        return ""
+    remedy = ".hz may be meant" if written == "Hz" else "divide it by 2*pi"
+    return f"the number is in {written}, and the quantity is in {unit}; {remedy}"
 
 
 def _in_words(unit: str) -> str:

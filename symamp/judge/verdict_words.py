@@ -13,6 +13,7 @@ from symamp.judge.verdict import FAILS, HOLDS, HOLDS_HERE, WRONG
 from symamp.values import show_value
 
 _ROUNDING = 1e-9  # how far beyond its bound an error may lie that is at it
+_LONG = 60  # characters of a ratio that a sentence can carry
 _CONSTANTS = (
     2,
     0.5,
@@ -70,7 +71,10 @@ def _large_ratio(claim: Examined) -> str:
     value, tacit = max(ratios, key=lambda pair: pair[0], default=(0.0, None))
     if tacit is None or not value > 1:
         return ""
-    text = shape_of(*tacit.shown(claim.values), weights=claim.values).text()
+    text = shape_of(tacit.numerator, tacit.denominator, weights=claim.values).text()
+    if len(text) > _LONG:
+        leading = shape_of(*tacit.shown(claim.values), weights=claim.values).text()
+        text = f"a ratio of the order of {leading}"
     return f"; it takes {text} to be small, and that is {show_value(value, '', 3)}"
 
 

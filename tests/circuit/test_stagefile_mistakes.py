@@ -174,6 +174,7 @@ def test_a_label_that_is_a_symbol_or_an_alias(label: str) -> None:
         ("a = " + "[" * 15_000, None, "nested too deeply"),
         ("a." * 15_000 + "b = 1", 1, "characters"),
         ("x = " + "9" * 5000, None, "not TOML"),
+        ('[[claim]]\nformula = "g_{m1} \\parallel RL"\n', 2, "single quotes"),
         ('[resistor]\nR1 = ["a", "gnd"]\n', None, "no response"),
         ('[resistor]\nR1 = ["a", "gnd"]\nresponse = 3\n', 3, "named terminals|takes two nodes"),
         ('response = 3\n[resistor]\nR1 = ["a", "gnd"]\n', 1, "no section"),

@@ -242,3 +242,28 @@ def _as_found(found: dict[int, tuple]) -> dict[int, tuple]:
     for n, (verdict, error, effects, span) in found.items():
         plain[n] = verdict, error.expected, {k: v.expected for k, v in effects.items()}, span.expected
     return plain
+
+
+@pytest.mark.parametrize(
+    ("claim", "words"),
+    [
+        ("gain.p1 = 477 kHz", "the number is in Hz, and the quantity is in rad/s; .hz may be meant"),
+        (
+            "gain.p1.magnitude = --477 kHz",
+            "the number is in Hz, and the quantity is in rad/s; .hz may be meant",
+        ),
+        ("gain.p1.hz = 3 Mrad/s", "the number is in rad/s, and the quantity is in Hz; divide it by 2*pi"),
+        ("gain.bandwidth = 3 Mrad/s", "the number is in rad/s, and the quantity is in Hz; divide it by 2*pi"),
+    ],
+)
+def test_a_number_in_hz_is_no_root_in_radians(claim: str, words: str) -> None:
+    """One dimension, two units: 477 kHz for a pole at 3 Mrad/s once counted as 0.477 Mrad/s."""
+    found = judged(stage_of(RIGHT), claim)
+    assert (found.verdict, found.why) == ("wrong", words)
+
+
+def test_two_pi_times_a_number_in_hz_is_one_in_radians() -> None:
+    """(5 − 1 − 1) mS/1 nF is 3 Mrad/s, which is 477.46 kHz."""
+    found = judged(stage_of(RIGHT), "gain.p1 = 2*pi*477 kHz")
+    assert found.verdict == "holds"
+    assert found.error == pytest.approx(477 / 477.4648 - 1, rel=1e-3)
