@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from symamp.circuit.stage import Stage
 from symamp.exact.formulas import Formula
@@ -87,6 +87,14 @@ class Judged:
     why_not: str = ""
     remarks: tuple[str, ...] = ()
     symbols: frozenset[str] = frozenset()
+
+    @property
+    def verdict_words(self) -> str:
+        """The verdict, with the root it is about where that is another than the one claimed."""
+        if not self.root:
+            return self.verdict
+        named = replace(self.claim.quantity, face=None).text
+        return f"{self.verdict} for {self.root}, not {named}"
 
 
 @dataclass(frozen=True)

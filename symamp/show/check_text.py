@@ -78,7 +78,7 @@ def judged_page(
     """One claim; `number` stands before it. `told` are the quantities whose exact formula has been shown."""
     lead = "" if number is None else f"{number}  "
     page.prose(f"{lead}{judged.claim.about} = {judged.claim.formula}, within {within_words(judged.claim)}")
-    page.prose(f"{judged.verdict}: {judged.why}", _STYLES.get(judged.verdict, "bold red"), indent=2)
+    page.prose(f"{judged.verdict_words}: {judged.why}", _STYLES.get(judged.verdict, "bold red"), indent=2)
     if judged.root:
         page.prose(
             f"this formula is that of {judged.root}, not of {judged.claim.quantity.text}: error and verdict are "

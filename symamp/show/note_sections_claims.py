@@ -64,7 +64,7 @@ def verdict_table(check: Check) -> Table:
         if known:
             how = "" if judged.span is None or len(known) < 2 else f" ({how_known(judged.span)})"
             row.append(inline(range_text(judged.span, judged.unit, absolute=judged.absolute) + how))
-        rows.append((*row, (Strong(judged.verdict),)))
+        rows.append((*row, (Strong(judged.verdict_words),)))
     return Table("Hand formulas.", tuple(header), tuple(rows), (LEFT,) * len(header))
 
 
@@ -108,7 +108,9 @@ def _claim(judged: Judged, check: Check, pictures: Sequence[Drawing]) -> Section
     blocks: list[Block] = [
         *_as_written(judged),
         Paragraph(
-            inline(f"Within {within_text(judged)}: ", Strong(judged.verdict), f". {_sentence(judged.why)}")
+            inline(
+                f"Within {within_text(judged)}: ", Strong(judged.verdict_words), f". {_sentence(judged.why)}"
+            )
         ),
     ]
     if judged.root:

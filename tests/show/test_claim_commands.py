@@ -11,6 +11,7 @@ from shown import ASSUMPTIONS, CASCODE, SPAN, run, saved, walk
 
 import symamp
 
+RECIPES = Path(__file__).parents[2] / "recipes"
 CLAIMS = """
 [[claim]]
 about = "gain.dc"
@@ -257,3 +258,12 @@ RL = "7 kohm"
     assert "RA·RB/(RL·(RA + RB))" in run("check", path, *claim).stdout
     wrong = run("check", path, "--claim", "gain.dc = 2*RB/(RA + RB)", "--within", "10 %").stdout
     assert "too large by a factor of 2" in wrong
+
+
+def test_a_formula_of_another_root_says_so_in_its_verdict() -> None:
+    """A newcomer read "holds" beside p1, of a formula that is p2's."""
+    file = str(RECIPES / "what-my-formula-assumes" / "opamp.stage.toml")
+    result = run(
+        "check", file, "--claim", "gain.p1.hz = gm2*CC/(2*pi*(C1*C2 + CC*(C1 + C2)))", "--within", "10 %"
+    )
+    assert "\n  holds for p2, not p1: " in result.stdout

@@ -135,7 +135,7 @@ def test_verdicts_are_said_with_their_figures() -> None:
         "It follows from no body effect.",
         "It follows from all & sundry and 100 % sure (not assumed in the stage file).",
         "worst at g_{m2} = 3.12 mS.",
-        "Within 5.00 %: wrong.",
+        "Within 5.00 %: wrong for p2, not p1.",
         "no error: the formula has no value.",
         "The formula is that of p2, not of p1.hz",
         r"\lvert p_1 \rvert / 2 \pi \approx \frac{1}{2 \pi C_L (r_{o1} \parallel r_{o2})}",
