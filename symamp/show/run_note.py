@@ -9,6 +9,7 @@ from typing import Any
 from symamp.circuit.stage import Stage
 from symamp.circuit.stagefile import read_stage
 from symamp.judge.check import make_check
+from symamp.judge.claim_reading import read_claims
 from symamp.judge.errors_at import Progress
 from symamp.judge.ledger import POINTS, SEED, make_ledger
 from symamp.show.json_parts import head
@@ -60,10 +61,13 @@ def document_of(
     Errors as `make_ledger` and `make_check` raise them.
     """
     ledger = check = None
+    claims = read_claims(stage)  # before the ledger, which may take long: a slip in a claim is told at once
     if stage.assumptions:
         ledger = make_ledger(stage, points=points, seed=seed, progress=progress, executor=executor)
-    if stage.claims:
-        check = make_check(stage, points=points, seed=seed, progress=progress, executor=executor)
+    if claims:
+        check = make_check(
+            stage, claims=claims, points=points, seed=seed, progress=progress, executor=executor
+        )
     pictures = note_pictures(stage, ledger=ledger, check=check)
     return note_document(stage, ledger=ledger, check=check, pictures=pictures)
 

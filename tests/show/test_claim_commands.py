@@ -10,6 +10,7 @@ import pytest
 from shown import ASSUMPTIONS, CASCODE, SPAN, run, saved, walk
 
 import symamp
+from symamp.show import run_note
 
 RECIPES = Path(__file__).parents[2] / "recipes"
 CLAIMS = """
@@ -267,3 +268,19 @@ def test_a_formula_of_another_root_says_so_in_its_verdict() -> None:
         "check", file, "--claim", "gain.p1.hz = gm2*CC/(2*pi*(C1*C2 + CC*(C1 + C2)))", "--within", "10 %"
     )
     assert "\n  holds for p2, not p1: " in result.stdout
+
+
+def test_a_slip_in_a_claim_is_told_before_the_ledger_is_worked_out(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Of a large stage the ledger takes long, and was lost to a missing bracket."""
+
+    def never(*_: object, **__: object) -> None:
+        raise AssertionError("the ledger was worked out first")
+
+    monkeypatch.setattr(run_note, "make_ledger", never)
+    slip = CLAIMS.replace("-gm1*gm2*ro1*ro2", "-gm1*gm9*ro1*ro2")
+    result = run("note", saved(tmp_path, CASCODE, SPAN, ASSUMPTIONS, slip), "-o", str(tmp_path / "a.tex"))
+    assert result.exit_code == 2
+    assert 'no symbol "gm9"' in result.stderr
+    assert not (tmp_path / "a.tex").exists()
