@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+from dataclasses import replace
 
 from symamp.circuit.checks import check_asked
 from symamp.circuit.kinds import CAPACITANCE, INDUCTANCE
@@ -23,6 +24,21 @@ def derive(stage: Stage, asked: Asked) -> Response:
     ratio = ratio_of(system, asked)
     _refuse_vanishing(stage, asked, system, ratio)
     return Response(stage, asked, ratio.unit, form_of(stage, ratio))
+
+
+def dc_alone(exact: Response) -> Response | None:
+    """A response of which only the dc value is that of `exact`, and which is written out though `exact` is not.
+
+    Without reactances a large network often has few enough product terms. None where `exact` is written out, where
+    there are too many terms even so, or where the value at s = 0 is a limit, 0 or infinite.
+    """
+    if isinstance(exact.form, Expanded):
+        return None
+    ratio = ratio_of(build_system(exact.stage, exact.asked.without).at_dc(), exact.asked)
+    if any(vanishes(ratio.graph)):
+        return None
+    form = form_of(exact.stage, ratio)
+    return replace(exact, form=form) if isinstance(form, Expanded) else None
 
 
 def form_of(stage: Stage, ratio: Ratio) -> Expanded | Nested:

@@ -8,7 +8,7 @@ an unknown; columns are node voltages, then those currents.
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import NamedTuple
 
 from symamp.circuit.kinds import Element
@@ -58,6 +58,18 @@ class System:
     branch: dict[str, int]
     sources: dict[str, tuple[str, str]]
     symbols: tuple[str, ...]
+
+    def at_dc(self) -> System:
+        """The same at s = 0: capacitances open, inductances short circuits."""
+        rows = tuple(
+            {
+                column: kept
+                for column, entry in row.items()
+                if (kept := tuple(term for term in entry if not term.s_power))
+            }
+            for row in self.rows
+        )
+        return replace(self, rows=rows)
 
     def column_names(self) -> dict[int, str]:
         """What each unknown is, in words."""

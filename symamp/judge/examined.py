@@ -13,8 +13,8 @@ from symamp.assumptions.read import Assumption
 from symamp.circuit.stage import Stage
 from symamp.errors import StageError
 from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root
-from symamp.exact.derive import derive
-from symamp.exact.formulas import Formula, PolyRatio, formula_of
+from symamp.exact.derive import dc_alone, derive
+from symamp.exact.formulas import Formula, PolyRatio, formula_of, rational_of
 from symamp.exact.missing_figures import remarks_beside, why_missing
 from symamp.exact.polys import lowest_terms, times_two_pi
 from symamp.exact.response import Response
@@ -47,6 +47,7 @@ class Known:
         self.stage = stage
         self.assumptions = tuple(assumptions)
         self._responses: dict[str, Response] = {}
+        self._at_dc: dict[str, Response | None] = {}
         self._entries: dict[str, tuple[Entry, ...]] = {}
         self._ways: dict[str, Ways] = {}
 
@@ -62,6 +63,12 @@ class Known:
                 )
             self._responses[name] = exact
         return self._responses[name]
+
+    def dc_alone(self, name: str) -> Response | None:
+        """The dc value of a response that is not written out, where that is."""
+        if name not in self._at_dc:
+            self._at_dc[name] = dc_alone(self.response(name))
+        return self._at_dc[name]
 
     def entries(self, name: str) -> tuple[Entry, ...]:
         if name not in self._entries:
@@ -242,6 +249,14 @@ class Examined:
             return None
         above, below = balance.above[0], balance.below[1]
         return lowest_terms(below - above, above)
+
+    @cached_property
+    def exact_ratio(self) -> PolyRatio | None:
+        """The exact quantity without its face as a ratio, where it is rational; of a large response its dc value."""
+        if self.quantity.face not in (None, "magnitude", "re") or self.quantity.name not in _RATIONAL:
+            return None
+        exact = self.known.dc_alone(self.claim.response) if self.quantity.name == "dc" else None
+        return rational_of(exact or self.exact, Quantity(self.quantity.name, self.quantity.index))
 
     @cached_property
     def frequency(self) -> PolyRatio | None:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from concurrent.futures import Executor
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
 
@@ -14,18 +14,16 @@ from symamp.assumptions.read import Assumption, read_assumptions
 from symamp.circuit.stage import Stage
 from symamp.errors import InputError, StageError
 from symamp.exact.asked_quantity import Quantity, in_decibels_or_degrees, is_root, parse_quantity
-from symamp.exact.derive import derive
 from symamp.exact.formulas import Formula, formula_of
 from symamp.exact.missing_figures import remarks_beside, why_missing
-from symamp.exact.response import Response
 from symamp.judge.error_formula import ErrorFormula, error_formula
 from symamp.judge.errors_at import ErrorTable, Progress
 from symamp.judge.ledger_proofs import with_proofs
+from symamp.judge.ledger_tables import Notes, tables_of
 from symamp.judge.lost_roots import LostRoot, lost_and_new
 from symamp.judge.proving import Prover
 from symamp.judge.sets import FIGURES, names_of
 from symamp.judge.span_errors import SpanErrors, SpanFigure, span_errors
-from symamp.judge.sure_roots import unsure_roots
 from symamp.span.executing import Engine
 from symamp.values import show_value
 
@@ -101,12 +99,6 @@ class Ledger:
         raise KeyError(f"{name}: this ledger has {known}")
 
 
-@dataclass
-class _Notes:
-    warnings: list[str] = field(default_factory=list)
-    remarks: list[str] = field(default_factory=list)
-
-
 def make_ledger(
     stage: Stage,
     *,
@@ -134,15 +126,18 @@ def make_ledger(
             file=stage.file,
         )
     asked = _asked(stage, quantities)
-    notes = _Notes(list(stage.warnings), list(stage.remarks))
-    tables = {name: _table(stage, name, made, wanted, notes, progress) for name, wanted in asked.items()}
-    swept = span_errors(stage, list(tables.values()), points, seed, progress, executor)
+    notes = Notes(list(stage.warnings), list(stage.remarks))
+    tables = {name: tables_of(stage, name, made, wanted, notes, progress) for name, wanted in asked.items()}
+    every = [table for each in tables.values() for table in each]
+    swept = span_errors(stage, every, points, seed, progress, executor)
     prover = Prover.of(stage) if prove else None
     if swept is not None and prover is not None:
-        swept = with_proofs(swept, list(tables.values()), prover)
+        swept = with_proofs(swept, every, prover)
     accounts: list[Account] = []
-    for name, table in tables.items():
-        accounts.extend(_accounts(name, table, swept))
+    for name, (table, *others) in tables.items():
+        found = [account for each in (table, *others) for account in _accounts(name, each, swept)]
+        order = asked[name] or [account.quantity for account in found]
+        accounts.extend(sorted(found, key=lambda account: order.index(account.quantity)))
         if not table.plan.shares:
             notes.remarks.append(
                 f"{name}: shares are worked out for up to 12 assumptions, and there are {table.plan.count}"
@@ -181,58 +176,6 @@ def _asked(stage: Stage, names: Sequence[str]) -> dict[str, tuple[Quantity, ...]
         if quantity not in found[response]:
             found[response].append(quantity)
     return {name: tuple(found[name]) for name in stage.asked if name in found}
-
-
-def default_quantities(exact: Response) -> tuple[Quantity, ...]:
-    """dc, the poles and zeros, bandwidth, and unity-gain frequency where the response has one."""
-    names = ["dc"]
-    if exact.quantity("dc").value == 0:  # a response without a dc is known by its band
-        names += ["peak", "low_corner", "high_corner"]
-    names += [f"p{k}" for k in range(1, len(exact.poles()) + 1)]
-    names += [f"z{k}" for k in range(1, len(exact.zeros()) + 1)]
-    names += [
-        name for name in ("bandwidth", "unity_gain_frequency") if exact.quantity(name).value is not None
-    ]
-    return tuple(parse_quantity(name) for name in names)
-
-
-def _table(
-    stage: Stage,
-    name: str,
-    made: Sequence[Assumption],
-    wanted: tuple[Quantity, ...] | None,
-    notes: _Notes,
-    progress: Progress | None,
-) -> ErrorTable:
-    exact = derive(stage, stage.asked[name])
-    if exact.missing:
-        raise StageError(
-            f"the ledger needs a bias value for {', '.join(exact.missing)}",
-            f'give it in [bias], such as {exact.missing[0]} = "…"',
-            key="bias",
-            file=stage.file,
-        )
-    table = ErrorTable(exact, made, wanted or default_quantities(exact), progress)
-    full = table.approximations[table.plan.masks[-1]]
-    notes.warnings.extend(table.warnings)
-    notes.remarks.extend(f"{name}: {remark}" for remark in full.remarks)
-    if full.response is None:
-        notes.remarks.append(f"{name}: under all assumptions there is no response left: {full.why}")
-    notes.remarks.extend(_new_root_words(name, table))
-    notes.warnings.extend(unsure_roots(exact, table.quantities))
-    return table
-
-
-def _new_root_words(name: str, table: ErrorTable) -> list[str]:
-    """Roots that the assumptions bring and the exact response does not have, where no account names them."""
-    words: list[str] = []
-    approximate = table.approximations[table.plan.masks[-1]].response
-    for letter, word in (("p", "pole"), ("z", "zero")):
-        if approximate is None or any(quantity.name == letter for quantity in table.quantities):
-            continue  # the accounts of such roots name new ones
-        for root in lost_and_new(table.exact, approximate, letter)[1]:
-            words.append(f"{name}: under all assumptions a new {word} appears at {show_value(root.hz, 'Hz')}")
-    return words
 
 
 def _accounts(name: str, table: ErrorTable, swept: SpanErrors | None) -> list[Account]:

@@ -76,8 +76,10 @@ def _of_set(
     if quantity.name in _FREQUENCIES:
         return prover.crossing(exact, quantity, times_two_pi(formula), hint)
     whole = rational_of(exact, quantity)
-    ratio = None if whole is None else error_ratio(exact, whole, formula)
-    return None if ratio is None else prover.ratio(ratio)
+    if whole is None:
+        return None
+    ratio = error_ratio(exact, whole, formula)
+    return prover.error(formula, whole) if ratio is None else prover.ratio(ratio)
 
 
 def _formula(exact: Response, approximate: Response, quantity: Quantity) -> PolyRatio | None:

@@ -14,7 +14,7 @@ from symamp.exact.formulas import PolyRatio
 from symamp.exact.response import Response
 from symamp.judge.examined import Examined
 from symamp.judge.span_errors import SpanFigure, Where
-from symamp.span.bounding import End, Proved, prove_range
+from symamp.span.bounding import End, Proved, prove_error_range, prove_range
 from symamp.span.boxes import ProofBox
 from symamp.span.crossing_proof import prove_crossing_error
 from symamp.span.points import Box
@@ -54,6 +54,8 @@ class Prover:
         ratio = claim.error_ratio
         if ratio is not None:
             return self.ratio(ratio)
+        if claim.exact_ratio is not None and claim.target is not None:
+            return self.error(claim.target[1], claim.exact_ratio)
         if is_root(claim.quantity) and claim.quantity.face in (None, "magnitude", "hz"):
             if claim.target is None:
                 return None
@@ -67,6 +69,18 @@ class Prover:
         """The range of a ratio."""
         return prove_range(
             ratio, self.box, tolerance=_TOLERANCE, relative=_RELATIVE, budget=_BOXES, seconds=_SECONDS
+        )
+
+    def error(self, formula: PolyRatio, exact: PolyRatio) -> Proved:
+        """The range of formula/exact − 1, of ratios that are too large to be multiplied out."""
+        return prove_error_range(
+            formula,
+            exact,
+            self.box,
+            tolerance=_TOLERANCE,
+            relative=_RELATIVE,
+            budget=_BOXES,
+            seconds=_SECONDS,
         )
 
     def root(

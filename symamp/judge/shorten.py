@@ -18,7 +18,8 @@ from symamp.judge.claim import Claim
 from symamp.judge.claim_span import ClaimSpan, claims_over_span
 from symamp.judge.errors_at import Progress
 from symamp.judge.examined import Examined, Known
-from symamp.judge.ledger import POINTS, SEED, default_quantities, make_ledger
+from symamp.judge.ledger import POINTS, SEED, make_ledger
+from symamp.judge.ledger_tables import default_quantities
 from symamp.judge.proving import Prover
 from symamp.judge.response_errors import ResponseSpan
 from symamp.judge.sample import sample_of

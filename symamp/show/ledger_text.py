@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 
+from symamp.exact.formulas import Formula
 from symamp.judge.ledger import Account, Ledger, LostRoot
 from symamp.judge.sets import FIGURES
 from symamp.judge.span_errors import SpanFigure, Where
@@ -18,6 +19,7 @@ _SHORT_NAME = 16  # the same where the page is narrow
 _SYMBOLS = 4  # symbols of a bias point in a row
 _ROUNDING = 1e-9  # a difference between the least and the greatest of a figure that is none
 _CANCELLED = 10  # how many times the error its largest term must be for the others to nearly cancel it
+_FORMULA_LINES = 20  # of a formula that is shown
 _ERROR_LINES = 12  # lines of an error's formula
 
 
@@ -133,12 +135,20 @@ def _value(value: complex | float | None, account: Account) -> str:
 
 def _formulas(page: Page, account: Account) -> None:
     if _untouched(account):
-        if account.formula_exact is not None:
-            page.block(formula_lines(account.formula_exact, page.width - 4, label="exact"), indent=2)
+        _formula(page, "exact", account.formula_exact)
         return
-    for label, shape in (("exact", account.formula_exact), ("approximate", account.formula_approximate)):
-        if shape is not None:
-            page.block(formula_lines(shape, page.width - 4, label=label), indent=2)
+    _formula(page, "exact", account.formula_exact)
+    _formula(page, "approximate", account.formula_approximate)
+
+
+def _formula(page: Page, label: str, formula: Formula | None) -> None:
+    if formula is None:
+        return
+    lines = formula_lines(formula, page.width - 4, label=label)
+    if len(lines) <= _FORMULA_LINES:
+        page.block(lines, indent=2)
+    else:
+        page.prose(f"the {label} formula is too long to be read here", indent=2)
 
 
 def _roots(page: Page, word: str, roots: Sequence[LostRoot]) -> None:

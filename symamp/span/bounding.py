@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import heapq
 import time
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import reduce
@@ -29,6 +29,7 @@ BITS = 128  # working precision
 # Bernstein coefficients of a polynomial above which it is evaluated as a nested sum instead.
 COEFFICIENTS = 150_000
 WORK = 6_000_000  # balls that a search may work out, about what fits in ten seconds
+_MOST_PRODUCTS = 1_000_000  # of terms, when an error is multiplied out
 _HELD = 1_000_000  # balls that waiting pieces may hold
 
 
@@ -92,10 +93,42 @@ def prove_range(
     more; `budget` boxes and `seconds` are spent on each at most. Never raises for what cannot be proved: the
     result then says why.
     """
-    limits = Limits(tolerance, relative, budget, seconds)
+    return _proved(lambda: box.polynomials(ratio), box, Limits(tolerance, relative, budget, seconds))
+
+
+def prove_error_range(
+    formula: PolyRatio,
+    exact: PolyRatio,
+    box: ProofBox,
+    *,
+    tolerance: float = 1e-4,
+    relative: float = 0.0,
+    budget: int = 20_000,
+    seconds: float | None = None,
+) -> Proved:
+    """The range over the box of formula/exact − 1, and all else as in `prove_range`.
+
+    It is multiplied out only after the values of what does not vary have been put in: of two ratios of thousands of
+    terms little may be left. Each polynomial may be of a ring of its own.
+    """
+
+    def error() -> tuple[fmpz_mpoly, fmpz_mpoly]:
+        up, down, exact_up, exact_down = box.polynomials((*formula, *exact))
+        if max(len(up) * len(exact_down), len(down) * len(exact_up)) > _MOST_PRODUCTS:
+            raise NoProof("the error has too many terms")
+        whole = exact_up * down
+        if whole.is_zero():
+            raise NoProof("the exact value is 0, or the formula has none")
+        return up * exact_down - whole, whole
+
+    return _proved(error, box, Limits(tolerance, relative, budget, seconds))
+
+
+def _proved(made: Callable[[], Sequence[fmpz_mpoly]], box: ProofBox, limits: Limits) -> Proved:
+    """The range of the ratio that is made, in the coordinates of the box."""
     with ctx.workprec(BITS):
         try:
-            above, below = reduced(*box.polynomials(ratio))
+            above, below = reduced(*made())
         except NoProof as reason:
             return nothing_proved(str(reason))
         try:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from fractions import Fraction
 
 import numpy as np
@@ -14,7 +15,7 @@ from tableau import DIGITS, Tableau, digits
 from symamp.circuit.stage import Stage
 from symamp.errors import StageError
 from symamp.exact.cofactors import Ratio, ratio_of
-from symamp.exact.derive import derive, nested_of
+from symamp.exact.derive import dc_alone, derive, nested_of
 from symamp.exact.forms import Coefficients, Expanded, Nested
 from symamp.exact.response import Response
 from symamp.exact.system import build_system
@@ -175,3 +176,19 @@ def test_double_precision_is_as_good_as_cancelling_terms_allow(stage: Stage) -> 
             given = response.coefficients(values, 1)
             assert abs(polynomial_ratio(given, float(omega)) / exact - 1) <= allowed
             assert abs(response.at(float(omega) / (2 * np.pi)) / exact - 1) <= allowed * 10
+
+
+@quick
+@given(stages())
+def test_the_dc_value_written_out_alone_is_that_of_the_whole(stage: Stage) -> None:
+    response, ratio = derived(stage)
+    nested = nested_of(stage, ratio)
+    above, below = nested.exact_coefficients(stage.bias)
+    alone = dc_alone(replace(response, form=nested))
+    assume(alone is not None and isinstance(alone.form, Expanded))
+    top, bottom = alone.form.exact_coefficients(stage.bias)
+    assume(bottom != 0 and below != 0)
+    assert top.degree() <= 0
+    assert bottom.degree() <= 0
+    if below[0] != 0:
+        assert top[0] * below[0] == above[0] * bottom[0]

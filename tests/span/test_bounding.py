@@ -11,8 +11,18 @@ import pytest
 from flint import Ordering, arb, ctx, fmpq, fmpz_mpoly, fmpz_mpoly_ctx
 
 from symamp.circuit.builder import StageBuilder
+from symamp.span import bounding
 from symamp.span.bernstein import coefficients_over, degrees_of, halves, value_at
-from symamp.span.bounding import BITS, Limits, Proved, float_above, float_below, greatest_over, prove_range
+from symamp.span.bounding import (
+    BITS,
+    Limits,
+    Proved,
+    float_above,
+    float_below,
+    greatest_over,
+    prove_error_range,
+    prove_range,
+)
 from symamp.span.boxes import ProofBox
 from symamp.span.monotone import exact_value, reduced, strict_sign, weak_sign
 
@@ -163,6 +173,39 @@ def test_against_the_interval_arithmetic_of_mpmath(ratio: tuple, sides: dict) ->
     span = found.greatest.upper - found.least.lower
     assert found.least.lower - low < 0.1 * span
     assert high - found.greatest.upper < 0.1 * span
+
+
+@pytest.mark.parametrize(("ratio", "sides"), RATIOS)
+def test_an_error_is_multiplied_out_over_the_sides_alone(ratio: tuple, sides: dict) -> None:  # type: ignore[type-arg]
+    """formula/exact − 1 is what prove_range makes of it multiplied out; the formula's ring is another."""
+    exact = (X + 2 * Y + 7 * ONE, 1 + X**2 + Z**2)
+    other = fmpz_mpoly_ctx.get(("z", "y", "x"), Ordering.lex)
+    names = other.names()
+    formula = tuple(
+        other.from_dict(
+            {tuple(dict(zip(RING.names(), m, strict=True))[n] for n in names): c for m, c in p.terms()}
+        )
+        for p in ratio
+    )
+    box = ProofBox.between({"z": (1, 1), **sides})
+    found = prove_error_range(formula, exact, box)
+    wanted = prove_range((ratio[0] * exact[1] - exact[0] * ratio[1], exact[0] * ratio[1]), box)
+    assert found.finished
+    assert wanted.finished
+    for one, two in ((found.least, wanted.least), (found.greatest, wanted.greatest)):
+        assert abs(one.lower - two.lower) <= 2e-4
+        assert abs(one.upper - two.upper) <= 2e-4
+
+
+def test_an_error_without_an_exact_value_or_with_too_many_terms_is_not_proved(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    box = ProofBox.between({"x": (1, 2)})
+    assert (
+        prove_error_range((X, ONE), (0 * X, ONE), box).why == "the exact value is 0, or the formula has none"
+    )
+    monkeypatch.setattr(bounding, "_MOST_PRODUCTS", 3)
+    assert prove_error_range((1 + X, ONE), (X, 2 + X), box).why == "the error has too many terms"
 
 
 def _by_mpmath(ratio: tuple, sides: dict, pieces: int) -> tuple[float, float]:  # type: ignore[type-arg]
